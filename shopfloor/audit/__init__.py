@@ -1,0 +1,1 @@
+"""The independent check of a plan; shares no code with the methods."""

@@ -1,0 +1,1 @@
+"""Lower bounds: each a value, a witness and a sentence."""

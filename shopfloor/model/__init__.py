@@ -1,0 +1,1 @@
+"""What a shop, a schedule and a plan are. Knows nothing of files, methods or solvers."""

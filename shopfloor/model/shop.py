@@ -1,0 +1,349 @@
+"""The shop: machines, orders and operations, frozen and checked when built.
+
+Operations and orders are held as columns (NumPy arrays), so that a million of them is ordinary;
+:class:`Operation` and :class:`Job` are views of one row, made on demand.
+All times are whole seconds since the start of the shift.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass, field
+from functools import cached_property
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from shopfloor.errors import ShopError
+from shopfloor.model.calendar import Clock
+
+if TYPE_CHECKING:
+    import networkx as nx
+    import pandas as pd
+
+Ints = np.ndarray[Any, np.dtype[np.int64]]
+Floats = np.ndarray[Any, np.dtype[np.float64]]
+Bools = np.ndarray[Any, np.dtype[np.bool_]]
+
+NO_DUE = np.iinfo(np.int64).max  # an order without a due time is never late
+NO_STEP = -1  # an operation that may run at any time within its order
+
+
+@dataclass(frozen=True, slots=True)
+class Machine:
+    """One machine, or a group of `count` identical units that share a queue."""
+
+    id: str
+    name: str = ""
+    count: int = 1
+
+    def __post_init__(self) -> None:
+        if self.count < 1:
+            raise ShopError(f"machine {self.id}: count must be at least 1, not {self.count}")
+
+
+@dataclass(frozen=True, slots=True)
+class Job:
+    """One work order: a lot that travels together. A view of one row of :class:`Orders`."""
+
+    id: str
+    release_s: int
+    due_s: int | None
+    priority: float
+
+
+@dataclass(frozen=True, slots=True)
+class Operation:
+    """One visit of an order to a machine. A view of one row of :class:`Operations`."""
+
+    index: int
+    job: int
+    machine: int
+    order: str
+    machine_id: str
+    seconds: int
+    step: int | None
+    note: str
+    row: int
+
+
+def _column(values: Any, dtype: type, size: int, what: str) -> Any:
+    array = np.array(values, dtype=dtype, copy=True)
+    if array.shape != (size,):
+        raise ShopError(f"{what}: {array.shape} values for {size} rows")
+    array.flags.writeable = False
+    return array
+
+
+@dataclass(frozen=True, eq=False)
+class Orders:
+    """The orders as columns, one entry an order, in order of first appearance."""
+
+    ids: tuple[str, ...]
+    release_s: Ints = field(default=None)  # type: ignore[assignment]  # filled in when left out
+    due_s: Ints = field(default=None)  # type: ignore[assignment]
+    priority: Floats = field(default=None)  # type: ignore[assignment]
+
+    def __post_init__(self) -> None:
+        size = len(self.ids)
+        for name, blank, dtype in (
+            ("release_s", 0, np.int64),
+            ("due_s", NO_DUE, np.int64),
+            ("priority", 1.0, np.float64),
+        ):
+            given = getattr(self, name)
+            values = np.full(size, blank, dtype) if given is None else given
+            object.__setattr__(self, name, _column(values, dtype, size, f"orders.{name}"))
+
+    def __len__(self) -> int:
+        return len(self.ids)
+
+    def __getitem__(self, index: int) -> Job:
+        due = int(self.due_s[index])
+        return Job(
+            self.ids[index],
+            int(self.release_s[index]),
+            None if due == NO_DUE else due,
+            float(self.priority[index]),
+        )
+
+
+@dataclass(frozen=True, eq=False)
+class Operations:
+    """The operations as columns, one entry an operation, in the order of the file.
+
+    Attributes
+    ----------
+    job, machine
+        Index into the shop's orders and machines.
+    seconds
+        Run time, at least 1.
+    step
+        Rank inside the order, or ``NO_STEP``; lower ranks finish before higher ones start.
+    row
+        Row of the orders file, for messages; 0 when the shop came from elsewhere.
+    notes
+        Sparse: operation index to note.
+    """
+
+    job: Ints
+    machine: Ints
+    seconds: Ints
+    step: Ints = field(default=None)  # type: ignore[assignment]  # filled in when left out
+    row: Ints = field(default=None)  # type: ignore[assignment]
+    notes: Mapping[int, str] = field(default_factory=dict)
+
+    def __post_init__(self) -> None:
+        size = len(self.job)
+        for name, blank in (("job", 0), ("machine", 0), ("seconds", 0), ("step", NO_STEP), ("row", 0)):
+            given = getattr(self, name)
+            values = np.full(size, blank, np.int64) if given is None else given
+            object.__setattr__(self, name, _column(values, np.int64, size, f"operations.{name}"))
+
+    def __len__(self) -> int:
+        return len(self.job)
+
+
+@dataclass(frozen=True, eq=False)
+class Shop:
+    """Everything a plan is made from.
+
+    Parameters
+    ----------
+    machines
+        In the order in which pages and lists show them.
+    orders, operations
+        As columns.
+    clock
+        Wall time of second zero, if known.
+    shift_end_s
+        End of the shift, or None when it is not known.
+    unit_rounds
+        True when the file gave no times, so that every operation is one round by declaration.
+
+    Raises
+    ------
+    ShopError
+        If an index points nowhere, a time is not positive, an order's due precedes its release, two
+        orders or machines share an id, or the shift ends before it starts.
+    """
+
+    machines: tuple[Machine, ...]
+    orders: Orders
+    operations: Operations
+    clock: Clock = Clock()
+    shift_end_s: int | None = None
+    unit_rounds: bool = False
+
+    def __post_init__(self) -> None:
+        self._check_indices()
+        operations, orders = self.operations, self.orders
+        if len(operations) and int(operations.seconds.min()) < 1:
+            index = int(operations.seconds.argmin())
+            raise ShopError(f"operation {index}: time must be positive, not {operations.seconds[index]} s")
+        if len(orders) and bool((orders.due_s < orders.release_s).any()):
+            index = int((orders.due_s < orders.release_s).argmax())
+            raise ShopError(f"order {orders.ids[index]}: due before its release")
+        if len(orders) and (int(orders.release_s.min()) < 0 or float(orders.priority.min()) <= 0):
+            raise ShopError("releases must not be negative and priorities must be positive")
+        if self.shift_end_s is not None and self.shift_end_s <= 0:
+            raise ShopError("the shift ends before it starts")
+
+    def _check_indices(self) -> None:
+        for what, ids in (("machine", [m.id for m in self.machines]), ("order", self.orders.ids)):
+            if len(set(ids)) != len(ids):
+                raise ShopError(f"two {what}s share one id")
+        for what, column, size in (
+            ("order", self.operations.job, len(self.orders)),
+            ("machine", self.operations.machine, len(self.machines)),
+        ):
+            if len(column) and not (0 <= int(column.min()) and int(column.max()) < size):
+                raise ShopError(f"an operation names {what} {int(column.max())} of {size}")
+
+    def __len__(self) -> int:
+        """Return the number of operations."""
+        return len(self.operations)
+
+    # ---- rows as views -------------------------------------------------------------------------
+
+    def operation(self, index: int) -> Operation:
+        """Return a view of operation `index`."""
+        columns = self.operations
+        job, machine, step = int(columns.job[index]), int(columns.machine[index]), int(columns.step[index])
+        return Operation(
+            index=index,
+            job=job,
+            machine=machine,
+            order=self.orders.ids[job],
+            machine_id=self.machines[machine].id,
+            seconds=int(columns.seconds[index]),
+            step=None if step == NO_STEP else step,
+            note=columns.notes.get(index, ""),
+            row=int(columns.row[index]),
+        )
+
+    def __iter__(self) -> Iterator[Operation]:
+        return (self.operation(index) for index in range(len(self)))
+
+    # ---- sums that many parts need ------------------------------------------------------------
+
+    @cached_property
+    def job_load_s(self) -> Ints:
+        """Total run time of each order."""
+        return self._sum(self.operations.job, len(self.orders))
+
+    @cached_property
+    def machine_load_s(self) -> Ints:
+        """Total run time of each machine or group, over all its units."""
+        return self._sum(self.operations.machine, len(self.machines))
+
+    def _sum(self, column: Ints, size: int) -> Ints:
+        # bincount adds in floating point: exact below 2**53 seconds, some 285 million years
+        return np.bincount(column, weights=self.operations.seconds, minlength=size).astype(np.int64)
+
+    @cached_property
+    def head_s(self) -> Ints:
+        """Earliest start of each operation that its order alone allows: release and lower steps."""
+        return self.orders.release_s[self.operations.job] + self._stepped[0]
+
+    @cached_property
+    def tail_s(self) -> Ints:
+        """Least time of each operation's order after the operation's end: its higher steps."""
+        return self._stepped[1]
+
+    @cached_property
+    def _stepped(self) -> tuple[Ints, Ints]:
+        """Work of lower and of higher steps in the same order, an entry an operation."""
+        operations = self.operations
+        before, after = np.zeros(len(operations), np.int64), np.zeros(len(operations), np.int64)
+        ranked = np.flatnonzero(operations.step != NO_STEP)
+        if not len(ranked):
+            return before, after
+        order = ranked[np.lexsort((operations.step[ranked], operations.job[ranked]))]
+        job, step, seconds = operations.job[order], operations.step[order], operations.seconds[order]
+        new_job = np.r_[True, job[1:] != job[:-1]]
+        new_step = new_job | np.r_[True, step[1:] != step[:-1]]
+        total = np.r_[0, np.cumsum(seconds)]
+        job_first, step_first = np.flatnonzero(new_job), np.flatnonzero(new_step)
+        job_of, step_of = np.cumsum(new_job) - 1, np.cumsum(new_step) - 1
+        job_end, step_end = np.r_[job_first[1:], len(order)], np.r_[step_first[1:], len(order)]
+        before[order] = total[step_first[step_of]] - total[job_first[job_of]]
+        after[order] = total[job_end[job_of]] - total[step_end[step_of]]
+        return before, after
+
+    @cached_property
+    def has_steps(self) -> bool:
+        """Whether any order fixes part of its route."""
+        return bool(self.head_s.any() and self._stepped[0].any())
+
+    @cached_property
+    def has_due(self) -> bool:
+        """Whether any order has a due time."""
+        return bool(len(self.orders)) and bool((self.orders.due_s != NO_DUE).any())
+
+    # ---- to and from frames and graphs -------------------------------------------------------
+
+    @classmethod
+    def from_frame(
+        cls, frame: pd.DataFrame, *, clock: Clock | None = None, shift_end_s: int | None = None
+    ) -> Shop:
+        """Build a shop from a clean table, one row an operation; the inverse of :meth:`to_frame`.
+
+        Parameters
+        ----------
+        frame
+            `order` and `machine`; `seconds` (whole) or `minutes`; optionally `release_s`, `due_s`,
+            `priority`, `step`, `note`. A messy table belongs to `read_orders`, which lists every fault.
+        clock, shift_end_s
+            As in :class:`Shop`.
+
+        Raises
+        ------
+        ShopError
+            If a column is missing, a cell is not a number, a time is no whole number of seconds, or an
+            order's rows disagree about its release, due or priority.
+        """
+        from shopfloor.model.frame import shop_from_frame  # pandas is heavy: only when asked for
+
+        return shop_from_frame(frame, clock=clock or Clock(), shift_end_s=shift_end_s)
+
+    def to_frame(self) -> pd.DataFrame:
+        """Return the operations as a pandas table, one row an operation."""
+        from shopfloor.model.frame import frame_from_shop
+
+        return frame_from_shop(self)
+
+    def to_networkx(self) -> nx.MultiGraph:
+        """Return the bipartite multigraph of orders and machines; one edge an operation.
+
+        Nodes are ``("order", id)`` and ``("machine", id)`` with the attribute `bipartite`; edges carry
+        `operation` and `seconds`. A proper edge colouring of it is a schedule in unit rounds.
+        """
+        import networkx as nx
+
+        graph = nx.MultiGraph()
+        graph.add_nodes_from((("order", name) for name in self.orders.ids), bipartite=0)
+        graph.add_nodes_from((("machine", machine.id) for machine in self.machines), bipartite=1)
+        for row in self:
+            graph.add_edge(
+                ("order", row.order),
+                ("machine", row.machine_id),
+                key=row.index,
+                operation=row.index,
+                seconds=row.seconds,
+            )
+        return graph
+
+
+def shop_of(matrix: Sequence[Sequence[int]]) -> Shop:
+    """Return the shop of a table of whole seconds, orders by machines; zero means no visit.
+
+    Meant for published instances and tests: orders are `J1, J2, …`, machines `M1, M2, …`.
+    """
+    times = np.asarray(matrix, dtype=np.int64)
+    job, machine = np.nonzero(times)
+    return Shop(
+        machines=tuple(Machine(f"M{k + 1}") for k in range(times.shape[1])),
+        orders=Orders(tuple(f"J{k + 1}" for k in range(times.shape[0]))),
+        operations=Operations(job, machine, times[job, machine]),
+    )

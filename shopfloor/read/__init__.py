@@ -1,0 +1,1 @@
+"""From files to a shop or a plan, or to the complete list of what is wrong with them."""
