@@ -1,4 +1,4 @@
-"""Shopfloor: from a spreadsheet of work orders to a sequence for every machine, proved shortest where it can be.
+"""Shopfloor: from a spreadsheet of work orders to a proved sequence for every machine.
 
 The names below load their modules on first use, so that ``import shopfloor`` costs nothing.
 """

@@ -66,7 +66,7 @@ def frame_from_shop(shop: Shop) -> pd.DataFrame:
 
 
 def frame_from_schedule(shop: Shop, schedule: Schedule) -> pd.DataFrame:
-    """Return the assignments of `schedule`, one row each, with times in seconds and as the clock writes them."""
+    """Return the assignments of `schedule`, one row each; times in seconds and as the clock writes them."""
     rows = list(schedule)
     operations = [shop.operation(row.operation) for row in rows]
     return pd.DataFrame(

@@ -10,7 +10,7 @@ from typing import Any
 import numpy as np
 
 from shopfloor.errors import ShopError
-from shopfloor.model.shop import Ints
+from shopfloor.model.shop import LEFT_OUT, Ints
 
 NO_ROUND = -1  # outside unit rounds
 
@@ -52,8 +52,8 @@ class Schedule:
     operation: Ints
     start_s: Ints
     end_s: Ints
-    unit: Ints = field(default=None)  # type: ignore[assignment]  # filled in when left out
-    round: Ints = field(default=None)  # type: ignore[assignment]
+    unit: Ints = field(default=LEFT_OUT)
+    round: Ints = field(default=LEFT_OUT)
     part: Ints = field(init=False)
     parts: Ints = field(init=False)
 

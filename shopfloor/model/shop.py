@@ -26,6 +26,7 @@ Floats = np.ndarray[Any, np.dtype[np.float64]]
 Bools = np.ndarray[Any, np.dtype[np.bool_]]
 
 NO_DUE = np.iinfo(np.int64).max  # an order without a due time is never late
+LEFT_OUT: Any = None  # a column left out is filled with its blank when the frozen value is built
 NO_STEP = -1  # an operation that may run at any time within its order
 
 
@@ -80,9 +81,9 @@ class Orders:
     """The orders as columns, one entry an order, in order of first appearance."""
 
     ids: tuple[str, ...]
-    release_s: Ints = field(default=None)  # type: ignore[assignment]  # filled in when left out
-    due_s: Ints = field(default=None)  # type: ignore[assignment]
-    priority: Floats = field(default=None)  # type: ignore[assignment]
+    release_s: Ints = field(default=LEFT_OUT)
+    due_s: Ints = field(default=LEFT_OUT)
+    priority: Floats = field(default=LEFT_OUT)
 
     def __post_init__(self) -> None:
         size = len(self.ids)
@@ -129,8 +130,8 @@ class Operations:
     job: Ints
     machine: Ints
     seconds: Ints
-    step: Ints = field(default=None)  # type: ignore[assignment]  # filled in when left out
-    row: Ints = field(default=None)  # type: ignore[assignment]
+    step: Ints = field(default=LEFT_OUT)
+    row: Ints = field(default=LEFT_OUT)
     notes: Mapping[int, str] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
@@ -171,7 +172,7 @@ class Shop:
     machines: tuple[Machine, ...]
     orders: Orders
     operations: Operations
-    clock: Clock = Clock()
+    clock: Clock = field(default_factory=Clock)
     shift_end_s: int | None = None
     unit_rounds: bool = False
 
@@ -197,7 +198,7 @@ class Shop:
             ("order", self.operations.job, len(self.orders)),
             ("machine", self.operations.machine, len(self.machines)),
         ):
-            if len(column) and not (0 <= int(column.min()) and int(column.max()) < size):
+            if len(column) and (int(column.min()) < 0 or int(column.max()) >= size):
                 raise ShopError(f"an operation names {what} {int(column.max())} of {size}")
 
     def __len__(self) -> int:
