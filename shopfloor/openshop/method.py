@@ -63,6 +63,8 @@ class Method(Protocol):
     """One way to make a schedule."""
 
     name: str
+    reaches_bound: bool
+    """Whether the makespan always equals the best combinatorial bound, so that the bound decides."""
 
     def accepts(self, shop: Shop) -> str | None:
         """Return None when the method solves this shop, or the reason why not as half a sentence."""

@@ -1,0 +1,66 @@
+"""The command `shopfloor`: one module a command, each importing what it needs only when it runs."""
+
+from __future__ import annotations
+
+import os
+import sys
+from typing import Annotated
+
+import typer
+
+import shopfloor
+from shopfloor.cli import audit, check, demo, plan
+from shopfloor.cli.common import BAD_INPUT, NO_PLAN
+from shopfloor.errors import InputError, NoPlanError, ShopfloorError
+
+app = typer.Typer(
+    name="shopfloor",
+    help="Turn a spreadsheet of work orders into a sequence for every machine, proved shortest where it can be.",
+    epilog="A plan is no permit: isolate and lock out first; site procedures and authorised people decide.",
+    add_completion=False,
+    no_args_is_help=True,
+    rich_markup_mode=None,
+    pretty_exceptions_enable=False,
+    context_settings={"help_option_names": ["-h", "--help"]},
+)
+app.command("check")(check.check)
+app.command("plan")(plan.plan)
+app.command("audit")(audit.audit)
+app.command("demo")(demo.demo)
+
+
+def _show_version(wanted: bool) -> None:
+    if wanted:
+        print(f"shopfloor {shopfloor.__version__}")
+        raise typer.Exit
+
+
+@app.callback()
+def options(
+    version: Annotated[
+        bool, typer.Option("--version", callback=_show_version, is_eager=True, help="Print the version.")
+    ] = False,
+) -> None:
+    """Turn a spreadsheet of work orders into a sequence for every machine, proved shortest where it can be."""
+
+
+def run() -> None:
+    """Run the command line; expected errors become one message and an exit code, a bug keeps its traceback."""
+    for stream in (sys.stdout, sys.stderr):
+        if hasattr(stream, "reconfigure"):
+            stream.reconfigure(errors="replace")  # a bar drawn on an old code page must not end the run
+    try:
+        app()
+    except InputError as error:  # commands print the whole list themselves; this is the safety net
+        print("\n".join(fault.text() for fault in error.faults), file=sys.stderr)
+        sys.exit(BAD_INPUT)
+    except ShopfloorError as error:
+        print(f"shopfloor: {error}", file=sys.stderr)
+        sys.exit(NO_PLAN if isinstance(error, NoPlanError) else BAD_INPUT)
+    except BrokenPipeError:
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())  # the reader left; nobody to tell
+        sys.exit(0)
+
+
+if __name__ == "__main__":
+    run()

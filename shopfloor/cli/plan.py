@@ -1,0 +1,92 @@
+"""``shopfloor plan``: from an orders file to an audited plan and its pages."""
+
+from __future__ import annotations
+
+import time
+from pathlib import Path
+from typing import Annotated, Any
+
+import typer
+
+from shopfloor.cli import common
+from shopfloor.settings import SETTINGS
+
+TIME_LIMIT: Any = SETTINGS["time-limit"].default
+WORKERS: Any = SETTINGS["workers"].default
+SEED: Any = SETTINGS["seed"].default
+
+
+def plan(
+    orders: common.OrdersArgument,
+    shop: common.ShopOption = None,
+    out: Annotated[
+        Path | None, typer.Option("--out", metavar="DIR", help="Folder for the files; without it none is written.")
+    ] = None,
+    start: common.StartOption = None,
+    end: common.EndOption = None,
+    round_minutes: common.RoundOption = None,
+    time_limit: Annotated[float, common.setting("time-limit", metavar="SECONDS")] = TIME_LIMIT,
+    workers: Annotated[int, common.setting("workers", metavar="N")] = WORKERS,
+    seed: Annotated[int, common.setting("seed", metavar="N")] = SEED,
+    stamp: Annotated[str | None, common.setting("stamp", metavar="TEXT")] = None,
+    as_json: common.JsonOption = False,
+    quiet: common.QuietOption = False,
+) -> None:
+    """Plan the orders as early as can be proved, audit the plan, and write its files.
+
+    Exit code 0: done. 1: the plan overruns the shift. 2: bad input. 3: no plan in the time given.
+    """
+    from shopfloor.errors import InputError
+
+    try:
+        reading = common.read(orders, shop, start, end, round_minutes)
+    except InputError as error:
+        common.refuse(error, as_json)
+    from shopfloor import pipeline
+    from shopfloor.cli.progress import Reporter, stopping
+
+    common.print_notices(reading.notices, quiet or as_json)
+    report = Reporter(reading.shop.clock, quiet)
+    began = time.perf_counter()
+    with stopping() as stop:
+        made = pipeline.plan(
+            reading.shop,
+            pipeline.Options(time_limit_s=time_limit, workers=workers, seed=seed),
+            inputs=reading.inputs,
+            report=report,
+            stop=stop,
+        )
+    report.close()
+    solve_s = time.perf_counter() - began
+    written = _write(made, out, stamp) if out is not None else []
+    if as_json:
+        from shopfloor.render.tables import summary
+
+        data = {**summary(made), "files": [str(path) for path in written], "solve_s": round(solve_s, 3)}
+        common.print_json({**data, "notices": [common.fault_data(notice) for notice in reading.notices]})
+    elif not quiet:
+        from shopfloor.render import text
+
+        lines = text.plan_lines(made)
+        if written:
+            lines += ["", text.wrap(f"Wrote {', '.join(str(path) for path in written)}.")]
+        print("\n".join([*lines, "", text.wrap(text.CARE)]))
+    raise typer.Exit(common.NO if made.fits_shift is False else common.DONE)
+
+
+def _write(made: Any, out: Path, stamp: str | None) -> list[Path]:
+    """Make every file in memory, then write them all or none."""
+    from shopfloor.render.dispatch import dispatch_page
+    from shopfloor.render.gantt import gantt_page
+    from shopfloor.render.save import save
+    from shopfloor.render.tables import plan_csv, plan_json
+
+    return save(
+        out,
+        {
+            "plan.json": plan_json(made),
+            "plan.csv": plan_csv(made),
+            "gantt.html": gantt_page(made, stamp=stamp),
+            "dispatch.html": dispatch_page(made, stamp=stamp),
+        },
+    )

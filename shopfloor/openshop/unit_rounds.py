@@ -1,0 +1,111 @@
+"""Unit rounds: all times equal, any order. A schedule is an edge colouring; Δ rounds always suffice.
+
+Operations are edges of a bipartite multigraph between orders and machines. A round serves each order
+and each machine at most once, which is what one colour class of a proper edge colouring is. So the
+makespan is at least Δ rounds, the degree of the busiest order or machine, and by D. König (Math.
+Annalen 77 (1916) 453-465) a bipartite multigraph always has a colouring in exactly Δ.
+
+A group of k units is k nodes: its operations are dealt out evenly, so the busiest unit has
+⌈load/k⌉, and the same theorem gives max(order degree, ⌈load/k⌉) rounds, which nothing beats.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from shopfloor.kernel.colouring import colour_edges
+from shopfloor.model.calendar import duration
+from shopfloor.model.results import Outcome
+from shopfloor.model.schedule import Schedule
+from shopfloor.model.shop import Ints, Shop
+from shopfloor.openshop.method import Effort
+from shopfloor.openshop.round_order import order_rounds
+
+
+@dataclass(frozen=True, slots=True)
+class UnitRounds:
+    """Exact for unit-time shops, with or without groups, by edge colouring."""
+
+    name: str = "unit rounds"
+    reaches_bound: bool = True
+
+    def accepts(self, shop: Shop) -> str | None:
+        """Return None, or why the shop is no unit-time open shop."""
+        return why_not_unit(shop)
+
+    def promise(self, shop: Shop) -> str:
+        """Return the theorem in a sentence."""
+        length = duration(int(shop.operations.seconds[0])) if len(shop) else "one round"
+        return (
+            f"every operation takes {length} and orders may visit their machines in any order, so a plan "
+            "is an edge colouring, and as many rounds as the busiest order or machine has operations "
+            "always suffice (König 1916)"
+        )
+
+    def solve(self, shop: Shop, effort: Effort) -> Outcome:
+        """Return a schedule in the fewest rounds, its rounds in a good order for the due times."""
+        if not len(shop):
+            return Outcome(Schedule(*(np.zeros(0, np.int64),) * 3))
+        node, unit = deal_out(shop)
+        colour = colour_edges(shop.operations.job, node, seed=effort.seed)
+        return rounds_to_outcome(shop, unit, colour)
+
+
+def why_not_unit(shop: Shop) -> str | None:
+    """Return None when all times are equal and nothing else restricts, or the reason why not."""
+    seconds = shop.operations.seconds
+    if len(seconds) and int(seconds.min()) != int(seconds.max()):
+        return f"times differ ({duration(int(seconds.min()))} to {duration(int(seconds.max()))})"
+    if shop.has_steps:
+        return "some orders fix the sequence of their steps"
+    if len(shop) and shop.head_s.any():
+        return "some orders are released after the shift's start"
+    return None
+
+
+def deal_out(shop: Shop) -> tuple[Ints, Ints]:
+    """Split every group of k units into k nodes of nearly equal degree.
+
+    Returns
+    -------
+    node, unit
+        An entry an operation: the node's number among all units of all machines, and the unit
+        within its group, from 1. Operations are dealt in file order, so the result is repeatable.
+    """
+    machine = shop.operations.machine
+    counts = np.array([m.count for m in shop.machines], dtype=np.int64)
+    first = np.r_[0, np.cumsum(counts)]
+    order = np.argsort(machine, kind="stable")
+    begins = np.searchsorted(machine[order], np.arange(len(counts)))
+    rank = np.empty(len(machine), np.int64)
+    rank[order] = np.arange(len(machine)) - begins[machine[order]]
+    unit = rank % counts[machine]
+    return first[machine] + unit, unit + 1
+
+
+def rounds_to_outcome(shop: Shop, unit: Ints, colour: Ints) -> Outcome:
+    """Turn a colouring into a schedule: put its rounds in a good order and say how good it is."""
+    rounds, length = int(colour.max()) + 1, int(shop.operations.seconds[0])
+    orders = shop.orders
+    order = order_rounds(colour, shop.operations.job, rounds, length, orders.due_s, orders.priority)
+    place = order.position[colour]
+    schedule = Schedule(
+        operation=np.arange(len(shop)),
+        start_s=place * length,
+        end_s=(place + 1) * length,
+        unit=unit,
+        round=place + 1,
+    )
+    remarks = []
+    if shop.has_due:
+        left = "no order is late" if order.tardiness == 0 else "what lateness remains"
+        proof = (
+            "is the least that any order of these rounds can have"
+            if order.proved
+            else "may not be the least that these rounds allow"
+        )
+        what = f"{left}, which" if order.tardiness == 0 else f"{left}"
+        remarks.append(f"The rounds were put in order for the due times: {what} {proof}.")
+    return Outcome(schedule, proven_s=0, remarks=tuple(remarks))

@@ -1,0 +1,138 @@
+"""One shop to one plan: bounds, choose a method, solve, audit. The only place that joins the steps."""
+
+from __future__ import annotations
+
+import threading
+from collections.abc import Callable, Sequence
+from dataclasses import asdict, dataclass
+
+from shopfloor.audit.schedule import audit
+from shopfloor.bounds.catalogue import lower_bounds
+from shopfloor.errors import AuditError, NoPlanError
+from shopfloor.model.results import Bound, Choice, Outcome, Plan
+from shopfloor.model.shop import Shop
+from shopfloor.model.stated import state
+from shopfloor.openshop.choose import choose
+from shopfloor.openshop.method import Effort, Progress
+
+
+@dataclass(frozen=True, slots=True)
+class Options:
+    """What may change the schedule; written into plan.json."""
+
+    time_limit_s: float = 30.0
+    workers: int = 0
+    seed: int = 0
+
+
+@dataclass(frozen=True, slots=True)
+class Forecast:
+    """What can be said before planning.
+
+    `reached` tells that the chosen method always ends exactly at the best bound, so that the bound
+    is the makespan and the answer to whether the shift holds it is final.
+    """
+
+    shop: Shop
+    bounds: tuple[Bound, ...]
+    choice: Choice
+    reached: bool
+
+    @property
+    def lower_bound_s(self) -> int:
+        """The best bound; 0 for a shop without operations."""
+        return self.bounds[0].value_s if self.bounds else 0
+
+    @property
+    def fits(self) -> bool | None:
+        """Whether the shift can hold the work, as far as the bound tells; None without a shift end."""
+        end = self.shop.shift_end_s
+        return None if end is None else self.lower_bound_s <= end
+
+
+def forecast(shop: Shop) -> Forecast:
+    """Return bounds, method and what they say about the shift, without planning; near-linear time."""
+    method, choice = choose(shop)
+    return Forecast(shop, lower_bounds(shop), choice, method.reaches_bound)
+
+
+def plan(
+    shop: Shop,
+    options: Options | None = None,
+    *,
+    inputs: Sequence[tuple[str, str]] = (),
+    report: Callable[[Progress], None] | None = None,
+    stop: threading.Event | None = None,
+) -> Plan:
+    """Plan a shop: the earliest finish that can be reached, beside the best bound that can be proved.
+
+    Parameters
+    ----------
+    shop
+        What is to be done.
+    options
+        Time limit, solver threads and seed.
+    inputs
+        Name and SHA-256 of each file the shop was read from, for the record.
+    report
+        Called with each :class:`Progress` of a search, from any thread.
+    stop
+        When set, the search ends and the best plan so far is handed on.
+
+    Returns
+    -------
+    Plan
+        Audited: it breaks no rule of the shop, and its bounds hold.
+
+    Raises
+    ------
+    NoPlanError
+        If no plan was found in the time given.
+    AuditError
+        If our own plan fails the audit, which is a bug.
+    """
+    options = options or Options()
+    bounds = lower_bounds(shop)
+    method, choice = choose(shop)
+    effort = Effort(
+        bound_s=bounds[0].value_s if bounds else 0,
+        time_limit_s=options.time_limit_s,
+        workers=options.workers,
+        seed=options.seed,
+        report=report or (lambda progress: None),
+        stop=stop or threading.Event(),
+    )
+    outcome = method.solve(shop, effort)
+    if outcome.schedule is None:
+        raise NoPlanError(f"no plan was found in {options.time_limit_s:g} s; allow more with --time-limit")
+    made = Plan(
+        shop=shop,
+        schedule=outcome.schedule,
+        bounds=_with_proven(bounds, outcome, shop),
+        choice=choice,
+        inputs=tuple(inputs),
+        options=asdict(options),
+        remarks=outcome.remarks,
+        stopped=outcome.stopped,
+        repeatable=outcome.repeatable,
+    )
+    violations = audit(shop, state(made))
+    if violations:
+        raise AuditError(violations)
+    return made
+
+
+def _with_proven(bounds: tuple[Bound, ...], outcome: Outcome, shop: Shop) -> tuple[Bound, ...]:
+    """Put the solver's own bound first where it beats every other."""
+    if bounds and outcome.proven_s <= bounds[0].value_s:
+        return bounds
+    if not outcome.proven_s:
+        return bounds
+    finish = shop.clock.say(outcome.proven_s)
+    proven = Bound(
+        kind="solver",
+        value_s=outcome.proven_s,
+        witness={"solver": "CP-SAT"},
+        sentence=f"The solver CP-SAT has proved that nothing can end before {finish}.",
+    )
+    return (proven, *bounds)
