@@ -12,7 +12,7 @@ import numpy as np
 
 from shopfloor.model.calendar import duration
 from shopfloor.model.results import Bound
-from shopfloor.model.shop import Shop
+from shopfloor.model.shop import Ints, Shop
 
 ORDERS_SHOWN = 5  # a shop may hold 100,000 orders; the longest few are worth printing
 
@@ -52,7 +52,7 @@ def machine_bounds(shop: Shop) -> list[Bound]:
     ]
 
 
-def _machine_bound(shop: Shop, machine: int, operations: np.ndarray) -> Bound:  # type: ignore[type-arg]
+def _machine_bound(shop: Shop, machine: int, operations: Ints) -> Bound:
     count = shop.machines[machine].count
     heads = shop.head_s[operations]
     latest_first = np.argsort(-heads, kind="stable")

@@ -10,6 +10,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import cached_property
+from itertools import pairwise
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -31,16 +32,47 @@ NO_STEP = -1  # an operation that may run at any time within its order
 
 
 @dataclass(frozen=True, slots=True)
+class Closure:
+    """A time when a machine, or the whole hall, is shut: from `start_s` up to, not including, `end_s`."""
+
+    start_s: int
+    end_s: int
+    reason: str = ""
+
+    def __post_init__(self) -> None:
+        if self.end_s <= self.start_s:
+            raise ShopError(f"closure {self.reason or 'without reason'}: it must end after it starts")
+
+
+@dataclass(frozen=True, slots=True)
 class Machine:
-    """One machine, or a group of `count` identical units that share a queue."""
+    """One machine, or a group of `count` identical units that share a queue.
+
+    `pauses` says that its work may stop for a break and go on afterwards; `crew` names the pool of
+    people its operations take heads from while they run, if any.
+    """
 
     id: str
     name: str = ""
     count: int = 1
+    pauses: bool = False
+    crew: str | None = None
 
     def __post_init__(self) -> None:
         if self.count < 1:
             raise ShopError(f"machine {self.id}: count must be at least 1, not {self.count}")
+
+
+@dataclass(frozen=True, slots=True)
+class Crew:
+    """A pool of `heads` people; each operation takes its heads while it is attended."""
+
+    id: str
+    heads: int
+
+    def __post_init__(self) -> None:
+        if self.heads < 1:
+            raise ShopError(f"crew {self.id}: heads must be at least 1, not {self.heads}")
 
 
 @dataclass(frozen=True, slots=True)
@@ -64,12 +96,14 @@ class Operation:
     machine_id: str
     seconds: int
     step: int | None
+    splittable: bool
+    heads: int
     note: str
     row: int
 
 
 def _column(values: Any, dtype: type, size: int, what: str) -> Any:
-    array = np.array(values, dtype=dtype, copy=True)
+    array: Any = np.array(values, dtype=dtype, copy=True)
     if array.shape != (size,):
         raise ShopError(f"{what}: {array.shape} values for {size} rows")
     array.flags.writeable = False
@@ -121,6 +155,10 @@ class Operations:
         Run time, at least 1.
     step
         Rank inside the order, or ``NO_STEP``; lower ranks finish before higher ones start.
+    splittable
+        1 where the operation may be cut into parts, else 0.
+    heads
+        People it takes from its machine's crew while it runs; counts only where there is a crew.
     row
         Row of the orders file, for messages; 0 when the shop came from elsewhere.
     notes
@@ -131,12 +169,22 @@ class Operations:
     machine: Ints
     seconds: Ints
     step: Ints = field(default=LEFT_OUT)
+    splittable: Ints = field(default=LEFT_OUT)
+    heads: Ints = field(default=LEFT_OUT)
     row: Ints = field(default=LEFT_OUT)
     notes: Mapping[int, str] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
         size = len(self.job)
-        for name, blank in (("job", 0), ("machine", 0), ("seconds", 0), ("step", NO_STEP), ("row", 0)):
+        for name, blank in (
+            ("job", 0),
+            ("machine", 0),
+            ("seconds", 0),
+            ("step", NO_STEP),
+            ("splittable", 0),
+            ("heads", 1),
+            ("row", 0),
+        ):
             given = getattr(self, name)
             values = np.full(size, blank, np.int64) if given is None else given
             object.__setattr__(self, name, _column(values, np.int64, size, f"operations.{name}"))
@@ -155,6 +203,10 @@ class Shop:
         In the order in which pages and lists show them.
     orders, operations
         As columns.
+    crews
+        The pools that machines name.
+    breaks
+        When the whole hall pauses, in order of time and apart from each other.
     clock
         Wall time of second zero, if known.
     shift_end_s
@@ -172,6 +224,8 @@ class Shop:
     machines: tuple[Machine, ...]
     orders: Orders
     operations: Operations
+    crews: tuple[Crew, ...] = ()
+    breaks: tuple[Closure, ...] = ()
     clock: Clock = field(default_factory=Clock)
     shift_end_s: int | None = None
     unit_rounds: bool = False
@@ -189,9 +243,18 @@ class Shop:
             raise ShopError("releases must not be negative and priorities must be positive")
         if self.shift_end_s is not None and self.shift_end_s <= 0:
             raise ShopError("the shift ends before it starts")
+        if any(b.start_s < a.end_s for a, b in pairwise(self.breaks)):
+            raise ShopError("breaks must be in order of time and must not overlap")
+        for machine in self.machines:
+            if machine.crew is not None and machine.crew not in {crew.id for crew in self.crews}:
+                raise ShopError(f"machine {machine.id} names crew {machine.crew}, which is not in the shop")
 
     def _check_indices(self) -> None:
-        for what, ids in (("machine", [m.id for m in self.machines]), ("order", self.orders.ids)):
+        for what, ids in (
+            ("machine", [m.id for m in self.machines]),
+            ("order", self.orders.ids),
+            ("crew", [crew.id for crew in self.crews]),
+        ):
             if len(set(ids)) != len(ids):
                 raise ShopError(f"two {what}s share one id")
         for what, column, size in (
@@ -219,6 +282,8 @@ class Shop:
             machine_id=self.machines[machine].id,
             seconds=int(columns.seconds[index]),
             step=None if step == NO_STEP else step,
+            splittable=bool(columns.splittable[index]),
+            heads=int(columns.heads[index]),
             note=columns.notes.get(index, ""),
             row=int(columns.row[index]),
         )
@@ -276,6 +341,11 @@ class Shop:
     def has_steps(self) -> bool:
         """Whether any order fixes part of its route."""
         return bool(self.head_s.any() and self._stepped[0].any())
+
+    @cached_property
+    def has_splits(self) -> bool:
+        """Whether any operation may be cut into parts."""
+        return bool(self.operations.splittable.any())
 
     @cached_property
     def has_due(self) -> bool:

@@ -62,9 +62,13 @@ class Effort:
 class Method(Protocol):
     """One way to make a schedule."""
 
-    name: str
-    reaches_bound: bool
-    """Whether the makespan always equals the best combinatorial bound, so that the bound decides."""
+    @property
+    def name(self) -> str:
+        """The name that plans and pages show."""
+
+    @property
+    def reaches_bound(self) -> bool:
+        """Whether the makespan always equals the best combinatorial bound, so that the bound decides."""
 
     def accepts(self, shop: Shop) -> str | None:
         """Return None when the method solves this shop, or the reason why not as half a sentence."""

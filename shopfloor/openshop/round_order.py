@@ -25,8 +25,6 @@ EXACT_ROUNDS = 12
 MOVES_TRIED = 4_000  # swaps of two rounds tried after filling from the back
 PRIORITY_UNIT = 1_000  # priorities have at most three decimals: exact as whole thousandths
 
-Array = np.ndarray[Any, Any]
-
 
 @dataclass(frozen=True, slots=True)
 class RoundOrder:
@@ -128,12 +126,13 @@ def _by_sets(bill: _Bill) -> Ints:
 
 def _unfinished(masks: Ints, charge: Ints, rounds: int) -> Ints:
     """Return, for every set of rounds, the charge of all orders not finished within it (a zeta transform)."""
-    finished = np.zeros(1 << rounds, np.int64)
+    finished: Ints = np.zeros(1 << rounds, np.int64)
     np.add.at(finished, masks, charge)
     for r in range(rounds):
         view = finished.reshape(-1, 2, 1 << r)
         view[:, 1] += view[:, 0]
-    return finished[-1] - finished
+    unfinished: Ints = finished[-1] - finished
+    return unfinished
 
 
 def _from_the_back(bill: _Bill) -> Ints:
