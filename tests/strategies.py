@@ -30,26 +30,28 @@ def shops(
     pairs = draw(st.lists(pair, min_size=1, max_size=max_operations, unique=not parallel))
     size = len(pairs)
     length = draw(st.integers(1, max_seconds))
-    seconds = [length] * size if unit else draw(st.lists(st.integers(1, max_seconds), min_size=size, max_size=size))
+    each = st.just(length) if unit else st.integers(1, max_seconds)
+    seconds = draw(st.lists(each, min_size=size, max_size=size))
     release = [draw(st.integers(0, 6)) if releases else 0 for _ in range(orders)]
     due = [draw(st.one_of(st.none(), st.integers(0, 15))) if dues else None for _ in range(orders)]
     step = [draw(st.one_of(st.just(NO_STEP), st.integers(0, 2))) if steps else NO_STEP for _ in range(size)]
+    counts = [draw(st.integers(1, 3)) if groups else 1 for _ in range(machines)]
     return Shop(
-        machines=tuple(Machine(f"M{k}", count=draw(st.integers(1, 3)) if groups else 1) for k in range(machines)),
+        machines=tuple(Machine(f"M{k}", count=counts[k]) for k in range(machines)),
         orders=Orders(
             tuple(f"J{k}" for k in range(orders)),
             release_s=np.array(release),
             due_s=np.array([NO_DUE if d is None else max(d, r) for d, r in zip(due, release, strict=True)]),
             priority=np.array([draw(st.sampled_from([0.5, 1.0, 2.0])) for _ in range(orders)]),
         ),
-        operations=Operations(
-            np.array([a for a, _ in pairs]), np.array([b for _, b in pairs]), np.array(seconds), step=np.array(step)
-        ),
+        operations=Operations([a for a, _ in pairs], [b for _, b in pairs], seconds, step=step),
     )
 
 
 @st.composite
-def colourings(draw: st.DrawFn, *, max_rounds: int = 7, max_orders: int = 6) -> tuple[np.ndarray, np.ndarray, int]:
+def colourings(
+    draw: st.DrawFn, *, max_rounds: int = 7, max_orders: int = 6
+) -> tuple[np.ndarray, np.ndarray, int]:
     """Colour and order of each operation, every colour used, and the number of colours."""
     rounds = draw(st.integers(1, max_rounds))
     orders = draw(st.integers(1, max_orders))

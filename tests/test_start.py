@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import subprocess
 import sys
 from pathlib import Path
@@ -9,7 +10,9 @@ from pathlib import Path
 import pytest
 
 DATA = Path(__file__).parents[1] / "data"
-HEAVY = ("pandas", "networkx", "plotly.graph_objects", "plotly.express", "ortools", "openpyxl", "numba", "scipy")
+HEAVY = (
+    "pandas", "networkx", "plotly.graph_objects", "plotly.express", "ortools", "openpyxl", "numba", "scipy",
+)  # fmt: skip
 
 
 def loaded(*arguments: str) -> tuple[int, set[str]]:
@@ -22,10 +25,12 @@ def loaded(*arguments: str) -> tuple[int, set[str]]:
         "try:\n    run()\nexcept SystemExit as end:\n    code = end.code or 0\n"
         "print('\\nLOADED', code, *sys.modules)\n"
     )
-    import json
-
     done = subprocess.run(
-        [sys.executable, "-c", code], input=json.dumps(arguments) + "\n", capture_output=True, text=True, check=True
+        [sys.executable, "-c", code],
+        input=json.dumps(arguments) + "\n",
+        capture_output=True,
+        text=True,
+        check=True,
     )
     words = done.stdout.rsplit("LOADED", 1)[1].split()
     return int(words[0]), set(words[1:])

@@ -10,9 +10,12 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 from datetime import UTC, datetime, time, timedelta
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
 
 if TYPE_CHECKING:
+    from collections.abc import Iterable
     from zoneinfo import ZoneInfo
 
 MINUTE = 60
@@ -168,3 +171,49 @@ def minutes_text(seconds: int) -> str:
     """Write a length as decimal minutes, exactly where two digits allow: `30`, `12.5`, `0.25`."""
     whole, rest = divmod(seconds, MINUTE)
     return str(whole) if not rest else f"{seconds / MINUTE:.2f}".rstrip("0")
+
+
+class WorkClock:
+    """Working time around closures: the clock with its closures squeezed out, and back again.
+
+    Second w of working time is the w-th second that is not closed. Methods that know no closures run
+    on working time; their answers are put back on the clock here. All functions take whole seconds,
+    one or a NumPy array of them, and take O(log n) each for n closures.
+
+    Parameters
+    ----------
+    closures
+        Pairs (start, end), in order of time and apart from each other.
+    """
+
+    def __init__(self, closures: Iterable[tuple[int, int]]) -> None:
+        pairs = [(start, end) for start, end in closures if end > 0]
+        starts = np.array([max(start, 0) for start, _ in pairs], np.int64)
+        ends = np.array([end for _, end in pairs], np.int64)
+        self._starts, self._ends = starts, ends
+        self._closed = np.r_[0, np.cumsum(ends - starts)]
+        # Working time at which each closure begins: there the clock jumps.
+        self._jumps = starts - self._closed[:-1]
+
+    def worked(self, moment: Any) -> Any:
+        """Return the working time before a moment of the clock."""
+        done = np.searchsorted(self._ends, moment, side="right")
+        inside = np.searchsorted(self._starts, moment, side="right") > done
+        if not len(self._starts):
+            return moment
+        begun = self._starts[np.minimum(done, len(self._starts) - 1)]
+        return np.where(inside, begun, moment) - self._closed[done]
+
+    def start(self, work: Any) -> Any:
+        """Return the moment at which the next second of work begins: after a closure, if at one."""
+        return work + self._closed[np.searchsorted(self._jumps, work, side="right")]
+
+    def end(self, work: Any) -> Any:
+        """Return the moment at which `work` seconds of work are done: before a closure, if at one."""
+        return work + self._closed[np.searchsorted(self._jumps, work, side="left")]
+
+    def finish(self, begin: int, work: int) -> int:
+        """Return when `work` seconds are done that may begin at `begin` and pause over closures."""
+        if not work:
+            return begin
+        return int(self.end(self.worked(begin) + work))

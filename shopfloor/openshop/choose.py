@@ -6,16 +6,19 @@ from shopfloor.model.results import Choice
 from shopfloor.model.shop import Shop
 from shopfloor.openshop.general import General
 from shopfloor.openshop.method import Method
+from shopfloor.openshop.over_breaks import OverBreaks, all_pause
+from shopfloor.openshop.two_machine import TwoMachine
 from shopfloor.openshop.unit_rounds import UnitRounds
 
 # Exact methods first, in the order of the README's table; the last accepts everything.
-METHODS: tuple[Method, ...] = (UnitRounds(), General())
+METHODS: tuple[Method, ...] = (UnitRounds(), TwoMachine(), General())
 
 
 def choose(shop: Shop) -> tuple[Method, Choice]:
     """Return the first method that accepts `shop`, with the reasons for and against."""
     refused: dict[str, str] = {}
-    for method in METHODS:
+    methods = [OverBreaks(method) for method in METHODS] if all_pause(shop) else METHODS
+    for method in methods:
         reason = method.accepts(shop)
         if reason is None:
             return method, Choice(method.name, method.promise(shop), refused)

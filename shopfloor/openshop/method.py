@@ -78,3 +78,16 @@ class Method(Protocol):
 
     def solve(self, shop: Shop, effort: Effort) -> Outcome:
         """Return the best schedule found; never an illegal one."""
+
+
+def why_not_plain(shop: Shop) -> str | None:
+    """Return None when orders go any way at any time, or the first thing that restricts them."""
+    if shop.has_steps:
+        return "some orders fix the sequence of their steps"
+    if len(shop) and shop.head_s.any():
+        return "some orders are released after the shift's start"
+    if any(machine.crew is not None for machine in shop.machines):
+        return "a crew limits how much runs at once"
+    if shop.breaks:
+        return "breaks interrupt the shift"
+    return None

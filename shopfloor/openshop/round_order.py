@@ -41,26 +41,22 @@ class RoundOrder:
     exact: bool
 
 
-def order_rounds(
-    colour: Ints, job: Ints, rounds: int, length_s: int, due_s: Ints, priority: Any
-) -> RoundOrder:
+def order_rounds(colour: Ints, job: Ints, ends: Ints, due_s: Ints, priority: Any) -> RoundOrder:
     """Return a good order of the rounds of a colouring.
 
     Parameters
     ----------
     colour, job
         Round and order of each operation; colours are 0 … rounds-1.
-    rounds
-        How many rounds there are.
-    length_s
-        Length of one round in seconds.
+    ends
+        When the first, second, … round ends, in seconds; their number is the number of colours.
     due_s, priority
         An entry an order; ``NO_DUE`` where an order has none.
     """
     weight = np.rint(np.asarray(priority, dtype=np.float64) * PRIORITY_UNIT).astype(np.int64)
     pairs = np.unique(np.stack([colour, job]), axis=1) if len(colour) else np.empty((2, 0), np.int64)
-    bill = _Bill(pairs[0], pairs[1], rounds, length_s, due_s, weight)
-    exact = rounds <= EXACT_ROUNDS
+    bill = _Bill(pairs[0], pairs[1], np.asarray(ends, np.int64), due_s, weight)
+    exact = len(ends) <= EXACT_ROUNDS
     position = _by_sets(bill) if exact else _improve(bill, _from_the_back(bill))
     tardiness, completion = bill.total(position)
     return RoundOrder(position, tardiness, completion, proved=exact or tardiness == 0, exact=exact)
@@ -69,10 +65,8 @@ def order_rounds(
 class _Bill:
     """What a permutation costs; `colour` and `job` list each pair of a round and an order in it once."""
 
-    def __init__(
-        self, colour: Ints, job: Ints, rounds: int, length_s: int, due_s: Ints, weight: Ints
-    ) -> None:
-        self.colour, self.job, self.rounds, self.length_s = colour, job, rounds, length_s
+    def __init__(self, colour: Ints, job: Ints, ends: Ints, due_s: Ints, weight: Ints) -> None:
+        self.colour, self.job, self.ends, self.rounds = colour, job, ends, len(ends)
         self.due_s, self.weight = due_s, weight
         self.has_work = np.bincount(job, minlength=len(weight)) > 0
 
@@ -80,17 +74,17 @@ class _Bill:
         """Return weighted tardiness and weighted completion of one permutation."""
         last = np.full(len(self.weight), -1, np.int64)
         np.maximum.at(last, self.job, position[self.colour])
-        done = (last + 1) * self.length_s
+        done = np.r_[self.ends, 0][last]  # -1, an order without operations, takes the zero
         late = np.where(self.has_work & (self.due_s != NO_DUE), np.maximum(done - self.due_s, 0), 0)
         return int((self.weight * late).sum()), int((self.weight * done).sum())
 
     def round_cost(self, t: int) -> tuple[Ints, Ints]:
         """Return what one more unfinished round costs each order when it is the t-th, counted from 0."""
-        begin, end = t * self.length_s, (t + 1) * self.length_s
+        begin, end = int(self.ends[t - 1]) if t else 0, int(self.ends[t])
         due = np.where(self.due_s == NO_DUE, end, self.due_s)
         # An order already late at time zero has been charged for that in full at the first round.
         begin_late = np.maximum(begin - due, 0) if t else 0
-        return self.weight * (np.maximum(end - due, 0) - begin_late), self.weight * self.length_s
+        return self.weight * (np.maximum(end - due, 0) - begin_late), self.weight * (end - begin)
 
 
 def _by_sets(bill: _Bill) -> Ints:
@@ -138,10 +132,10 @@ def _unfinished(masks: Ints, charge: Ints, rounds: int) -> Ints:
 def _from_the_back(bill: _Bill) -> Ints:
     """Fill positions from the last to the first, each with the round that costs least there.
 
-    With t rounds left, a round's cost is Σ w·max(0, t·length - due) over its orders not yet placed;
-    kept as slope · t·length - level, so each order enters and leaves each of its rounds once.
+    Last of those left, a round costs Σ w·max(0, end - due) over its orders not yet placed; kept as
+    slope · end - level, so each order enters and leaves each of its rounds once.
     """
-    rounds, length = bill.rounds, bill.length_s
+    rounds = bill.rounds
     by_job = np.argsort(bill.job, kind="stable")
     colour_of = bill.colour[by_job]
     ends = np.searchsorted(bill.job[by_job], np.arange(len(bill.weight) + 1))
@@ -149,7 +143,7 @@ def _from_the_back(bill: _Bill) -> Ints:
     job_of = bill.job[by_colour]
     starts = np.searchsorted(bill.colour[by_colour], np.arange(rounds + 1))
 
-    late = bill.has_work & (bill.due_s < rounds * length)
+    late = bill.has_work & (bill.due_s < bill.ends[-1])
     slope = np.bincount(bill.colour, (bill.weight * late)[bill.job], rounds)
     level = np.bincount(bill.colour, (bill.weight * np.where(late, bill.due_s, 0))[bill.job], rounds)
     weight = np.bincount(bill.colour, bill.weight[bill.job].astype(np.float64), rounds)
@@ -162,17 +156,18 @@ def _from_the_back(bill: _Bill) -> Ints:
         slope[mine] -= bill.weight[j]
         level[mine] -= bill.weight[j] * bill.due_s[j]
 
-    for t in range(rounds, 0, -1):
-        while soonest_last and bill.due_s[soonest_last[-1]] >= t * length:
+    for t in range(rounds - 1, -1, -1):
+        end = int(bill.ends[t])
+        while soonest_last and bill.due_s[soonest_last[-1]] >= end:
             j = soonest_last.pop()
             if not placed[j]:
                 leave(j)
                 late[j] = False
         candidates = np.flatnonzero(open_rounds)
-        cost = slope[candidates] * (t * length) - level[candidates]
+        cost = slope[candidates] * end - level[candidates]
         cheapest = candidates[cost <= cost.min()]
         chosen = int(cheapest[weight[cheapest].argmin()])
-        position[chosen], open_rounds[chosen] = t - 1, False
+        position[chosen], open_rounds[chosen] = t, False
         for j in job_of[starts[chosen] : starts[chosen + 1]].tolist():
             if not placed[j]:
                 placed[j] = True

@@ -11,7 +11,7 @@ A group of k units is k nodes: its operations are dealt out evenly, so the busie
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -20,8 +20,8 @@ from shopfloor.model.calendar import duration
 from shopfloor.model.results import Outcome
 from shopfloor.model.schedule import Schedule
 from shopfloor.model.shop import Ints, Shop
-from shopfloor.openshop.method import Effort
-from shopfloor.openshop.round_order import order_rounds
+from shopfloor.openshop.method import Effort, why_not_plain
+from shopfloor.openshop.round_order import RoundOrder, order_rounds
 
 
 @dataclass(frozen=True, slots=True)
@@ -58,11 +58,9 @@ def why_not_unit(shop: Shop) -> str | None:
     seconds = shop.operations.seconds
     if len(seconds) and int(seconds.min()) != int(seconds.max()):
         return f"times differ ({duration(int(seconds.min()))} to {duration(int(seconds.max()))})"
-    if shop.has_steps:
-        return "some orders fix the sequence of their steps"
-    if len(shop) and shop.head_s.any():
-        return "some orders are released after the shift's start"
-    return None
+    if shop.breaks and any(machine.pauses for machine in shop.machines):
+        return "some machines pause over the breaks and others do not"
+    return why_not_plain(replace(shop, breaks=()))
 
 
 def deal_out(shop: Shop) -> tuple[Ints, Ints]:
@@ -87,25 +85,42 @@ def deal_out(shop: Shop) -> tuple[Ints, Ints]:
 
 def rounds_to_outcome(shop: Shop, unit: Ints, colour: Ints) -> Outcome:
     """Turn a colouring into a schedule: put its rounds in a good order and say how good it is."""
-    rounds, length = int(colour.max()) + 1, int(shop.operations.seconds[0])
+    starts = round_starts(shop, int(colour.max()) + 1)
+    ends = starts + int(shop.operations.seconds[0])
     orders = shop.orders
-    order = order_rounds(colour, shop.operations.job, rounds, length, orders.due_s, orders.priority)
+    order = order_rounds(colour, shop.operations.job, ends, orders.due_s, orders.priority)
     place = order.position[colour]
-    schedule = Schedule(
-        operation=np.arange(len(shop)),
-        start_s=place * length,
-        end_s=(place + 1) * length,
-        unit=unit,
-        round=place + 1,
+    schedule = Schedule(np.arange(len(shop)), starts[place], ends[place], unit=unit, round=place + 1)
+    return Outcome(schedule, remarks=_about_lateness(shop, order))
+
+
+def round_starts(shop: Shop, rounds: int) -> Ints:
+    """Return the start of each round: back to back, but never across one of the hall's breaks.
+
+    In each opening between breaks a machine, or an order, has room for as many whole rounds as fit,
+    whichever they are; so starting rounds as early as they fit keeps the least number of rounds optimal.
+    """
+    length = int(shop.operations.seconds[0])
+    starts: list[int] = []
+    moment, breaks = 0, list(shop.breaks)
+    while len(starts) < rounds:
+        if breaks and moment + length > breaks[0].start_s:
+            moment = max(moment, breaks.pop(0).end_s)
+        else:
+            starts.append(moment)
+            moment += length
+    return np.array(starts, np.int64)
+
+
+def _about_lateness(shop: Shop, order: RoundOrder) -> tuple[str, ...]:
+    """Say what the order of rounds did for the due times, and whether that is proved least."""
+    if not shop.has_due:
+        return ()
+    if order.tardiness == 0:
+        return ("The rounds were put in an order in which nothing is late.",)
+    proof = (
+        "no other order of these rounds has less weighted lateness"
+        if order.proved
+        else "another order of these rounds might have less weighted lateness"
     )
-    remarks = []
-    if shop.has_due:
-        left = "no order is late" if order.tardiness == 0 else "what lateness remains"
-        proof = (
-            "is the least that any order of these rounds can have"
-            if order.proved
-            else "may not be the least that these rounds allow"
-        )
-        what = f"{left}, which" if order.tardiness == 0 else f"{left}"
-        remarks.append(f"The rounds were put in order for the due times: {what} {proof}.")
-    return Outcome(schedule, proven_s=0, remarks=tuple(remarks))
+    return (f"The rounds were put in order for the due times; {proof}.",)

@@ -1,4 +1,4 @@
-"""Load bounds: right value, a witness that carries it, a sentence for the lead, and never above the optimum."""
+"""Load bounds: right value, a witness that carries it, a sentence, and never above the optimum."""
 
 from __future__ import annotations
 
