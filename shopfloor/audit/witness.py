@@ -1,0 +1,279 @@
+"""Derives every stated lower bound again from its witness, by arithmetic on the shop alone.
+
+To add a kind: one function here, one line in ``KINDS``. A kind that arithmetic cannot check, such as what a
+solver proved, has a line in ``CLAIMS`` instead: it is accepted as a claim, and the audit says so.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+
+from shopfloor.audit.columns import run_starts, run_sums
+from shopfloor.model.calendar import duration
+from shopfloor.model.results import Bound, Violation
+from shopfloor.model.shop import NO_STEP, Ints, Shop
+from shopfloor.model.stated import StatedPlan
+
+
+@dataclass(frozen=True, slots=True)
+class Verdict:
+    """What became of one stated bound.
+
+    Attributes
+    ----------
+    value_s
+        Derived from the witness; None where nothing could be derived.
+    wrong
+        The rule broken and why, or None.
+    note
+        What was accepted without proof, or empty.
+    """
+
+    bound: Bound
+    value_s: int | None = None
+    wrong: tuple[str, str] | None = None
+    note: str = ""
+
+    @property
+    def holds(self) -> bool:
+        """Whether a plan may lean on the bound."""
+        return self.wrong is None
+
+
+class _UnusableError(Exception):
+    """The witness proves nothing; the message is the end of a sentence that begins with its name."""
+
+
+class _Work:
+    """The work of a shop, by order and by machine, with heads and tails; sums made when first needed."""
+
+    def __init__(self, shop: Shop) -> None:
+        self.shop = shop
+        self.job, self.machine = shop.operations.job, shop.operations.machine
+        self.seconds, self.step = shop.operations.seconds, shop.operations.step
+
+    def order(self, name: str) -> int:
+        return _find(self._orders, name, "order")
+
+    def machine_of(self, name: str) -> int:
+        return _find(self._machines, name, "machine")
+
+    def of_order(self, job: int) -> Ints:
+        """Operations of one order."""
+        return _slice(self._by_job, self.job, job)
+
+    def on_machine(self, machine: int) -> Ints:
+        """Operations on one machine."""
+        return _slice(self._by_machine, self.machine, machine)
+
+    @cached_property
+    def heads_and_tails(self) -> tuple[Ints, Ints]:
+        """Earliest start of each operation that its order allows, and the order's work after its end."""
+        head = self.shop.orders.release_s[self.job].astype(np.int64)
+        tail = np.zeros(len(self.job), np.int64)
+        ranked = np.flatnonzero(self.step != NO_STEP)
+        order = ranked[np.lexsort((self.step[ranked], self.job[ranked]))]
+        if not len(order):
+            return head, tail
+        level = run_starts(self.job[order], self.step[order])  # a level: one step of one order
+        work = run_sums(level, self.seconds[order])
+        job = self.job[order][level]
+        done = np.cumsum(work)
+        orders = run_starts(job)
+        before_order = (done - work)[orders][np.cumsum(orders) - 1]
+        order_work = run_sums(orders, work)[np.cumsum(orders) - 1]
+        lower = done - work - before_order
+        place = np.cumsum(level) - 1
+        head[order] += lower[place]
+        tail[order] = (order_work - lower - work)[place]
+        return head, tail
+
+    @cached_property
+    def _orders(self) -> dict[str, int]:
+        return {name: index for index, name in enumerate(self.shop.orders.ids)}
+
+    @cached_property
+    def _machines(self) -> dict[str, int]:
+        return {machine.id: index for index, machine in enumerate(self.shop.machines)}
+
+    @cached_property
+    def _by_job(self) -> Ints:
+        return np.argsort(self.job, kind="stable")
+
+    @cached_property
+    def _by_machine(self) -> Ints:
+        return np.argsort(self.machine, kind="stable")
+
+
+def _find(index: Mapping[str, int], name: str, what: str) -> int:
+    if name not in index:
+        raise _UnusableError(f"names {what} {name!r}, which the shop does not have")
+    return index[name]
+
+
+def _slice(sorter: Ints, column: Ints, value: int) -> Ints:
+    left = np.searchsorted(column, value, "left", sorter=sorter)
+    return sorter[left : np.searchsorted(column, value, "right", sorter=sorter)]
+
+
+# ---- one function a kind --------------------------------------------------------------------------
+
+
+def _order(work: _Work, witness: Mapping[str, Any]) -> int:
+    """An order is in one place at a time: its release, then all its work."""
+    job = work.order(_name(witness, "order"))
+    return int(work.shop.orders.release_s[job]) + int(work.seconds[work.of_order(job)].sum())
+
+
+def _machine(work: _Work, witness: Mapping[str, Any]) -> int:
+    """What cannot reach a machine before `from_s` takes its load over the units, and leaves a tail."""
+    machine = work.machine_of(_name(witness, "machine"))
+    begin = _whole(witness, "from_s")
+    operations = work.on_machine(machine)
+    head, tail = work.heads_and_tails
+    operations = operations[head[operations] >= begin]
+    if not len(operations):
+        raise _UnusableError(f"counts no operation: none reaches the machine from {begin} s on")
+    load, least = int(work.seconds[operations].sum()), int(tail[operations].min())
+    _agree(witness, "load_s", load, "the load is")
+    _agree(witness, "tail_s", least, "the least work afterwards is")
+    return begin - (-load // work.shop.machines[machine].count) + least
+
+
+def _rounds(work: _Work, witness: Mapping[str, Any]) -> int:
+    """With d equally long operations on k units, one unit runs at least ⌈d/k⌉ of them."""
+    node, name, length = _name(witness, "node"), _name(witness, "id"), _whole(witness, "round_s")
+    if node == "order":
+        operations, count = work.of_order(work.order(name)), 1
+    elif node == "machine":
+        machine = work.machine_of(name)
+        operations, count = work.on_machine(machine), work.shop.machines[machine].count
+    else:
+        raise _UnusableError(f"has the node {node!r}, which is neither order nor machine")
+    other = work.seconds[operations] != length
+    if other.any():
+        seconds = int(work.seconds[operations][other][0])
+        raise _UnusableError(
+            f"counts rounds of {duration(length)}, but {name} has a visit of {duration(seconds)}"
+        )
+    if len(operations) != _whole(witness, "operations"):
+        raise _UnusableError(f"states {witness['operations']} operations, but {name} has {len(operations)}")
+    return -(-len(operations) // count) * length
+
+
+def _longest(work: _Work, witness: Mapping[str, Any]) -> int:
+    """No plan ends before its longest operation, begun as soon as its order is released."""
+    job, machine = work.order(_name(witness, "order")), work.machine_of(_name(witness, "machine"))
+    operations = work.of_order(job)
+    operations = operations[work.machine[operations] == machine]
+    if not len(operations):
+        raise _UnusableError(f"names a visit that order {witness['order']} does not make")
+    return int(work.shop.orders.release_s[job]) + int(work.seconds[operations].max())
+
+
+KINDS: dict[str, Callable[[_Work, Mapping[str, Any]], int]] = {
+    "order": _order,
+    "machine": _machine,
+    "rounds": _rounds,
+    "longest": _longest,
+}
+
+CLAIMS: dict[str, str] = {
+    "solver": "was proved by a solver's search and cannot be derived again by arithmetic",
+}
+
+
+# ---- reading a witness ----------------------------------------------------------------------------
+
+
+def _name(witness: Mapping[str, Any], key: str) -> str:
+    value = _entry(witness, key)
+    if not isinstance(value, str):
+        raise _UnusableError(f"has {key} {value!r}, which is no name")
+    return value
+
+
+def _whole(witness: Mapping[str, Any], key: str) -> int:
+    value = _entry(witness, key)
+    if isinstance(value, bool) or not isinstance(value, int) or value < 0:
+        raise _UnusableError(f"has {key} {value!r}, which is no whole number from 0")
+    return value
+
+
+def _entry(witness: Mapping[str, Any], key: str) -> Any:
+    if key not in witness:
+        raise _UnusableError(f"lacks {key}")
+    return witness[key]
+
+
+def _agree(witness: Mapping[str, Any], key: str, value: int, what: str) -> None:
+    stated = _whole(witness, key)
+    if stated != value:
+        raise _UnusableError(f"states {key} {stated}, but {what} {value} s")
+
+
+# ---- verdicts --------------------------------------------------------------------------------------
+
+
+def rederive(shop: Shop, bound: Bound) -> int | str:
+    """Return the value that the witness of `bound` proves, in seconds, or a sentence on why it proves none.
+
+    `bound.value_s` is not looked at. O(m log m) for m operations.
+    """
+    return _rederive(_Work(shop), bound)
+
+
+def _rederive(work: _Work, bound: Bound) -> int | str:
+    if bound.kind in CLAIMS:
+        return f"The {bound.kind} bound {CLAIMS[bound.kind]}."
+    if bound.kind not in KINDS:
+        return f"A bound of the kind {bound.kind!r} is unknown, so nothing can be derived from it."
+    try:
+        return KINDS[bound.kind](work, bound.witness)
+    except _UnusableError as reason:
+        return f"The witness of the {bound.kind} bound {reason}."
+
+
+def judge(shop: Shop, bounds: Sequence[Bound]) -> list[Verdict]:
+    """Return what becomes of each bound when derived again; O((m + b) log m) plus the witnesses' work."""
+    work = _Work(shop)
+    return [_verdict(work, bound) for bound in bounds]
+
+
+def _verdict(work: _Work, bound: Bound) -> Verdict:
+    value = _rederive(work, bound)
+    if bound.kind in CLAIMS:
+        stated = work.shop.clock.say(bound.value_s)
+        note = f"That nothing can end before {stated} {CLAIMS[bound.kind]}; it is accepted as a claim."
+        return Verdict(bound, note=note)
+    if isinstance(value, str):
+        return Verdict(bound, wrong=("bound-witness" if bound.kind in KINDS else "bound-unknown", value))
+    if value != bound.value_s:
+        say = work.shop.clock.say
+        sentence = (
+            f"The {bound.kind} bound states {say(bound.value_s)}, but its witness proves {say(value)}"
+            f" ({bound.value_s} s against {value} s)."
+        )
+        return Verdict(bound, value, ("bound-value", sentence))
+    return Verdict(bound, value)
+
+
+def audit_bounds(shop: Shop, stated: StatedPlan) -> tuple[list[Violation], list[str]]:
+    """Derive every bound that a plan states again.
+
+    Returns
+    -------
+    violations, notes
+        A violation for each bound that its witness does not prove; a sentence for each that was accepted
+        as a claim, because arithmetic cannot check it.
+    """
+    verdicts = judge(shop, stated.bounds)
+    return (
+        [Violation(*verdict.wrong) for verdict in verdicts if verdict.wrong],
+        [verdict.note for verdict in verdicts if verdict.note],
+    )
