@@ -42,10 +42,8 @@ def lower_bound(reading: Reading) -> Breaches:
 
     def say() -> str:
         assert stated is not None
-        proof = (
-            f"the best of its bounds that holds is {reading.at(best)}" if best else "none of its bounds holds"
-        )
-        return f"The plan states the lower bound {reading.at(stated)}, but {proof}."
+        proof = f"the best that holds is {reading.at(best)}" if best else "none holds"
+        return f"The plan states the lower bound {reading.at(stated)}, but of the bounds in it {proof}."
 
     return claim(stated is not None and stated != best, say)
 

@@ -25,7 +25,8 @@ def ranks(first: Bools) -> Ints:
     if not len(first):
         return np.zeros(0, np.int64)
     begins = np.flatnonzero(first)
-    return np.arange(len(first), dtype=np.int64) - begins[np.cumsum(first) - 1]
+    rank: Ints = np.arange(len(first)) - begins[np.cumsum(first) - 1]
+    return rank
 
 
 def run_sums(first: Bools, values: Ints) -> Ints:

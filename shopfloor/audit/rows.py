@@ -62,8 +62,7 @@ def extra_rows(reading: Reading) -> Breaches:
         again = f"{reading.visit(other)}, and again {reading.span(row)}" if other >= 0 else reading.visit(row)
         return f"{again}: the orders ask for this visit {often}."
 
-    order = np.argsort(extra, kind="stable")
-    return Breaches(np.column_stack([rival[order], extra[order]]), say)
+    return Breaches(np.column_stack([rival, extra]), say)
 
 
 def _rivals(reading: Reading, extra: Ints) -> tuple[Ints, Ints]:
@@ -154,7 +153,8 @@ def splits(reading: Reading) -> Breaches:
 
 
 def _may_split(shop: Shop, operations: Ints) -> Bools:
-    return shop.operations.splittable[operations] == 1
+    may: Bools = shop.operations.splittable[operations] == 1
+    return may
 
 
 def part_numbers(reading: Reading) -> Breaches:

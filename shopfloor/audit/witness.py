@@ -45,7 +45,7 @@ class Verdict:
         return self.wrong is None
 
 
-class _UnusableError(Exception):
+class _NoProofError(Exception):
     """The witness proves nothing; the message is the end of a sentence that begins with its name."""
 
 
@@ -112,7 +112,7 @@ class _Work:
 
 def _find(index: Mapping[str, int], name: str, what: str) -> int:
     if name not in index:
-        raise _UnusableError(f"names {what} {name!r}, which the shop does not have")
+        raise _NoProofError(f"names {what} {name!r}, which the shop does not have")
     return index[name]
 
 
@@ -138,7 +138,7 @@ def _machine(work: _Work, witness: Mapping[str, Any]) -> int:
     head, tail = work.heads_and_tails
     operations = operations[head[operations] >= begin]
     if not len(operations):
-        raise _UnusableError(f"counts no operation: none reaches the machine from {begin} s on")
+        raise _NoProofError(f"counts no operation: none reaches the machine from {begin} s on")
     load, least = int(work.seconds[operations].sum()), int(tail[operations].min())
     _agree(witness, "load_s", load, "the load is")
     _agree(witness, "tail_s", least, "the least work afterwards is")
@@ -154,15 +154,15 @@ def _rounds(work: _Work, witness: Mapping[str, Any]) -> int:
         machine = work.machine_of(name)
         operations, count = work.on_machine(machine), work.shop.machines[machine].count
     else:
-        raise _UnusableError(f"has the node {node!r}, which is neither order nor machine")
+        raise _NoProofError(f"has the node {node!r}, which is neither order nor machine")
     other = work.seconds[operations] != length
     if other.any():
         seconds = int(work.seconds[operations][other][0])
-        raise _UnusableError(
+        raise _NoProofError(
             f"counts rounds of {duration(length)}, but {name} has a visit of {duration(seconds)}"
         )
     if len(operations) != _whole(witness, "operations"):
-        raise _UnusableError(f"states {witness['operations']} operations, but {name} has {len(operations)}")
+        raise _NoProofError(f"states {witness['operations']} operations, but {name} has {len(operations)}")
     return -(-len(operations) // count) * length
 
 
@@ -172,7 +172,7 @@ def _longest(work: _Work, witness: Mapping[str, Any]) -> int:
     operations = work.of_order(job)
     operations = operations[work.machine[operations] == machine]
     if not len(operations):
-        raise _UnusableError(f"names a visit that order {witness['order']} does not make")
+        raise _NoProofError(f"names a visit that order {witness['order']} does not make")
     return int(work.shop.orders.release_s[job]) + int(work.seconds[operations].max())
 
 
@@ -194,27 +194,27 @@ CLAIMS: dict[str, str] = {
 def _name(witness: Mapping[str, Any], key: str) -> str:
     value = _entry(witness, key)
     if not isinstance(value, str):
-        raise _UnusableError(f"has {key} {value!r}, which is no name")
+        raise _NoProofError(f"has {key} {value!r}, which is no name")
     return value
 
 
 def _whole(witness: Mapping[str, Any], key: str) -> int:
     value = _entry(witness, key)
     if isinstance(value, bool) or not isinstance(value, int) or value < 0:
-        raise _UnusableError(f"has {key} {value!r}, which is no whole number from 0")
+        raise _NoProofError(f"has {key} {value!r}, which is no whole number from 0")
     return value
 
 
 def _entry(witness: Mapping[str, Any], key: str) -> Any:
     if key not in witness:
-        raise _UnusableError(f"lacks {key}")
+        raise _NoProofError(f"lacks {key}")
     return witness[key]
 
 
 def _agree(witness: Mapping[str, Any], key: str, value: int, what: str) -> None:
     stated = _whole(witness, key)
     if stated != value:
-        raise _UnusableError(f"states {key} {stated}, but {what} {value} s")
+        raise _NoProofError(f"states {key} {stated}, but {what} {value} s")
 
 
 # ---- verdicts --------------------------------------------------------------------------------------
@@ -235,7 +235,7 @@ def _rederive(work: _Work, bound: Bound) -> int | str:
         return f"A bound of the kind {bound.kind!r} is unknown, so nothing can be derived from it."
     try:
         return KINDS[bound.kind](work, bound.witness)
-    except _UnusableError as reason:
+    except _NoProofError as reason:
         return f"The witness of the {bound.kind} bound {reason}."
 
 
