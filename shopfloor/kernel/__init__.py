@@ -1,0 +1,1 @@
+"""Integers and graphs: the mathematics under the shop, knowing nothing of orders or machines."""
