@@ -12,6 +12,7 @@ import numpy as np
 from shopfloor.audit.columns import run_starts
 from shopfloor.audit.match import match_rows
 from shopfloor.audit.witness import Verdict, judge
+from shopfloor.audit.words import moment
 from shopfloor.model.calendar import duration
 from shopfloor.model.shop import Bools, Ints, Shop
 from shopfloor.model.stated import StatedPlan
@@ -116,8 +117,8 @@ class Reading:
     # ---- in words ------------------------------------------------------------------------------
 
     def at(self, seconds: Any) -> str:
-        """A moment, for a sentence."""
-        return self.shop.clock.say(int(seconds))
+        """A moment, for a sentence; elapsed where a plan states a time that no calendar holds."""
+        return moment(self.shop.clock, int(seconds))
 
     def span(self, row: int) -> str:
         """When a row runs: `from 06:30 to 07:00`."""

@@ -189,6 +189,6 @@ def _nearest(names: tuple[str, ...]) -> Callable[[str], str]:
         if len(names) > MOST_NAMES_COMPARED:
             return ""
         close = get_close_matches(name, names, n=1)
-        return f"; did you mean {close[0]}?" if close else ""
+        return f"; the nearest is {close[0]}" if close else ""
 
     return nearest

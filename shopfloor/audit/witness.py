@@ -14,6 +14,7 @@ from typing import Any
 import numpy as np
 
 from shopfloor.audit.columns import run_starts, run_sums
+from shopfloor.audit.words import moment
 from shopfloor.model.calendar import duration
 from shopfloor.model.results import Bound, Violation
 from shopfloor.model.shop import NO_STEP, Ints, Shop
@@ -248,15 +249,15 @@ def judge(shop: Shop, bounds: Sequence[Bound]) -> list[Verdict]:
 def _verdict(work: _Work, bound: Bound) -> Verdict:
     value = _rederive(work, bound)
     if bound.kind in CLAIMS:
-        stated = work.shop.clock.say(bound.value_s)
+        stated = moment(work.shop.clock, bound.value_s)
         note = f"That nothing can end before {stated} {CLAIMS[bound.kind]}; it is accepted as a claim."
         return Verdict(bound, note=note)
     if isinstance(value, str):
         return Verdict(bound, wrong=("bound-witness" if bound.kind in KINDS else "bound-unknown", value))
     if value != bound.value_s:
-        say = work.shop.clock.say
+        clock = work.shop.clock
         sentence = (
-            f"The {bound.kind} bound states {say(bound.value_s)}, but its witness proves {say(value)}"
+            f"The {bound.kind} bound states {moment(clock, bound.value_s)}, but its witness proves {moment(clock, value)}"
             f" ({bound.value_s} s against {value} s)."
         )
         return Verdict(bound, value, ("bound-value", sentence))
