@@ -12,14 +12,14 @@ import numpy as np
 
 from shopfloor.model.calendar import duration
 from shopfloor.model.results import Bound
-from shopfloor.model.shop import Ints, Shop
+from shopfloor.model.shop import Ints, Machine, Shop
 
 ORDERS_SHOWN = 5  # a shop may hold 100,000 orders; the longest few are worth printing
 
 
 def order_bounds(shop: Shop) -> list[Bound]:
     """Return the bounds of the longest few orders: release plus all of the order's run time."""
-    totals = shop.orders.release_s + shop.job_load_s
+    totals = shop.work_clock.worked(shop.orders.release_s) + shop.job_load_s
     busy = np.flatnonzero(shop.job_load_s)
     longest = busy[np.lexsort((busy, -totals[busy]))][:ORDERS_SHOWN]
     return [_order_bound(shop, int(job)) for job in longest]
@@ -27,13 +27,14 @@ def order_bounds(shop: Shop) -> list[Bound]:
 
 def _order_bound(shop: Shop, job: int) -> Bound:
     name, release, load = shop.orders.ids[job], int(shop.orders.release_s[job]), int(shop.job_load_s[job])
+    value = shop.work_clock.finish(release, load)
     when = f" and cannot start before {shop.clock.say(release)}" if release else ""
     return Bound(
         kind="order",
-        value_s=release + load,
+        value_s=value,
         witness={"order": name},
         sentence=f"Order {name} needs {duration(load)} of machine time, one machine at a time{when}, "
-        f"so nothing can end before {shop.clock.say(release + load)}.",
+        f"so nothing can end before {shop.clock.say(value)}.",
     )
 
 
@@ -59,7 +60,8 @@ def _machine_bound(shop: Shop, machine: int, operations: Ints) -> Bound:
     heads = heads[latest_first]
     loads = np.cumsum(shop.operations.seconds[operations][latest_first])
     tails = np.minimum.accumulate(shop.tail_s[operations][latest_first])
-    values = heads - (-loads // count) + tails
+    clock = shop.work_clock
+    values = clock.end(clock.worked(heads) - (-loads // count) + tails)
     # A threshold is only honest once every operation with that same head is inside it.
     whole = np.r_[heads[1:] != heads[:-1], True]
     best = int(np.where(whole, values, -1).argmax())
@@ -85,28 +87,64 @@ def _machine_sentence(shop: Shop, machine: int, head: int, load: int, tail: int,
 
 
 def round_bounds(shop: Shop) -> list[Bound]:
-    """Return bounds in whole rounds for groups, where all operations take the same time.
+    """Return bounds in whole rounds where all operations take the same time and none may be cut.
 
-    With d operations on k units some unit runs at least ⌈d/k⌉ of them, which may be more than the
-    load divided by k. Empty when times differ or no group has more than one unit.
+    With d operations on k units some unit runs at least ⌈d/k⌉ of them, which may be more than the load
+    divided by k; and where work does not pause, none of them runs across a break, so a machine or an
+    order needs that many openings. Empty when neither says more than the load does.
     """
     seconds = shop.operations.seconds
-    if not len(seconds) or int(seconds.min()) != int(seconds.max()):
+    if not len(seconds) or int(seconds.min()) != int(seconds.max()) or shop.has_splits:
         return []
-    length = int(seconds[0])
-    degrees = np.bincount(shop.operations.machine, minlength=len(shop.machines))
-    bounds = []
-    for degree, machine in zip(degrees.tolist(), shop.machines, strict=True):
-        if machine.count > 1 and degree:
-            rounds = -(-degree // machine.count)
-            bounds.append(
-                Bound(
-                    kind="rounds",
-                    value_s=rounds * length,
-                    witness={"node": "machine", "id": machine.id, "operations": degree, "round_s": length},
-                    sentence=f"The {machine.count} units of {machine.id} share {degree} operations of "
-                    f"{duration(length)}, so one of them runs at least {rounds}, "
-                    f"and nothing can end before {shop.clock.say(rounds * length)}.",
-                )
-            )
+    degrees = np.bincount(shop.operations.machine, minlength=len(shop.machines)).tolist()
+    stiff = bool(shop.breaks) and not any(machine.pauses for machine in shop.machines)
+    bounds = [
+        _rounds_of_machine(shop, machine, degree)
+        for degree, machine in zip(degrees, shop.machines, strict=True)
+        if degree and (stiff or machine.count > 1)
+    ]
+    if stiff:
+        visits = np.bincount(shop.operations.job, minlength=len(shop.orders))
+        busiest = np.lexsort((np.arange(len(visits)), -visits))[:ORDERS_SHOWN]
+        bounds += [_rounds_of_order(shop, int(job), int(visits[job])) for job in busiest if visits[job]]
     return bounds
+
+
+def _rounds_of_machine(shop: Shop, machine: Machine, degree: int) -> Bound:
+    length, rounds = int(shop.operations.seconds[0]), -(-degree // machine.count)
+    value = _end_of_rounds(shop, machine.pauses, length, rounds)
+    has = f"{machine.id} has" if machine.count == 1 else f"The {machine.count} units of {machine.id} share"
+    least = "" if machine.count == 1 else f", so one of them runs at least {rounds}"
+    return Bound(
+        kind="rounds",
+        value_s=value,
+        witness={"node": "machine", "id": machine.id, "operations": degree, "round_s": length},
+        sentence=f"{has} {_operations(degree)} of {duration(length)}{least}{_around(shop, machine.pauses)}, "
+        f"so nothing can end before {shop.clock.say(value)}.",
+    )
+
+
+def _rounds_of_order(shop: Shop, job: int, degree: int) -> Bound:
+    length, name = int(shop.operations.seconds[0]), shop.orders.ids[job]
+    value = _end_of_rounds(shop, False, length, degree)
+    return Bound(
+        kind="rounds",
+        value_s=value,
+        witness={"node": "order", "id": name, "operations": degree, "round_s": length},
+        sentence=f"Order {name} has {_operations(degree)} of {duration(length)}, one at a time"
+        f"{_around(shop, False)}, so nothing can end before {shop.clock.say(value)}.",
+    )
+
+
+def _end_of_rounds(shop: Shop, pauses: bool, length: int, rounds: int) -> int:
+    if pauses or not shop.breaks:
+        return shop.work_clock.finish(0, rounds * length)
+    return int(shop.work_clock.whole(0, length, rounds)[-1]) + length
+
+
+def _operations(count: int) -> str:
+    return "1 operation" if count == 1 else f"{count} operations"
+
+
+def _around(shop: Shop, pauses: bool) -> str:
+    return " and none across a break" if shop.breaks and not pauses else ""

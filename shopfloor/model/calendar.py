@@ -18,6 +18,8 @@ if TYPE_CHECKING:
     from collections.abc import Iterable
     from zoneinfo import ZoneInfo
 
+Ints = np.ndarray[Any, np.dtype[np.int64]]
+
 MINUTE = 60
 HOUR = 3600
 DAY = 24 * HOUR
@@ -217,3 +219,20 @@ class WorkClock:
         if not work:
             return begin
         return int(self.end(self.worked(begin) + work))
+
+    def whole(self, begin: int, length: int, count: int) -> Ints:
+        """Return the starts of `count` pieces of `length`, one after the other, none across a closure.
+
+        The first starts at `begin` or later. No other way of placing them ends earlier, since each
+        opening takes as many as fit.
+        """
+        starts: list[int] = []
+        moment, next_closure = begin, int(np.searchsorted(self._ends, begin, side="right"))
+        while len(starts) < count:
+            if next_closure < len(self._starts) and moment + length > self._starts[next_closure]:
+                moment = max(moment, int(self._ends[next_closure]))
+                next_closure += 1
+            else:
+                starts.append(moment)
+                moment += length
+        return np.array(starts, np.int64)

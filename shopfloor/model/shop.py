@@ -16,13 +16,13 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from shopfloor.errors import ShopError
-from shopfloor.model.calendar import Clock
+from shopfloor.model.calendar import Clock, WorkClock
+from shopfloor.model.calendar import Ints as Ints  # every column of the model is one of these
 
 if TYPE_CHECKING:
     import networkx as nx
     import pandas as pd
 
-Ints = np.ndarray[Any, np.dtype[np.int64]]
 Floats = np.ndarray[Any, np.dtype[np.float64]]
 Bools = np.ndarray[Any, np.dtype[np.bool_]]
 
@@ -336,6 +336,11 @@ class Shop:
         before[order] = total[step_first[step_of]] - total[job_first[job_of]]
         after[order] = total[job_end[job_of]] - total[step_end[step_of]]
         return before, after
+
+    @cached_property
+    def work_clock(self) -> WorkClock:
+        """The hall's clock with its breaks squeezed out."""
+        return WorkClock((pause.start_s, pause.end_s) for pause in self.breaks)
 
     @cached_property
     def has_steps(self) -> bool:

@@ -12,7 +12,6 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from shopfloor.model.calendar import WorkClock
 from shopfloor.model.results import Outcome
 from shopfloor.model.schedule import Schedule
 from shopfloor.model.shop import NO_DUE, Orders, Shop
@@ -53,7 +52,7 @@ class OverBreaks:
 
     def solve(self, shop: Shop, effort: Effort) -> Outcome:
         """Solve in working time and put the answer back on the clock."""
-        clock = _work_clock(shop)
+        clock = shop.work_clock
 
         def report(progress: Progress) -> None:
             best = None if progress.best_s is None else int(clock.end(progress.best_s))
@@ -73,7 +72,7 @@ class OverBreaks:
 
 def squeeze(shop: Shop) -> Shop:
     """Return the shop in working time: no breaks, releases and due times moved by the breaks before them."""
-    clock, orders = _work_clock(shop), shop.orders
+    clock, orders = shop.work_clock, shop.orders
     due = np.where(
         orders.due_s == NO_DUE, NO_DUE, clock.worked(np.where(orders.due_s == NO_DUE, 0, orders.due_s))
     )
@@ -83,7 +82,3 @@ def squeeze(shop: Shop) -> Shop:
         breaks=(),
         shift_end_s=None,
     )
-
-
-def _work_clock(shop: Shop) -> WorkClock:
-    return WorkClock((pause.start_s, pause.end_s) for pause in shop.breaks)

@@ -85,31 +85,16 @@ def deal_out(shop: Shop) -> tuple[Ints, Ints]:
 
 def rounds_to_outcome(shop: Shop, unit: Ints, colour: Ints) -> Outcome:
     """Turn a colouring into a schedule: put its rounds in a good order and say how good it is."""
-    starts = round_starts(shop, int(colour.max()) + 1)
-    ends = starts + int(shop.operations.seconds[0])
+    # Rounds start as early as they fit, never across a break: each opening then holds as many whole
+    # rounds as it can, for every machine and every order alike, so the fewest rounds end earliest.
+    length = int(shop.operations.seconds[0])
+    starts = shop.work_clock.whole(0, length, int(colour.max()) + 1)
+    ends = starts + length
     orders = shop.orders
     order = order_rounds(colour, shop.operations.job, ends, orders.due_s, orders.priority)
     place = order.position[colour]
     schedule = Schedule(np.arange(len(shop)), starts[place], ends[place], unit=unit, round=place + 1)
     return Outcome(schedule, remarks=_about_lateness(shop, order))
-
-
-def round_starts(shop: Shop, rounds: int) -> Ints:
-    """Return the start of each round: back to back, but never across one of the hall's breaks.
-
-    In each opening between breaks a machine, or an order, has room for as many whole rounds as fit,
-    whichever they are; so starting rounds as early as they fit keeps the least number of rounds optimal.
-    """
-    length = int(shop.operations.seconds[0])
-    starts: list[int] = []
-    moment, breaks = 0, list(shop.breaks)
-    while len(starts) < rounds:
-        if breaks and moment + length > breaks[0].start_s:
-            moment = max(moment, breaks.pop(0).end_s)
-        else:
-            starts.append(moment)
-            moment += length
-    return np.array(starts, np.int64)
 
 
 def _about_lateness(shop: Shop, order: RoundOrder) -> tuple[str, ...]:
