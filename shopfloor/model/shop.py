@@ -236,8 +236,10 @@ class Shop:
         if len(operations) and int(operations.seconds.min()) < 1:
             index = int(operations.seconds.argmin())
             raise ShopError(f"operation {index}: time must be positive, not {operations.seconds[index]} s")
-        if len(orders) and bool((orders.due_s < orders.release_s).any()):
-            index = int((orders.due_s < orders.release_s).argmax())
+        # an order there from the start may have been due before it: late already, and legal
+        early = (orders.due_s < orders.release_s) & (orders.release_s > 0)
+        if bool(early.any()):
+            index = int(early.argmax())
             raise ShopError(f"order {orders.ids[index]}: due before its release")
         if len(orders) and (int(orders.release_s.min()) < 0 or float(orders.priority.min()) <= 0):
             raise ShopError("releases must not be negative and priorities must be positive")
