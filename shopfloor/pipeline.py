@@ -8,12 +8,15 @@ from dataclasses import asdict, dataclass
 
 from shopfloor.audit.schedule import audit
 from shopfloor.bounds.catalogue import lower_bounds
+from shopfloor.bounds.levers import Lever, tie_sentence, what_would_help
 from shopfloor.errors import AuditError, NoPlanError
 from shopfloor.model.results import Bound, Choice, Outcome, Plan
 from shopfloor.model.shop import Shop
 from shopfloor.model.stated import state
 from shopfloor.openshop.choose import choose
 from shopfloor.openshop.method import Effort, Progress
+
+HELP_UP_TO = 200_000  # operations; beyond, taking the bounds a dozen times more would take seconds
 
 
 @dataclass(frozen=True, slots=True)
@@ -30,13 +33,16 @@ class Forecast:
     """What can be said before planning.
 
     `reached` tells that the chosen method always ends exactly at the best bound, so that the bound
-    is the makespan and the answer to whether the shift holds it is final.
+    is the makespan and the answer to whether the shift holds it is final. `levers` and `tie` say what
+    would lower the bound.
     """
 
     shop: Shop
     bounds: tuple[Bound, ...]
     choice: Choice
     reached: bool
+    levers: tuple[Lever, ...]
+    tie: str
 
     @property
     def lower_bound_s(self) -> int:
@@ -53,7 +59,15 @@ class Forecast:
 def forecast(shop: Shop) -> Forecast:
     """Return bounds, method and what they say about the shift, without planning; near-linear time."""
     method, choice = choose(shop)
-    return Forecast(shop, lower_bounds(shop), choice, method.reaches_bound)
+    bounds = lower_bounds(shop)
+    levers, tie = _help(shop, bounds)
+    return Forecast(shop, bounds, choice, method.reaches_bound, levers, tie)
+
+
+def _help(shop: Shop, bounds: tuple[Bound, ...]) -> tuple[tuple[Lever, ...], str]:
+    if len(shop) > HELP_UP_TO:
+        return (), ""
+    return what_would_help(shop, bounds), tie_sentence(shop, bounds)
 
 
 def plan(
@@ -105,6 +119,7 @@ def plan(
     outcome = method.solve(shop, effort)
     if outcome.schedule is None:
         raise NoPlanError(f"no plan was found in {options.time_limit_s:g} s; allow more with --time-limit")
+    levers, tie = _help(shop, bounds)
     made = Plan(
         shop=shop,
         schedule=outcome.schedule,
@@ -113,6 +128,7 @@ def plan(
         inputs=tuple(inputs),
         options=asdict(options),
         remarks=outcome.remarks,
+        would_help=(*([tie] if tie else []), *(lever.sentence for lever in levers)),
         stopped=outcome.stopped,
         repeatable=outcome.repeatable,
     )

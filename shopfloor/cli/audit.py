@@ -17,6 +17,8 @@ def audit(
     start: common.StartOption = None,
     end: common.EndOption = None,
     round_minutes: common.RoundOption = None,
+    crew: common.CrewOption = None,
+    split: common.SplitOption = False,
     as_json: common.JsonOption = False,
     quiet: common.QuietOption = False,
 ) -> None:
@@ -27,7 +29,7 @@ def audit(
     from shopfloor.errors import InputError
 
     try:
-        reading = common.read(orders, shop, start, end, round_minutes)
+        reading = common.read(orders, shop, start, end, round_minutes, crew=crew, split=split)
         from shopfloor.read.plan import load_plan
 
         stated = load_plan(Path(plan_file), reading.shop)
@@ -41,7 +43,9 @@ def audit(
     notes = audit_bounds(reading.shop, stated)[1]
     if as_json:
         listed = [{"rule": v.rule, "sentence": v.sentence, "rows": list(v.rows)} for v in violations]
-        common.print_json({"clean": not violations, "rows": len(stated), "violations": listed, "notes": list(notes)})
+        common.print_json(
+            {"clean": not violations, "rows": len(stated), "violations": listed, "notes": list(notes)}
+        )
     elif not quiet:
         common.print_notices(reading.notices, quiet)
         for violation in violations:

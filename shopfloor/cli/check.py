@@ -15,6 +15,8 @@ def check(
     start: common.StartOption = None,
     end: common.EndOption = None,
     round_minutes: common.RoundOption = None,
+    crew: common.CrewOption = None,
+    split: common.SplitOption = False,
     as_json: common.JsonOption = False,
     quiet: common.QuietOption = False,
 ) -> None:
@@ -25,7 +27,7 @@ def check(
     from shopfloor.errors import InputError
 
     try:
-        reading = common.read(orders, shop, start, end, round_minutes)
+        reading = common.read(orders, shop, start, end, round_minutes, crew=crew, split=split)
     except InputError as error:
         common.refuse(error, as_json)
     from shopfloor.pipeline import forecast
@@ -38,7 +40,8 @@ def check(
         common.print_notices(reading.notices, quiet)
         fit = text.fit_line(hall, outlook.lower_bound_s, outlook.reached)
         lines = [text.shift_line(hall), "", *text.bound_lines(outlook.bounds), *([fit] if fit else []), ""]
-        print("\n".join([*lines, *text.load_lines(hall, outlook.bounds)]))
+        helps = ([outlook.tie] if outlook.tie else []) + [lever.sentence for lever in outlook.levers]
+        print("\n".join([*lines, *text.load_lines(hall, outlook.bounds), *text.help_lines(helps)]))
     raise typer.Exit(common.NO if outlook.fits is False else common.DONE)
 
 
@@ -53,10 +56,25 @@ def _data(outlook: Any) -> dict[str, Any]:
         "lower_bound_s": outlook.lower_bound_s,
         "bound_is_reached": outlook.reached,
         "fits_shift": outlook.fits,
-        "method": {"name": outlook.choice.name, "why": outlook.choice.why, "others": dict(outlook.choice.others)},
+        "method": {
+            "name": outlook.choice.name,
+            "why": outlook.choice.why,
+            "others": dict(outlook.choice.others),
+        },
         "bounds": [
             {"kind": b.kind, "value_s": b.value_s, "witness": dict(b.witness), "sentence": b.sentence}
             for b in outlook.bounds
+        ],
+        "tie": outlook.tie,
+        "what_would_help": [
+            {
+                "lever": lever.kind,
+                "what": lever.what,
+                "lower_bound_s": lever.value_s,
+                "gain_s": lever.gain_s,
+                "sentence": lever.sentence,
+            }
+            for lever in outlook.levers
         ],
         "machines": [
             {"machine": machine.id, "count": machine.count, "load_s": load}

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import sys
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated, Any, NoReturn
 
@@ -23,28 +24,45 @@ def setting(name: str, *flags: str, metavar: str | None = None) -> Any:
     """Return a command-line option for the setting `name`; its help and unit come from the table."""
     entry = SETTINGS[name]
     shown = entry.help if entry.default is None else f"{entry.help} [default: {entry.default} {entry.unit}]"
-    return typer.Option(*(flags or (f"--{name}",)), help=shown.replace(" ]", "]"), metavar=metavar, show_default=False)
+    return typer.Option(
+        *(flags or (f"--{name}",)), help=shown.replace(" ]", "]"), metavar=metavar, show_default=False
+    )
 
 
-OrdersArgument = Annotated[str, typer.Argument(metavar="ORDERS", help="CSV or XLSX file, or - for standard input.")]
+OrdersArgument = Annotated[
+    str, typer.Argument(metavar="ORDERS", help="CSV or XLSX file, or - for standard input.")
+]
 ShopOption = Annotated[
-    Path | None, typer.Option("--shop", metavar="FILE", help="shop.toml: the shift, the machines, your column names.")
+    Path | None,
+    typer.Option("--shop", metavar="FILE", help="shop.toml: the shift, the machines, your column names."),
 ]
 StartOption = Annotated[str | None, setting("start", metavar="TIME")]
 EndOption = Annotated[str | None, setting("end", metavar="TIME")]
 RoundOption = Annotated[float | None, setting("round", metavar="MINUTES")]
+CrewOption = Annotated[int | None, setting("crew", metavar="N")]
+SplitOption = Annotated[bool, setting("split", "--split")]
 JsonOption = Annotated[bool, typer.Option("--json", help="Print machine-readable results.")]
 QuietOption = Annotated[bool, typer.Option("--quiet", "-q", help="Print nothing but errors.")]
 
 
 def read(
-    orders: str, shop: Path | None, start: str | None, end: str | None, round_minutes: float | None
+    orders: str,
+    shop: Path | None,
+    start: str | None,
+    end: str | None,
+    round_minutes: float | None,
+    *,
+    crew: int | None = None,
+    split: bool = False,
 ) -> Reading:
     """Read the orders file (or standard input) and shop.toml; every fault of both is raised together."""
     from shopfloor.read.orders import load
 
     source: Any = sys.stdin.buffer if orders == "-" else Path(orders)
-    return load(source, shop=shop, start=start, end=end, round_minutes=round_minutes)
+    reading = load(source, shop=shop, start=start, end=end, round_minutes=round_minutes)
+    if split:
+        reading = replace(reading, shop=reading.shop.with_splits())
+    return reading if crew is None else replace(reading, shop=reading.shop.with_crew(crew))
 
 
 def fault_data(fault: Fault) -> dict[str, Any]:

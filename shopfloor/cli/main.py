@@ -9,13 +9,12 @@ from typing import Annotated
 import typer
 
 import shopfloor
-from shopfloor.cli import audit, check, demo, plan
+from shopfloor.cli import audit, check, demo, fit, plan
 from shopfloor.cli.common import BAD_INPUT, NO_PLAN
 from shopfloor.errors import InputError, NoPlanError, ShopfloorError
 
 app = typer.Typer(
     name="shopfloor",
-    help="Turn a spreadsheet of work orders into a sequence for every machine, proved shortest where it can be.",
     epilog="A plan is no permit: isolate and lock out first; site procedures and authorised people decide.",
     add_completion=False,
     no_args_is_help=True,
@@ -25,6 +24,7 @@ app = typer.Typer(
 )
 app.command("check")(check.check)
 app.command("plan")(plan.plan)
+app.command("fit")(fit.fit)
 app.command("audit")(audit.audit)
 app.command("demo")(demo.demo)
 
@@ -41,11 +41,11 @@ def options(
         bool, typer.Option("--version", callback=_show_version, is_eager=True, help="Print the version.")
     ] = False,
 ) -> None:
-    """Turn a spreadsheet of work orders into a sequence for every machine, proved shortest where it can be."""
+    """Turn a spreadsheet of work orders into a proved sequence for every machine."""
 
 
 def run() -> None:
-    """Run the command line; expected errors become one message and an exit code, a bug keeps its traceback."""
+    """Run the command line; expected errors become one message, a bug keeps its traceback."""
     for stream in (sys.stdout, sys.stderr):
         if hasattr(stream, "reconfigure"):
             stream.reconfigure(errors="replace")  # a bar drawn on an old code page must not end the run

@@ -20,11 +20,14 @@ def plan(
     orders: common.OrdersArgument,
     shop: common.ShopOption = None,
     out: Annotated[
-        Path | None, typer.Option("--out", metavar="DIR", help="Folder for the files; without it none is written.")
+        Path | None,
+        typer.Option("--out", metavar="DIR", help="Folder for the files; without it none is written."),
     ] = None,
     start: common.StartOption = None,
     end: common.EndOption = None,
     round_minutes: common.RoundOption = None,
+    crew: common.CrewOption = None,
+    split: common.SplitOption = False,
     time_limit: Annotated[float, common.setting("time-limit", metavar="SECONDS")] = TIME_LIMIT,
     workers: Annotated[int, common.setting("workers", metavar="N")] = WORKERS,
     seed: Annotated[int, common.setting("seed", metavar="N")] = SEED,
@@ -39,7 +42,7 @@ def plan(
     from shopfloor.errors import InputError
 
     try:
-        reading = common.read(orders, shop, start, end, round_minutes)
+        reading = common.read(orders, shop, start, end, round_minutes, crew=crew, split=split)
     except InputError as error:
         common.refuse(error, as_json)
     from shopfloor import pipeline

@@ -30,6 +30,7 @@ class Reporter:
         self._width = 0
 
     def __call__(self, progress: Progress) -> None:
+        """Print where the search stands, unless that was done a moment ago."""
         now = time.monotonic()
         with self._lock:
             if self._quiet or now - self._began < QUIET_FOR_S:

@@ -169,6 +169,15 @@ def duration(seconds: int) -> str:
     return f"{odd} s"
 
 
+def minutes_exact(seconds: int) -> str:
+    """Write a length so that it reads back exactly: `12.5`, or `0:12:20` where decimals end nowhere."""
+    whole, rest = divmod(seconds, MINUTE)
+    if rest == 0:
+        return str(whole)
+    text = f"{seconds / MINUTE:.2f}".rstrip("0")
+    return text if round(float(text) * MINUTE * 100) == seconds * 100 else elapsed(seconds, with_seconds=True)
+
+
 def minutes_text(seconds: int) -> str:
     """Write a length as decimal minutes, exactly where two digits allow: `30`, `12.5`, `0.25`."""
     whole, rest = divmod(seconds, MINUTE)

@@ -140,6 +140,8 @@ class Plan:
         The settings that could change the schedule.
     remarks
         Sentences for the summary: what is proved, what is not.
+    would_help
+        Sentences on what would let it end earlier, best first.
     """
 
     shop: Shop
@@ -149,6 +151,7 @@ class Plan:
     inputs: tuple[tuple[str, str], ...] = ()
     options: Mapping[str, Any] = field(default_factory=dict)
     remarks: tuple[str, ...] = ()
+    would_help: tuple[str, ...] = ()
     stopped: str = "done"
     repeatable: bool = True
 

@@ -8,7 +8,7 @@ All times are whole seconds since the start of the shift.
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 from itertools import pairwise
 from typing import TYPE_CHECKING, Any
@@ -292,6 +292,43 @@ class Shop:
 
     def __iter__(self) -> Iterator[Operation]:
         return (self.operation(index) for index in range(len(self)))
+
+    def keep(self, chosen: Bools) -> Shop:
+        """Return the shop of only the operations where `chosen` is true, and of the orders that have any."""
+        columns, orders = self.operations, self.orders
+        picked = np.flatnonzero(chosen)
+        used, job = np.unique(columns.job[picked], return_inverse=True)
+        place = {old: new for new, old in enumerate(picked.tolist())}
+        return replace(
+            self,
+            orders=Orders(
+                tuple(orders.ids[index] for index in used.tolist()),
+                orders.release_s[used],
+                orders.due_s[used],
+                orders.priority[used],
+            ),
+            operations=Operations(
+                job,
+                columns.machine[picked],
+                columns.seconds[picked],
+                columns.step[picked],
+                columns.splittable[picked],
+                columns.heads[picked],
+                columns.row[picked],
+                {place[old]: note for old, note in columns.notes.items() if old in place},
+            ),
+        )
+
+    def with_crew(self, heads: int) -> Shop:
+        """Return the shop with one crew of so many heads for every machine that has none of its own."""
+        crew = Crew("crew", heads)
+        machines = tuple(m if m.crew is not None else replace(m, crew=crew.id) for m in self.machines)
+        return replace(self, machines=machines, crews=(*self.crews, crew))
+
+    def with_splits(self) -> Shop:
+        """Return the shop with every operation splittable."""
+        columns = self.operations
+        return replace(self, operations=replace(columns, splittable=np.ones(len(columns), np.int64)))
 
     # ---- sums that many parts need ------------------------------------------------------------
 

@@ -55,10 +55,16 @@ def load_lines(shop: Shop, bounds: Sequence[Bound]) -> list[str]:
     against = "the shift" if shop.shift_end_s else "the bound"
     binding = {str(value) for bound in bounds[:1] for value in bound.witness.values()}
     machines = [
-        (f"{machine.id} ×{machine.count}" if machine.count > 1 else machine.id, load / machine.count, machine.id)
+        (
+            f"{machine.id} ×{machine.count}" if machine.count > 1 else machine.id,
+            load / machine.count,
+            machine.id,
+        )
         for machine, load in zip(shop.machines, shop.machine_load_s.tolist(), strict=True)
     ]
-    longest = sorted(range(len(shop.orders)), key=lambda job: (-int(shop.job_load_s[job]), job))[:ORDERS_SHOWN]
+    longest = sorted(range(len(shop.orders)), key=lambda job: (-int(shop.job_load_s[job]), job))[
+        :ORDERS_SHOWN
+    ]
     orders = [(shop.orders.ids[job], int(shop.job_load_s[job]), shop.orders.ids[job]) for job in longest]
     lines = [f"Machine{'':14}work    share of {against}"]
     lines += [_bar(name, load, scale, known in binding) for name, load, known in machines]
@@ -112,7 +118,9 @@ def plan_lines(plan: Plan) -> list[str]:
     if not len(shop):
         return [*lines, "There is nothing to do."]
     if plan.proved_optimal:
-        lines.append(wrap(f"Everything ends {say(plan.makespan_s)}. Nothing can end earlier, and that is proved:"))
+        lines.append(
+            wrap(f"Everything ends {say(plan.makespan_s)}. Nothing can end earlier, and that is proved:")
+        )
     else:
         share = plan.gap_s / plan.lower_bound_s
         lines.append(
@@ -134,7 +142,17 @@ def plan_lines(plan: Plan) -> list[str]:
             if plan.fits_shift
             else f"It overruns the shift, which ends {say(end)}, by {duration(plan.makespan_s - end)}."
         )
-    return lines + late_lines(plan)
+    lines += late_lines(plan)
+    if plan.would_help and (plan.fits_shift is False or plan.shop.has_due):
+        lines += help_lines(plan.would_help)
+    return lines
+
+
+def help_lines(sentences: Sequence[str]) -> list[str]:
+    """Return what would let the work end earlier, best first."""
+    if not sentences:
+        return []
+    return ["", "What would help:", *(wrap(sentence, 2) for sentence in sentences)]
 
 
 def late_lines(plan: Plan) -> list[str]:
