@@ -14,8 +14,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from shopfloor.audit.columns import ranks, run_starts, run_sums
-from shopfloor.audit.pieces import Search, assemble
-from shopfloor.audit.settle import settle_steps
+from shopfloor.audit.pieces import Piece, Search, assemble
+from shopfloor.audit.settle import settle
 from shopfloor.model.shop import NO_STEP, Bools, Ints, Shop
 from shopfloor.model.stated import StatedPlan
 
@@ -33,10 +33,7 @@ class _Rows:
     parts: Ints
     start_s: Ints
     end_s: Ints
-
-    @property
-    def seconds(self) -> Ints:
-        return self.end_s - self.start_s
+    seconds: Ints
 
 
 @dataclass(frozen=True, eq=False)
@@ -54,13 +51,15 @@ class _Visits:
     pieces: Bools
 
 
-def match_rows(shop: Shop, stated: StatedPlan, job: Ints, machine: Ints) -> Ints:
+def match_rows(shop: Shop, stated: StatedPlan, job: Ints, machine: Ints, seconds: Ints) -> Ints:
     """Return the index of the operation that each row runs, -1 for a row that runs none.
 
     Parameters
     ----------
     job, machine
         Index of each row's order and machine, -1 where the shop has none of that name.
+    seconds
+        Seconds worked in each row.
 
     Returns
     -------
@@ -71,7 +70,7 @@ def match_rows(shop: Shop, stated: StatedPlan, job: Ints, machine: Ints) -> Ints
     operation = np.full(len(stated), -1, np.int64)
     machines = max(1, len(shop.machines))
     pairs, pair_of = np.unique(shop.operations.job * machines + shop.operations.machine, return_inverse=True)
-    rows = _known_rows(stated, job, machine, machines, pairs)
+    rows = _known_rows(stated, job, machine, seconds, machines, pairs)
     if not len(rows.row):
         return operation
     of_row = _number_visits(rows)
@@ -83,16 +82,26 @@ def match_rows(shop: Shop, stated: StatedPlan, job: Ints, machine: Ints) -> Ints
         found = _match_equal(shop, pair_of, visits)
     _match_rest(shop, pair_of, visits, found)
     operation[rows.row] = found[visits.of_row]
-    return settle_steps(shop, stated, operation)
+    return settle(shop, stated, seconds, operation)
 
 
-def _known_rows(stated: StatedPlan, job: Ints, machine: Ints, machines: int, pairs: Ints) -> _Rows:
+def _known_rows(
+    stated: StatedPlan, job: Ints, machine: Ints, seconds: Ints, machines: int, pairs: Ints
+) -> _Rows:
     wide = np.where((job >= 0) & (machine >= 0), job * machines + machine, -1)
     place = np.searchsorted(pairs, wide)
     known = place < len(pairs)
     known[known] = pairs[place[known]] == wide[known]
     row = np.flatnonzero(known)
-    return _Rows(row, place[row], stated.part[row], stated.parts[row], stated.start_s[row], stated.end_s[row])
+    return _Rows(
+        row=row,
+        pair=place[row],
+        part=stated.part[row],
+        parts=stated.parts[row],
+        start_s=stated.start_s[row],
+        end_s=stated.end_s[row],
+        seconds=seconds[row],
+    )
 
 
 def _number_visits(rows: _Rows) -> Ints:
@@ -140,8 +149,7 @@ def _join(left: Ints, right: Ints) -> Ints:
 def _match_equal(shop: Shop, pair_of: Ints, visits: _Visits) -> Ints:
     """Match visits to operations of exactly their length: earlier visits to lower steps."""
     operations = shop.operations
-    unranked = operations.step == NO_STEP
-    needs = np.lexsort((np.arange(len(operations)), operations.step, unranked))
+    needs = np.lexsort((np.arange(len(operations)), operations.step, operations.step == NO_STEP))
     runs = np.lexsort((visits.rows, visits.start_s))
     lengths, code = np.unique(np.concatenate((visits.seconds, operations.seconds)), return_inverse=True)
     visit_key = visits.pair * len(lengths) + code[: len(visits.pair)]
@@ -177,7 +185,14 @@ def _regroup(shop: Shop, pair_of: Ints, rows: _Rows, visits: _Visits, found: Int
     settled[found[(found >= 0) & ~visits.pieces]] = True
     for members, needs in _by_pair(doubtful, rows, visits, pair_of, ~settled):
         pieces = [
-            (int(rows.parts[k]), int(rows.part[k]), int(rows.start_s[k]), int(rows.end_s[k])) for k in members
+            Piece(*columns)
+            for columns in zip(
+                *(
+                    column[members].tolist()
+                    for column in (rows.parts, rows.part, rows.start_s, rows.end_s, rows.seconds)
+                ),
+                strict=True,
+            )
         ]
         for group in assemble(pieces, shop.operations.seconds[needs].tolist(), search) or []:
             of_row[members[group]] = fresh

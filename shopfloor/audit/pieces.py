@@ -12,11 +12,20 @@ from __future__ import annotations
 from collections import Counter
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import NamedTuple
 
 MOST_PIECES = 200
 MOST_TRIALS = 200_000
 
-Piece = tuple[int, int, int, int]  # parts, part, start, end
+
+class Piece(NamedTuple):
+    """One row that is part `part` of `parts`, with the seconds worked in it."""
+
+    parts: int
+    part: int
+    start_s: int
+    end_s: int
+    seconds: int
 
 
 @dataclass
@@ -46,18 +55,18 @@ def assemble(pieces: Sequence[Piece], seconds: Sequence[int], search: Search) ->
     groups: list[list[int]] = []
 
     def begin() -> bool:
-        first = next((k for k in range(len(pieces)) if free[k] and pieces[k][1] == 1), None)
+        first = next((k for k in range(len(pieces)) if free[k] and pieces[k].part == 1), None)
         if first is None:
             return not any(free)
-        return extend([first], pieces[first][3] - pieces[first][2])
+        return extend([first], pieces[first].seconds)
 
     def extend(group: list[int], total: int) -> bool:
         search.trials -= 1
         if search.trials < 0 or total > longest:
             return False
-        parts, _, _, end = pieces[group[-1]]
+        latest = pieces[group[-1]]
         free[group[-1]] = False
-        if len(group) == parts:
+        if len(group) == latest.parts:
             if wanted[total]:
                 wanted[total] -= 1
                 groups.append(group)
@@ -67,10 +76,11 @@ def assemble(pieces: Sequence[Piece], seconds: Sequence[int], search: Search) ->
                 wanted[total] += 1
         else:
             for k in range(group[-1] + 1, len(pieces)):
-                if free[k] and pieces[k][:2] == (parts, len(group) + 1) and pieces[k][2] >= end:
-                    long = total + pieces[k][3] - pieces[k][2]
-                    if extend([*group, k], long):
-                        return True
+                piece = pieces[k]
+                follows = (piece.parts, piece.part) == (latest.parts, len(group) + 1)
+                fits = free[k] and follows and piece.start_s >= latest.end_s
+                if fits and extend([*group, k], total + piece.seconds):
+                    return True
         free[group[-1]] = True
         return False
 

@@ -9,6 +9,7 @@ from typing import Any
 
 import numpy as np
 
+from shopfloor.audit.breaks import Breaks
 from shopfloor.audit.columns import run_starts
 from shopfloor.audit.match import match_rows
 from shopfloor.audit.witness import Verdict, judge
@@ -73,17 +74,33 @@ class Reading:
     @cached_property
     def operation(self) -> Ints:
         """Index of the operation each row runs, wholly or in part; -1 for a row that runs none."""
-        return match_rows(self.shop, self.stated, self.job, self.machine)
+        return match_rows(self.shop, self.stated, self.job, self.machine, self.seconds)
 
     @cached_property
-    def seconds(self) -> Ints:
-        """Length of each row."""
-        return self.stated.end_s - self.stated.start_s
+    def breaks(self) -> Breaks:
+        """The breaks of the hall."""
+        return Breaks(self.shop.breaks)
+
+    @cached_property
+    def pauses(self) -> Bools:
+        """Whether each machine's work pauses over the breaks."""
+        return np.array([machine.pauses for machine in self.shop.machines], bool)
 
     @cached_property
     def lasting(self) -> Bools:
         """Whether each row has a length at all; only such rows can overlap."""
-        return self.seconds > 0
+        lasting: Bools = self.stated.end_s > self.stated.start_s
+        return lasting
+
+    @cached_property
+    def seconds(self) -> Ints:
+        """Seconds worked in each row: its length, less the breaks in it where the machine pauses."""
+        seconds = self.stated.end_s - self.stated.start_s
+        if len(self.breaks):
+            rows = np.flatnonzero(self.lasting & (self.machine >= 0))
+            rows = rows[self.pauses[self.machine[rows]]]
+            seconds[rows] -= self.breaks.within(self.stated.start_s[rows], self.stated.end_s[rows])
+        return seconds
 
     @cached_property
     def pieces(self) -> tuple[Ints, Bools]:

@@ -11,7 +11,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 
-from shopfloor.audit import claims, overlap, rounds, rows
+from shopfloor.audit import claims, hall, overlap, rounds, rows
 from shopfloor.audit.reading import Breaches, Reading
 from shopfloor.model.results import Violation
 from shopfloor.model.shop import Shop
@@ -41,6 +41,8 @@ RULES: dict[str, Rule] = {
     "machine-overlap": Rule(overlap.machine_overlaps, "no unit of a machine runs two orders at once"),
     "release": Rule(overlap.releases, "no order starts before its release"),
     "steps": Rule(overlap.steps, "lower steps of an order finish before higher ones start"),
+    "break": Rule(hall.breaks, "nothing starts or ends inside a break, or runs across one unless it pauses"),
+    "crew": Rule(hall.crews, "no crew gives more heads than it has"),
     "split": Rule(rows.splits, "only operations that may be split are in parts"),
     "parts": Rule(rows.part_numbers, "parts are numbered by time, 1 to as many as there are"),
     "round-number": Rule(rounds.round_numbers, "rounds count from 1, and all rows have one or none has"),

@@ -13,11 +13,12 @@ from typing import Any
 
 import numpy as np
 
+from shopfloor.audit.breaks import Breaks
 from shopfloor.audit.columns import run_starts, run_sums
 from shopfloor.audit.words import moment
 from shopfloor.model.calendar import duration
 from shopfloor.model.results import Bound, Violation
-from shopfloor.model.shop import NO_STEP, Ints, Shop
+from shopfloor.model.shop import NO_STEP, Crew, Ints, Shop
 from shopfloor.model.stated import StatedPlan
 
 
@@ -57,6 +58,7 @@ class _Work:
         self.shop = shop
         self.job, self.machine = shop.operations.job, shop.operations.machine
         self.seconds, self.step = shop.operations.seconds, shop.operations.step
+        self.breaks = Breaks(shop.breaks)
 
     def order(self, name: str) -> int:
         return _find(self._orders, name, "order")
@@ -71,6 +73,32 @@ class _Work:
     def on_machine(self, machine: int) -> Ints:
         """Operations on one machine."""
         return _slice(self._by_machine, self.machine, machine)
+
+    def attended(self, name: str, begin: int) -> tuple[Crew, Ints]:
+        """The crew of a name, and the operations it attends that cannot start before `begin`."""
+        for crew in self.shop.crews:
+            if crew.id == name:
+                theirs = np.array([machine.crew == name for machine in self.shop.machines], bool)
+                return crew, self.from_on(np.flatnonzero(theirs[self.machine]), begin)
+        raise _NoProofError(f"names crew {name!r}, which the shop does not have")
+
+    def from_on(self, operations: Ints, begin: int) -> Ints:
+        """Those of the operations that their orders keep from starting before `begin`; at least one."""
+        late = operations[self.heads_and_tails[0][operations] >= begin]
+        if not len(late):
+            raise _NoProofError(f"counts no operation: none must wait until {begin} s")
+        return late
+
+    def demand_rounds(self, operations: Ints, length: int, name: str) -> None:
+        """Refuse operations that are not all of one length and whole, or none at all."""
+        if not len(operations):
+            raise _NoProofError(f"counts the visits of {name}, which has none")
+        other = operations[self.seconds[operations] != length]
+        if len(other):
+            seconds = duration(int(self.seconds[other[0]]))
+            raise _NoProofError(f"counts rounds of {duration(length)}, but {name} has a visit of {seconds}")
+        if self.shop.operations.splittable[operations].any():
+            raise _NoProofError(f"counts whole rounds, but visits of {name} may be split")
 
     @cached_property
     def heads_and_tails(self) -> tuple[Ints, Ints]:
@@ -128,26 +156,24 @@ def _slice(sorter: Ints, column: Ints, value: int) -> Ints:
 def _order(work: _Work, witness: Mapping[str, Any]) -> int:
     """An order is in one place at a time: its release, then all its work."""
     job = work.order(_name(witness, "order"))
-    return int(work.shop.orders.release_s[job]) + int(work.seconds[work.of_order(job)].sum())
+    load = int(work.seconds[work.of_order(job)].sum())
+    return work.breaks.finish(int(work.shop.orders.release_s[job]), load)
 
 
 def _machine(work: _Work, witness: Mapping[str, Any]) -> int:
     """What cannot reach a machine before `from_s` takes its load over the units, and leaves a tail."""
     machine = work.machine_of(_name(witness, "machine"))
     begin = _whole(witness, "from_s")
-    operations = work.on_machine(machine)
-    head, tail = work.heads_and_tails
-    operations = operations[head[operations] >= begin]
-    if not len(operations):
-        raise _NoProofError(f"counts no operation: none reaches the machine from {begin} s on")
-    load, least = int(work.seconds[operations].sum()), int(tail[operations].min())
+    operations = work.from_on(work.on_machine(machine), begin)
+    load = int(work.seconds[operations].sum())
+    least = int(work.heads_and_tails[1][operations].min())
     _agree(witness, "load_s", load, "the load is")
     _agree(witness, "tail_s", least, "the least work afterwards is")
-    return begin - (-load // work.shop.machines[machine].count) + least
+    return work.breaks.finish(begin, _up(load, work.shop.machines[machine].count) + least)
 
 
 def _rounds(work: _Work, witness: Mapping[str, Any]) -> int:
-    """With d equally long operations on k units, one unit runs at least ⌈d/k⌉ of them."""
+    """With d equal, whole operations on k units, one unit runs at least ⌈d/k⌉, none across a break."""
     node, name, length = _name(witness, "node"), _name(witness, "id"), _whole(witness, "round_s")
     if node == "order":
         operations, count = work.of_order(work.order(name)), 1
@@ -156,15 +182,12 @@ def _rounds(work: _Work, witness: Mapping[str, Any]) -> int:
         operations, count = work.on_machine(machine), work.shop.machines[machine].count
     else:
         raise _NoProofError(f"has the node {node!r}, which is neither order nor machine")
-    other = work.seconds[operations] != length
-    if other.any():
-        seconds = int(work.seconds[operations][other][0])
-        raise _NoProofError(
-            f"counts rounds of {duration(length)}, but {name} has a visit of {duration(seconds)}"
-        )
-    if len(operations) != _whole(witness, "operations"):
-        raise _NoProofError(f"states {witness['operations']} operations, but {name} has {len(operations)}")
-    return -(-len(operations) // count) * length
+    work.demand_rounds(operations, length, name)
+    _agree(witness, "operations", len(operations), f"the visits of {name} are")
+    rounds = _up(len(operations), count)
+    if any(work.shop.machines[machine].pauses for machine in set(work.machine[operations].tolist())):
+        return work.breaks.finish(0, rounds * length)
+    return work.breaks.finish_pieces(0, length, rounds)
 
 
 def _longest(work: _Work, witness: Mapping[str, Any]) -> int:
@@ -174,7 +197,34 @@ def _longest(work: _Work, witness: Mapping[str, Any]) -> int:
     operations = operations[work.machine[operations] == machine]
     if not len(operations):
         raise _NoProofError(f"names a visit that order {witness['order']} does not make")
-    return int(work.shop.orders.release_s[job]) + int(work.seconds[operations].max())
+    return work.breaks.finish(int(work.shop.orders.release_s[job]), int(work.seconds[operations].max()))
+
+
+def _crew(work: _Work, witness: Mapping[str, Any]) -> int:
+    """What a crew cannot attend before `from_s` takes its head-seconds over the crew's heads."""
+    begin = _whole(witness, "from_s")
+    crew, operations = work.attended(_name(witness, "crew"), begin)
+    load = int((work.seconds[operations] * work.shop.operations.heads[operations]).sum())
+    _agree(witness, "head_seconds", load, "the crew's work is")
+    return work.breaks.finish(begin, _up(load, crew.heads))
+
+
+def _crew_rounds(work: _Work, witness: Mapping[str, Any]) -> int:
+    """With c heads for equal, whole operations of h heads each, ⌊c/h⌋ run at once.
+
+    They can then be dealt to ⌊c/h⌋ imagined units without two at once on any (intervals of which at most
+    k overlap can be coloured with k colours), and one of these runs its share of them.
+    """
+    begin, length = _whole(witness, "from_s"), _whole(witness, "round_s")
+    crew, operations = work.attended(_name(witness, "crew"), begin)
+    work.demand_rounds(operations, length, f"crew {crew.id}")
+    heads = sorted(set(work.shop.operations.heads[operations].tolist()))
+    if len(heads) > 1 or heads[0] < 1:
+        raise _NoProofError(f"counts rounds, but its operations take {heads[0]} to {heads[-1]} heads")
+    at_once = max(1, crew.heads // heads[0])
+    _agree(witness, "at_once", at_once, "the operations at once are")
+    _agree(witness, "operations", len(operations), f"the operations of crew {crew.id} are")
+    return work.breaks.finish(begin, _up(len(operations), at_once) * length)
 
 
 KINDS: dict[str, Callable[[_Work, Mapping[str, Any]], int]] = {
@@ -182,11 +232,17 @@ KINDS: dict[str, Callable[[_Work, Mapping[str, Any]], int]] = {
     "machine": _machine,
     "rounds": _rounds,
     "longest": _longest,
+    "crew": _crew,
+    "crew rounds": _crew_rounds,
 }
 
 CLAIMS: dict[str, str] = {
     "solver": "was proved by a solver's search and cannot be derived again by arithmetic",
 }
+
+
+def _up(load: int, count: int) -> int:
+    return -(-load // count)
 
 
 # ---- reading a witness ----------------------------------------------------------------------------
@@ -215,7 +271,7 @@ def _entry(witness: Mapping[str, Any], key: str) -> Any:
 def _agree(witness: Mapping[str, Any], key: str, value: int, what: str) -> None:
     stated = _whole(witness, key)
     if stated != value:
-        raise _NoProofError(f"states {key} {stated}, but {what} {value} s")
+        raise _NoProofError(f"states {key} {stated}, but {what} {value}")
 
 
 # ---- verdicts --------------------------------------------------------------------------------------
@@ -257,8 +313,8 @@ def _verdict(work: _Work, bound: Bound) -> Verdict:
     if value != bound.value_s:
         clock = work.shop.clock
         sentence = (
-            f"The {bound.kind} bound states {moment(clock, bound.value_s)}, but its witness proves {moment(clock, value)}"
-            f" ({bound.value_s} s against {value} s)."
+            f"The {bound.kind} bound states {moment(clock, bound.value_s)}, but its witness proves "
+            f"{moment(clock, value)} ({bound.value_s} s against {value} s)."
         )
         return Verdict(bound, value, ("bound-value", sentence))
     return Verdict(bound, value)

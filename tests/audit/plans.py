@@ -10,7 +10,7 @@ import numpy as np
 
 from shopfloor.model.calendar import MINUTE, Clock
 from shopfloor.model.schedule import NO_ROUND
-from shopfloor.model.shop import NO_STEP, Machine, Operations, Orders, Shop
+from shopfloor.model.shop import NO_STEP, Closure, Crew, Machine, Operations, Orders, Shop
 from shopfloor.model.stated import StatedPlan
 
 SIX = Clock(datetime(2026, 3, 2, 6, 0))
@@ -52,13 +52,21 @@ def shop(
     *,
     release: dict[str, str] | None = None,
     end: str | None = None,
+    breaks: tuple[Closure, ...] = (),
+    pausing: tuple[str, ...] = (),
+    crew: dict[str, int] | None = None,
 ) -> Shop:
     """A hall from six o'clock: machines with their units; needs as order, machine, minutes[, step[, cut]]."""
     orders = list(dict.fromkeys(need[0] for need in needs))
     names = list(machines)
     full = [(*need, *(None, False)[len(need) - 3 :]) for need in needs]
     return Shop(
-        machines=tuple(Machine(name, count=count) for name, count in machines.items()),
+        machines=tuple(
+            Machine(name, count=count, pauses=name in pausing, crew=next(iter(crew or {}), None))
+            for name, count in machines.items()
+        ),
+        crews=tuple(Crew(name, heads) for name, heads in (crew or {}).items()),
+        breaks=breaks,
         orders=Orders(
             tuple(orders), release_s=[SIX.read((release or {}).get(order, "06:00")) for order in orders]
         ),
@@ -132,4 +140,29 @@ ON_ROUTE = [
     Row("TQ-102", "Wash", "06:30", "07:00"),
     Row("TQ-101", "Test", "06:30", "07:00"),
     Row("TQ-101", "CMM", "07:00", "08:00"),
+]
+
+# A tea break at half past six; the oven goes on after it, the press does not.
+TEA = shop(
+    {"Press": 1, "Oven": 1},
+    [("TQ-101", "Press", 30), ("TQ-101", "Oven", 30), ("TQ-102", "Oven", 30)],
+    breaks=(Closure(1800, 2700, "tea"),),
+    pausing=("Oven",),
+)
+AROUND_TEA = [
+    Row("TQ-101", "Press", "06:00", "06:30"),
+    Row("TQ-102", "Oven", "06:10", "06:55"),
+    Row("TQ-101", "Oven", "06:55", "07:25"),
+]
+
+# Three machines that one crew of two attends.
+CREW = shop(
+    {"Wash": 1, "CMM": 1, "Test": 1},
+    [("TQ-101", "Wash", 30), ("TQ-102", "CMM", 30), ("TQ-103", "Test", 30)],
+    crew={"Blue": 2},
+)
+BY_CREW = [
+    Row("TQ-101", "Wash", "06:00", "06:30"),
+    Row("TQ-102", "CMM", "06:10", "06:40"),
+    Row("TQ-103", "Test", "06:30", "07:00"),
 ]

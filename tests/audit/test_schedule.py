@@ -12,9 +12,12 @@ import pytest
 import shopfloor.audit
 from shopfloor.audit.schedule import MOST_LISTED, RULES, audit
 from shopfloor.model.results import Bound, Violation
-from shopfloor.model.shop import Shop
+from shopfloor.model.shop import Closure, Shop
 from shopfloor.model.stated import StatedPlan
 from tests.audit.plans import (
+    AROUND_TEA,
+    BY_CREW,
+    CREW,
     CUT,
     HALL,
     IN_PARTS,
@@ -23,6 +26,7 @@ from tests.audit.plans import (
     PLAN,
     ROUNDS,
     ROUTE,
+    TEA,
     Row,
     changed,
     shop,
@@ -153,6 +157,49 @@ CASES: list[tuple[str, Shop, StatedPlan, str, tuple[int, ...]]] = [
         ),
         "TQ-101 on CMM (step 2) starts at 06:00, before step 1 on Wash ends at 08:00.",
         (2, 5),
+    ),
+    (
+        "break",
+        TEA,
+        stated(changed(AROUND_TEA, 2, start="06:15", end="06:45")),
+        "TQ-101 on Press from 06:15 to 06:45 ends inside the break from 06:30 to 06:45 (tea).",
+        (2,),
+    ),
+    (
+        "break",
+        shop({"Press": 1}, [("TQ-101", "Press", 60)], breaks=(Closure(1800, 2700),)),
+        stated([Row("TQ-101", "Press", "06:00", "07:00")]),
+        "TQ-101 on Press from 06:00 to 07:00 runs across the break from 06:30 to 06:45, over which Press "
+        "does not pause.",
+        (2,),
+    ),
+    (
+        "break",
+        TEA,
+        stated(changed(changed(AROUND_TEA, 3, start="06:40", end="07:15"), 4, start="07:15", end="07:45")),
+        "TQ-102 on Oven from 06:40 to 07:15 starts inside the break from 06:30 to 06:45 (tea).",
+        (3,),
+    ),
+    (
+        "duration",
+        TEA,
+        stated(changed(AROUND_TEA, 3, end="06:50")),
+        "TQ-102 on Oven (30 min) is planned from 06:10 to 06:50: 25 min.",
+        (3,),
+    ),
+    (
+        "crew",
+        CREW,
+        stated(changed(BY_CREW, 4, start="06:20", end="06:50")),
+        "Crew Blue has 2 heads, but 3 are taken when TQ-103 on Test starts at 06:20 beside TQ-102 on CMM.",
+        (3, 4),
+    ),
+    (
+        "crew",
+        replace(CREW, operations=replace(CREW.operations, heads=[1, 3, 0])),
+        stated(changed(BY_CREW, 3, start="06:30", end="07:00")),
+        "Crew Blue has 2 heads, but 3 are taken when TQ-102 on CMM starts at 06:30.",
+        (3,),
     ),
     (
         "split",
@@ -296,7 +343,15 @@ def test_every_rule_has_a_case() -> None:
 
 
 @pytest.mark.parametrize(
-    ("hall", "rows"), [(HALL, PLAN), (ROUNDS, IN_ROUNDS), (CUT, IN_PARTS), (ROUTE, ON_ROUTE)]
+    ("hall", "rows"),
+    [
+        (HALL, PLAN),
+        (ROUNDS, IN_ROUNDS),
+        (CUT, IN_PARTS),
+        (ROUTE, ON_ROUTE),
+        (TEA, AROUND_TEA),
+        (CREW, BY_CREW),
+    ],
 )
 def test_a_clean_plan_breaks_no_rule(hall: Shop, rows: list[Row]) -> None:
     assert audit(hall, stated(rows)) == []
