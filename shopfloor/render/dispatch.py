@@ -26,6 +26,8 @@ from shopfloor.render.html import care_notice, clean, document, escape, isolate,
 if TYPE_CHECKING:
     from shopfloor.model.results import Plan
 
+LONG_NAME = 24  # characters
+
 _RUN_TITLES = ("No", "Unit", "Order", "Start", "End", "Began", "Ended", "Done")
 _TICK = '<span class="tick"></span>'
 
@@ -52,7 +54,7 @@ def lay_out(view: DispatchView) -> str:
     """Return the page for what is to be shown on it."""
     body = [
         # targets of the bar's links: the style sheet shows, and so prints, only the kind targeted
-        '<i id="only-machines"></i><i id="only-strips"></i><i id="only-rounds"></i>',
+        *(f'<i class="kind" id="only-{kind}"></i>' for kind in ("machines", "strips", "rounds")),
         _bar(view),
         _index(view),
         '<main id="sheets">',
@@ -114,11 +116,12 @@ def _machine_sheet(view: DispatchView, number: int, sheet: MachineList) -> str:
     titles = [title for title in _RUN_TITLES if grouped or title != "Unit"]
     heads = "".join(f'<th scope="col">{title}</th>' for title in titles)
     widths = "".join(f'<col class="{title.lower()}">' for title in titles)
-    name = f' <span class="name">{isolate(sheet.name)}</span>' if sheet.name else ""
+    title = f"<h2{_long(sheet.machine + sheet.name)}>{isolate(sheet.machine)}"
+    title += f' <span class="name">{isolate(sheet.name)}</span></h2>' if sheet.name else "</h2>"
     return "\n".join(
         [
             f'<section class="sheet machine" id="m{number}"><table><colgroup>{widths}</colgroup>',
-            f"<thead>{_head(view, len(titles), f'{isolate(sheet.machine)}{name}', facts)}",
+            f"<thead>{_head(view, len(titles), title, facts)}",
             f"<tr>{heads}</tr></thead>",
             f"<tfoot>{_foot(len(titles))}</tfoot>",
             "<tbody>",
@@ -128,13 +131,18 @@ def _machine_sheet(view: DispatchView, number: int, sheet: MachineList) -> str:
     )
 
 
+def _long(name: str) -> str:
+    """Smaller type for a long name: browsers repeat a table's head only while it is low."""
+    return ' class="long"' if len(name) > LONG_NAME else ""
+
+
 def _head(view: DispatchView, columns: int, title: str, facts: str) -> str:
     """The first row of a table's head, repeated on each page; `title` is markup, `facts` plain text."""
     breaks = f"<br>breaks {escape(view.breaks)}" if view.breaks else ""
     stamp = f"<br>printed {escape(view.stamp)}" if view.stamp else ""
     return (
         f'<tr class="head"><td colspan="{columns}"><div class="flank">'
-        f"<div><h2>{title}</h2><p>{escape(facts)}</p></div>"
+        f"<div>{title}<p>{escape(facts)}</p></div>"
         f"<p>plan {view.plan}<br>{escape(view.shift)}{breaks}{stamp}</p></div></td></tr>"
     )
 
@@ -183,7 +191,8 @@ def _strip(view: DispatchView, number: int, strip: Strip) -> str:
     facts += [f"due {strip.due}"] if strip.due else []
     late = f' <b class="late">late by {escape(strip.late)}</b>' if strip.late else ""
     return (
-        f'<article class="strip" id="o{number}"><div class="flank"><h3>{isolate(_strip_name(strip))}</h3>'
+        f'<article class="strip" id="o{number}"><div class="flank">'
+        f"<h3{_long(_strip_name(strip))}>{isolate(_strip_name(strip))}</h3>"
         f"{care_notice()}<p>{escape(', '.join(facts))}{late}<br>"
         f"<small>plan {view.plan}, {escape(view.shift)}</small></p></div>"
         f"<ol>{''.join(map(_stop, strip.stops))}</ol></article>"
@@ -213,7 +222,7 @@ def _round_sheet(view: DispatchView, sheet: RoundSheet) -> str:
     return "\n".join(
         [
             f'<section class="sheet rounds"{anchor}><table><colgroup><col class="round"></colgroup>',
-            f"<thead>{_head(view, columns, 'Who is where', facts)}",
+            f"<thead>{_head(view, columns, '<h2>Who is where</h2>', facts)}",
             f'<tr><th scope="col">Round</th>{heads}</tr></thead>',
             f"<tfoot>{_foot(columns)}</tfoot>",
             "<tbody>",
