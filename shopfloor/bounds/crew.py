@@ -18,17 +18,20 @@ def crew_bounds(shop: Shop) -> list[Bound]:
     """
     bounds = []
     for crew in shop.crews:
-        names = np.array([machine.crew == crew.id for machine in shop.machines], bool)
-        attended = np.flatnonzero(names[shop.operations.machine])
-        if len(attended):
+        theirs = np.array([machine.crew == crew.id for machine in shop.machines], bool)
+        attended = np.flatnonzero(theirs[shop.operations.machine])
+        if len(attended) and crew.heads and not crew.levels:
             bounds.append(_crew_bound(shop, crew, attended))
     return bounds
 
 
 def _crew_bound(shop: Shop, crew: Crew, attended: Ints) -> Bound:
-    seconds, heads = shop.operations.seconds[attended], shop.operations.heads[attended]
+    only_setup = np.array([machine.set_up_only for machine in shop.machines], bool)[shop.operations.machine]
+    seconds = np.where(only_setup, shop.operations.setup_s, shop.operations.seconds)[attended]
+    heads = shop.operations.heads[attended]
     release = int(shop.head_s[attended].min())
-    equal = int(seconds.min()) == int(seconds.max()) and int(heads.min()) == int(heads.max())
+    stays = not only_setup[attended].any()
+    equal = stays and int(seconds.min()) == int(seconds.max()) and int(heads.min()) == int(heads.max())
     if equal and heads[0] > 0 and not shop.has_splits:
         length, at_once = int(seconds[0]), max(1, crew.heads // int(heads[0]))
         rounds = -(-len(attended) // at_once)

@@ -181,6 +181,8 @@ def _in_two_lots(shop: Shop, job: int) -> Shop:
             np.r_[columns.step, columns.step[halves]],
             np.r_[columns.splittable, columns.splittable[halves]],
             np.r_[columns.heads, columns.heads[halves]],
+            np.r_[columns.family, columns.family[halves]],
+            np.r_[np.minimum(columns.setup_s, seconds), np.minimum(columns.setup_s[halves], second_half)],
         ),
     )
 

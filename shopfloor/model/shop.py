@@ -18,6 +18,11 @@ import numpy as np
 from shopfloor.errors import ShopError
 from shopfloor.model.calendar import Clock, WorkClock
 from shopfloor.model.calendar import Ints as Ints  # every column of the model is one of these
+from shopfloor.model.hall import Changeovers as Changeovers  # a shop is made of these: import them from here
+from shopfloor.model.hall import Closure as Closure
+from shopfloor.model.hall import Crew as Crew
+from shopfloor.model.hall import Machine as Machine
+from shopfloor.model.hall import Transport as Transport
 
 if TYPE_CHECKING:
     import networkx as nx
@@ -28,51 +33,8 @@ Bools = np.ndarray[Any, np.dtype[np.bool_]]
 
 NO_DUE = np.iinfo(np.int64).max  # an order without a due time is never late
 LEFT_OUT: Any = None  # a column left out is filled with its blank when the frozen value is built
+NO_FAMILY = -1
 NO_STEP = -1  # an operation that may run at any time within its order
-
-
-@dataclass(frozen=True, slots=True)
-class Closure:
-    """A time when a machine, or the whole hall, is shut: from `start_s` up to, not including, `end_s`."""
-
-    start_s: int
-    end_s: int
-    reason: str = ""
-
-    def __post_init__(self) -> None:
-        if self.end_s <= self.start_s:
-            raise ShopError(f"closure {self.reason or 'without reason'}: it must end after it starts")
-
-
-@dataclass(frozen=True, slots=True)
-class Machine:
-    """One machine, or a group of `count` identical units that share a queue.
-
-    `pauses` says that its work may stop for a break and go on afterwards; `crew` names the pool of
-    people its operations take heads from while they run, if any.
-    """
-
-    id: str
-    name: str = ""
-    count: int = 1
-    pauses: bool = False
-    crew: str | None = None
-
-    def __post_init__(self) -> None:
-        if self.count < 1:
-            raise ShopError(f"machine {self.id}: count must be at least 1, not {self.count}")
-
-
-@dataclass(frozen=True, slots=True)
-class Crew:
-    """A pool of `heads` people; each operation takes its heads while it is attended."""
-
-    id: str
-    heads: int
-
-    def __post_init__(self) -> None:
-        if self.heads < 1:
-            raise ShopError(f"crew {self.id}: heads must be at least 1, not {self.heads}")
 
 
 @dataclass(frozen=True, slots=True)
@@ -98,6 +60,8 @@ class Operation:
     step: int | None
     splittable: bool
     heads: int
+    family: str
+    setup_s: int
     note: str
     row: int
 
@@ -152,13 +116,17 @@ class Operations:
     job, machine
         Index into the shop's orders and machines.
     seconds
-        Run time, at least 1.
+        Time on the machine, at least 1; begins with the set-up.
     step
         Rank inside the order, or ``NO_STEP``; lower ranks finish before higher ones start.
     splittable
         1 where the operation may be cut into parts, else 0.
     heads
         People it takes from its machine's crew while it runs; counts only where there is a crew.
+    family
+        Index into the shop's families, or ``NO_FAMILY``, which is a family of its own.
+    setup_s
+        How much of `seconds` is set-up, at its beginning.
     row
         Row of the orders file, for messages; 0 when the shop came from elsewhere.
     notes
@@ -171,6 +139,8 @@ class Operations:
     step: Ints = field(default=LEFT_OUT)
     splittable: Ints = field(default=LEFT_OUT)
     heads: Ints = field(default=LEFT_OUT)
+    family: Ints = field(default=LEFT_OUT)
+    setup_s: Ints = field(default=LEFT_OUT)
     row: Ints = field(default=LEFT_OUT)
     notes: Mapping[int, str] = field(default_factory=dict)
 
@@ -183,6 +153,8 @@ class Operations:
             ("step", NO_STEP),
             ("splittable", 0),
             ("heads", 1),
+            ("family", NO_FAMILY),
+            ("setup_s", 0),
             ("row", 0),
         ):
             given = getattr(self, name)
@@ -207,6 +179,12 @@ class Shop:
         The pools that machines name.
     breaks
         When the whole hall pauses, in order of time and apart from each other.
+    families
+        Names of the setup families that operations point at.
+    changeovers
+        By machine id.
+    transport
+        Time an order needs between machines.
     clock
         Wall time of second zero, if known.
     shift_end_s
@@ -226,6 +204,9 @@ class Shop:
     operations: Operations
     crews: tuple[Crew, ...] = ()
     breaks: tuple[Closure, ...] = ()
+    families: tuple[str, ...] = ()
+    changeovers: Mapping[str, Changeovers] = field(default_factory=dict)
+    transport: Transport = field(default_factory=Transport)
     clock: Clock = field(default_factory=Clock)
     shift_end_s: int | None = None
     unit_rounds: bool = False
@@ -245,8 +226,21 @@ class Shop:
             raise ShopError("releases must not be negative and priorities must be positive")
         if self.shift_end_s is not None and self.shift_end_s <= 0:
             raise ShopError("the shift ends before it starts")
-        if any(b.start_s < a.end_s for a, b in pairwise(self.breaks)):
-            raise ShopError("breaks must be in order of time and must not overlap")
+        for what, closures in (
+            ("breaks", self.breaks),
+            *((f"closures of {m.id}", m.closed) for m in self.machines),
+        ):
+            if any(b.start_s < a.end_s for a, b in pairwise(closures)):
+                raise ShopError(f"{what} must be in order of time and must not overlap")
+        if len(operations) and bool(
+            ((operations.setup_s < 0) | (operations.setup_s > operations.seconds)).any()
+        ):
+            raise ShopError("a set-up is part of its operation's time, and not negative")
+        if len(operations) and int(operations.family.max()) >= len(self.families):
+            raise ShopError("an operation names a family that is not in the shop")
+        unknown = self.changeovers.keys() - {machine.id for machine in self.machines}
+        if unknown:
+            raise ShopError(f"changeovers name machine {min(unknown)}, which is not in the shop")
         for machine in self.machines:
             if machine.crew is not None and machine.crew not in {crew.id for crew in self.crews}:
                 raise ShopError(f"machine {machine.id} names crew {machine.crew}, which is not in the shop")
@@ -286,6 +280,8 @@ class Shop:
             step=None if step == NO_STEP else step,
             splittable=bool(columns.splittable[index]),
             heads=int(columns.heads[index]),
+            family="" if columns.family[index] == NO_FAMILY else self.families[int(columns.family[index])],
+            setup_s=int(columns.setup_s[index]),
             note=columns.notes.get(index, ""),
             row=int(columns.row[index]),
         )
@@ -314,6 +310,8 @@ class Shop:
                 columns.step[picked],
                 columns.splittable[picked],
                 columns.heads[picked],
+                columns.family[picked],
+                columns.setup_s[picked],
                 columns.row[picked],
                 {place[old]: note for old, note in columns.notes.items() if old in place},
             ),

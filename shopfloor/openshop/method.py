@@ -90,4 +90,10 @@ def why_not_plain(shop: Shop) -> str | None:
         return "a crew limits how much runs at once"
     if shop.breaks:
         return "breaks interrupt the shift"
+    if any(machine.closed for machine in shop.machines):
+        return "machines have closures of their own"
+    if any(not changeover.none for changeover in shop.changeovers.values()):
+        return "machines need changeovers between families"
+    if not shop.transport.none:
+        return "orders need time between machines"
     return None

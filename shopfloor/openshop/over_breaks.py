@@ -19,8 +19,13 @@ from shopfloor.openshop.method import Effort, Method, Progress
 
 
 def all_pause(shop: Shop) -> bool:
-    """Whether the hall has breaks and every machine's work pauses over them."""
-    return bool(shop.breaks) and all(machine.pauses for machine in shop.machines)
+    """Whether nothing happens in the hall's breaks: every machine pauses, and no other clock runs on."""
+    return (
+        bool(shop.breaks)
+        and all(machine.pauses and not machine.closed for machine in shop.machines)
+        and all(not crew.levels for crew in shop.crews)
+        and shop.transport.none
+    )
 
 
 @dataclass(frozen=True, slots=True)

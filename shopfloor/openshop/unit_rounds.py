@@ -60,6 +60,8 @@ def why_not_unit(shop: Shop) -> str | None:
         return f"times differ ({duration(int(seconds.min()))} to {duration(int(seconds.max()))})"
     if shop.breaks and any(machine.pauses for machine in shop.machines):
         return "some machines pause over the breaks and others do not"
+    if shop.has_splits and any(machine.count > 1 for machine in shop.machines):
+        return "cutting operations uses the units of a group better"
     return why_not_plain(replace(shop, breaks=()))
 
 
