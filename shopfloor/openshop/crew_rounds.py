@@ -51,7 +51,7 @@ class CrewRounds:
     def promise(self, shop: Shop) -> str:
         """Return the theorem in a sentence."""
         return (
-            f"all operations are equally long and {_at_once(shop)} can be attended at once, so as many rounds as "
+            f"all operations are equally long and {_at_once(shop)} can run at once, so as many rounds as "
             "the busiest order or machine has operations, or as the crew needs for all, whichever is more, "
             "always suffice (de Werra 1971, McDiarmid 1972)"
         )
