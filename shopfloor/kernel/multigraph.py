@@ -17,7 +17,8 @@ IntArray = NDArray[np.int64]
 
 #: Node numbers up to this many times the edges (plus a little) are used as they are, others renumbered.
 SPARSE = 4
-_LITTLE = 1024
+#: "A little" above.
+SPARSE_FROM = 1024
 
 
 def as_columns(left: ArrayLike, right: ArrayLike) -> tuple[IntArray, IntArray]:
@@ -64,7 +65,7 @@ def compact(column: IntArray, name: str) -> tuple[IntArray, int]:
             f"{name} must not hold negative node numbers, got {column[where]} at position {where}"
         )
     nodes = int(column.max()) + 1
-    if nodes > SPARSE * len(column) + _LITTLE:
+    if nodes > SPARSE * len(column) + SPARSE_FROM:
         distinct, column = np.unique(column, return_inverse=True)
         nodes = len(distinct)
     return column, nodes

@@ -3,9 +3,20 @@
 from __future__ import annotations
 
 from collections import Counter
+from importlib.util import find_spec
 
 import numpy as np
+import pytest
 from hypothesis import strategies as st
+
+#: Both implementations pass the same tests; without numba the skips say so.
+KERNELS = [
+    "plain",
+    pytest.param(
+        "fast", marks=pytest.mark.skipif(find_spec("numba") is None, reason="numba is not installed")
+    ),
+]
+on_each_kernel = pytest.mark.parametrize("kernel", KERNELS)
 
 Columns = tuple[np.ndarray, np.ndarray]
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import random
+from importlib.util import find_spec
 
 import networkx as nx
 import numpy as np
@@ -21,40 +22,45 @@ from tests.kernel.graphs import (
     largest_degree,
     multigraphs,
     named_graphs,
+    on_each_kernel,
     random_regular,
 )
 
 NAMED = named_graphs()
 
 
+@on_each_kernel
 @pytest.mark.parametrize("name", NAMED)
-def test_every_kind_of_graph_is_coloured_exactly(name):
+def test_every_kind_of_graph_is_coloured_exactly(name, kernel):
     left, right = NAMED[name]
     for seed in range(3):
-        assert_exact(left, right, colour_edges(left, right, seed=seed))
+        assert_exact(left, right, colour_with_steps(left, right, seed=seed, kernel=kernel).colours)
 
 
+@on_each_kernel
 @given(graph=multigraphs(), seed=st.integers(-(2**70), 2**70))
 @settings(max_examples=200, deadline=None)
-def test_any_multigraph_is_coloured_exactly(graph, seed):
+def test_any_multigraph_is_coloured_exactly(kernel, graph, seed):
     """D. König, Mathematische Annalen 77 (1916): as many colours as the largest degree are enough."""
-    assert_exact(*graph, colour_edges(*graph, seed=seed))
+    assert_exact(*graph, colour_with_steps(*graph, seed=seed, kernel=kernel).colours)
 
 
+@on_each_kernel
 @pytest.mark.parametrize(
     ("rows", "cols"), [(1, 1), (1, 8), (8, 1), (5, 9), (9, 5), (12, 12), (70, 64), (129, 130)]
 )
-def test_complete_graph_needs_the_larger_side(rows, cols):
+def test_complete_graph_needs_the_larger_side(rows, cols, kernel):
     """K(r, s) has the edge chromatic number max(r, s) (König 1916)."""
     left, right = complete(rows, cols)
-    colours = colour_edges(left, right)
+    colours = colour_with_steps(left, right, kernel=kernel).colours
     assert_exact(left, right, colours)
     assert colours.max() + 1 == max(rows, cols)
 
 
-def test_no_edges():
+@on_each_kernel
+def test_no_edges(kernel):
     for nothing in ([], np.empty(0, dtype=np.int64), ()):
-        colours = colour_edges(nothing, nothing)
+        colours = colour_with_steps(nothing, nothing, kernel=kernel).colours
         assert colours.dtype == np.int64
         assert colours.shape == (0,)
 
@@ -90,12 +96,13 @@ def test_never_more_colours_than_greedy_on_the_line_graph(graph):
     assert len(set(colour_edges(left, right).tolist())) <= len(set(greedy.values()))
 
 
+@on_each_kernel
 @pytest.mark.parametrize("degree", range(3, 12))
-def test_circulants_in_natural_order_need_few_path_steps(degree):
+def test_circulants_in_natural_order_need_few_path_steps(degree, kernel):
     """Rows taken in natural order go quadratic on this family; shuffled rows must not."""
     for nodes in (500, 20_000):
         left, right = circulant(nodes, degree)
-        found = colour_with_steps(left, right)
+        found = colour_with_steps(left, right, kernel=kernel)
         assert not found.by_splitting
         assert found.steps <= 10 * len(left)
         assert len(np.unique(left * degree + found.colours)) == len(left)
@@ -125,41 +132,76 @@ def test_halving_is_exact_on_any_multigraph(graph):
     assert_exact(*graph, colour_with_steps(*graph, shuffles=0).colours)
 
 
-def test_budget_spent_leads_to_another_order_and_then_to_halving():
+@on_each_kernel
+def test_budget_spent_leads_to_another_order_and_then_to_halving(kernel):
     left, right = random_regular(40, 9, 1)
-    found = colour_with_steps(left, right, budget=0)
+    found = colour_with_steps(left, right, budget=0, kernel=kernel)
     assert found.by_splitting
     assert found.shuffles == colouring.SHUFFLES
     assert_exact(left, right, found.colours)
     # A graph on which some orders of rows need no path at all: there the second or third order can succeed.
     left, right = random_regular(6, 3, 1)
-    outcomes = [colour_with_steps(left, right, seed=seed, budget=0) for seed in range(60)]
+    outcomes = [colour_with_steps(left, right, seed=seed, budget=0, kernel=kernel) for seed in range(60)]
     for found in outcomes:
         assert_exact(left, right, found.colours)
     assert any(found.shuffles > 1 and not found.by_splitting for found in outcomes)
 
 
-def test_same_seed_same_bytes_whatever_the_integer_type():
+@on_each_kernel
+def test_same_seed_same_bytes_whatever_the_integer_type(kernel):
+    def coloured(us, vs, seed=5) -> bytes:
+        return colour_with_steps(us, vs, seed=seed, kernel=kernel).colours.tobytes()
+
     left, right = NAMED["sparse"]
-    first = colour_edges(left, right, seed=5)
-    assert first.tobytes() == colour_edges(left, right, seed=5).tobytes()
-    assert first.tobytes() == colour_edges(left.tolist(), right.tolist(), seed=5).tobytes()
+    first = coloured(left, right)
+    assert first == coloured(left, right)
+    assert first == coloured(left.tolist(), right.tolist())
     for dtype in (np.uint8, np.int16, np.int32, np.uint64):
-        assert first.tobytes() == colour_edges(left.astype(dtype), right.astype(dtype), seed=5).tobytes()
-    apart = np.repeat(left, 2)[::2]
-    assert first.tobytes() == colour_edges(apart, right, seed=5).tobytes()
-    assert first.tobytes() != colour_edges(left, right, seed=6).tobytes()
+        assert first == coloured(left.astype(dtype), right.astype(dtype))
+    assert first == coloured(np.repeat(left, 2)[::2], right)
+    assert first != coloured(left, right, seed=6)
 
 
-def test_inputs_and_global_random_generators_are_left_alone():
+@pytest.mark.skipif(find_spec("numba") is None, reason="numba is not installed")
+@given(graph=multigraphs(most=200), seed=st.integers(0, 9), budget=st.integers(0, 1))
+@settings(max_examples=100, deadline=None)
+def test_both_kernels_agree_to_the_last_step(graph, seed, budget):
+    """A plan must not depend on whether numba is installed."""
+    plain, fast = (
+        colour_with_steps(*graph, seed=seed, budget=budget, kernel=each) for each in ("plain", "fast")
+    )
+    assert plain.colours.tobytes() == fast.colours.tobytes()
+    assert plain[1:] == fast[1:]
+
+
+@pytest.mark.skipif(find_spec("numba") is None, reason="numba is not installed")
+@pytest.mark.parametrize(
+    ("left", "right"),
+    [
+        random_regular(700, 13, 2),
+        random_regular(60, 150, 3),  # several words of colours
+        random_regular(34_000, 2, 4),  # more groups than 16 bits tell apart
+        random_regular(3, 1000, 5),
+    ],
+)
+def test_both_kernels_agree_on_larger_graphs(left, right):
+    plain, fast = (colour_with_steps(left, right, kernel=each) for each in ("plain", "fast"))
+    assert_exact(left, right, plain.colours)
+    assert plain.steps == fast.steps > 0
+    assert plain.colours.tobytes() == fast.colours.tobytes()
+
+
+@on_each_kernel
+def test_inputs_and_global_random_generators_are_left_alone(kernel):
     left, right = (column.copy() for column in NAMED["regular"])
     left.flags.writeable = right.flags.writeable = False
     before = random.getstate(), np.random.get_state()[1].tobytes()
-    colour_edges(left, right, seed=3)
-    colour_with_steps(left, right, shuffles=0)
+    colour_with_steps(left, right, seed=3, kernel=kernel)
+    colour_with_steps(left, right, shuffles=0, kernel=kernel)
     assert before == (random.getstate(), np.random.get_state()[1].tobytes())
 
 
+@on_each_kernel
 @pytest.mark.parametrize(
     ("left", "right", "error", "text"),
     [
@@ -179,9 +221,9 @@ def test_inputs_and_global_random_generators_are_left_alone():
         ),
     ],
 )
-def test_bad_columns_are_refused(left, right, error, text):
+def test_bad_columns_are_refused(left, right, error, text, kernel):
     with pytest.raises(error) as caught:
-        colour_edges(left, right)
+        colour_with_steps(left, right, kernel=kernel)
     assert str(caught.value) == text
 
 
@@ -211,3 +253,39 @@ def test_folding_keeps_tables_linear():
     graph = folded(*as_columns(left, right))
     assert graph.delta == largest_degree(left, right) == 10_000
     assert (graph.left_groups + graph.right_groups) * graph.delta <= 5 * len(left)
+
+
+def test_compiled_kernel_is_for_large_graphs_only(monkeypatch):
+    asked = []
+    monkeypatch.setattr(colouring, "import_module", lambda name: asked.append(name) or colouring)
+    assert colouring.fast_kernel(colouring.FAST_FROM - 1, "auto") is None
+    assert colouring.fast_kernel(10**9, "plain") is None
+    assert not asked
+    assert colouring.fast_kernel(colouring.FAST_FROM, "auto") is not None
+    assert asked == ["shopfloor.kernel.fast"]
+
+
+def test_without_numba_large_graphs_are_coloured_plainly(monkeypatch):
+    def missing(name):
+        raise ImportError(f"no {name}")
+
+    monkeypatch.setattr(colouring, "import_module", missing)
+    monkeypatch.setattr(colouring, "FAST_FROM", 1)
+    assert_exact(*NAMED["sparse"], colour_edges(*NAMED["sparse"]))
+    with pytest.raises(ImportError):
+        colour_with_steps(*NAMED["sparse"], kernel="fast")
+
+
+def test_compiled_code_goes_to_memory_where_no_folder_takes_it(monkeypatch):
+    fast = pytest.importorskip("shopfloor.kernel.fast", exc_type=ImportError)
+    tried = []
+
+    def njit(signatures, cache=False, **options):
+        tried.append(cache)
+        if cache:
+            raise RuntimeError("cannot cache function: no locator available")
+        return lambda function: function
+
+    monkeypatch.setattr(fast.numba, "njit", njit)
+    assert fast.compiled("int64(int64)")(len) is len
+    assert tried == [True, False]
