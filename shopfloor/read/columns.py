@@ -17,7 +17,7 @@ from shopfloor.model.calendar import Clock
 from shopfloor.model.shop import Bools, Ints
 from shopfloor.read import cells as cell
 from shopfloor.read.cells import CellFault, Marks
-from shopfloor.read.rules import Findings, Place
+from shopfloor.read.rules import MAX_FAULTS, Findings, Place
 from shopfloor.read.table import Cells, Coded, Table
 
 
@@ -60,8 +60,8 @@ class Column:
         For the documentation.
     needed
         Whether there is no orders file without it.
-    used
-        False for a column that is checked but has no place in the shop yet.
+    idle_without
+        The table of shop.toml without which nothing depends on the column.
     """
 
     name: str
@@ -69,7 +69,7 @@ class Column:
     read: Reader
     help: str
     needed: bool = False
-    used: bool = True
+    idle_without: str = ""
 
 
 COLUMNS: Mapping[str, Column] = {
@@ -83,10 +83,16 @@ COLUMNS: Mapping[str, Column] = {
         Column("release", "moment", _moment("release"), "Earliest start of the order."),
         Column("due", "moment", _moment("due"), "Wanted finish of the order."),
         Column("priority", "number", _number(cell.priority), "Weight of the order; 1 unless given."),
-        Column("family", "text", _text(cell.name_of), "Setup family.", used=False),
+        Column("family", "text", _text(cell.name_of), "Setup family.", idle_without="[changeover]"),
         Column("step", "text", _text(cell.step), "Rank inside the order; blank is any time."),
         Column("splittable", "text", _text(cell.splittable), "Whether the operation may be cut: yes or no."),
-        Column("heads", "text", _text(cell.heads), "People it takes from the machine's crew."),
+        Column(
+            "heads",
+            "text",
+            _text(cell.heads),
+            "People it takes from its machine's crew.",
+            idle_without="[[crew]]",
+        ),
         Column("note", "text", _text(cell.note), "Any remark; printed on the lists."),
     )
 }
@@ -162,8 +168,8 @@ class Sheet:
         return int(self.cells.row[index])
 
     def text(self, index: int, name: str) -> str:
-        """Return the text of a cell."""
-        return self.cells.columns[name].text(index) if name in self.cells.columns else ""
+        """Return the text of a cell, as a message shows it."""
+        return self.cells.columns[name].text(index).removeprefix("\0") if name in self.cells.columns else ""
 
     def fault_rows(self, rows: Ints, rule: str, name: str, words: Callable[[int], dict[str, Any]]) -> None:
         """Add one fault a row, in column `name`."""
@@ -177,24 +183,23 @@ class Sheet:
         """Read column `name`, each distinct text once; every faulty cell becomes a fault."""
         column, coded = COLUMNS[name], self.cells.columns[name]
         values: list[Any] = []
-        faults: dict[int, CellFault] = {}
+        broken: dict[str, list[int]] = {}  # rule -> the texts that break it
+        words: dict[int, dict[str, Any]] = {}
         for code, text in enumerate(coded.texts):
             value = None
             if text and len(text) <= settings.MAX_CELL_CHARACTERS:  # a longer one is a fault already
                 try:
                     cell.refuse_error_value(text)
                     value = column.read(text, how)
-                except CellFault as broken:
-                    faults[code] = broken
+                except CellFault as fault:
+                    alike = broken.setdefault(fault.rule, [])
+                    alike.append(code)
+                    if len(alike) <= MAX_FAULTS:  # texts are coded as they appear: no later one can be listed
+                        words[code] = fault.words
             values.append(value)
         self._read[name] = Read(column, coded, self.positions[name], tuple(values))
-        if not faults:
-            return
-        by_rule: dict[str, list[int]] = {}
-        for code, fault in faults.items():
-            by_rule.setdefault(fault.rule, []).append(code)
-        for rule, codes in by_rule.items():
+        for rule, codes in broken.items():
             flagged = np.zeros(len(coded.texts), np.bool_)
             flagged[codes] = True
             rows = np.flatnonzero(flagged[coded.codes])
-            self.fault_rows(rows, rule, name, lambda index: faults[int(coded.codes[index])].words)
+            self.fault_rows(rows, rule, name, lambda row: words[int(coded.codes[row])])

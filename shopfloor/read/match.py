@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+import json
+
 from shopfloor.read.headers import Wanted, listed, loose, nearest
-from shopfloor.read.rules import Findings
+from shopfloor.read.rules import Findings, shorten
 from shopfloor.read.table import Table
 from shopfloor.read.times import TIME_COLUMNS
 
@@ -60,8 +62,8 @@ def _report_missing(
             table.place,
             "column-missing",
             name=name,
-            nearest=f" (the nearest header is {close!r})" if close else "",
-            map=f'[columns] {name} = "{close or "your header"}"',
+            nearest=f" (the nearest header is {shorten(close)!r})" if close else "",
+            map=f"[columns] {name} = {json.dumps(close or 'your header', ensure_ascii=False)}",
         )
 
 
@@ -81,7 +83,7 @@ def _report_mapped(
             continue
         if export or name in wanted.needed or (timeless and name in TIME_COLUMNS):
             close = _nearest_header(header, unknown)
-            hint = f"; the nearest is {close!r}" if close else ""
+            hint = f"; the nearest is {shorten(close)!r}" if close else ""
             findings.fault(table.place, "mapped-header-missing", header, name=name, nearest=hint)
         else:
             findings.notice(table.place, "mapped-header-absent", header, name=name)

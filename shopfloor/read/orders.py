@@ -13,7 +13,7 @@ from shopfloor import settings
 from shopfloor.errors import InputError
 from shopfloor.model.calendar import MINUTE, Clock
 from shopfloor.model.results import Fault
-from shopfloor.model.shop import NO_DUE, NO_STEP, Ints, Machine, Operations, Orders, Shop
+from shopfloor.model.shop import NO_DUE, NO_FAMILY, NO_STEP, Ints, Machine, Operations, Orders, Shop
 from shopfloor.read.cells import find_marks
 from shopfloor.read.columns import COLUMNS, How, Sheet
 from shopfloor.read.floor import Draft, Floor, read_floor
@@ -29,7 +29,7 @@ if TYPE_CHECKING:
     import pandas as pd
 
 NEAREST_BUDGET = 50_000  # pairs of names compared to suggest a machine; beyond it nothing is suggested
-NOBODY = -1  # a row whose order or machine is not known
+NOBODY = -1  # a row whose order, machine or family is not known
 
 
 @dataclass(frozen=True)
@@ -184,9 +184,10 @@ def _assemble(sheet: Sheet, draft: Draft, round_s: int) -> dict[str, Any]:
     else:
         machines = tuple(Machine(name) for name in machine_ids)
         _notice_alike(sheet, machine_ids, machine)
+    families, family = _names(sheet, "family")
     seconds, unit_rounds = run_times(sheet, round_s)
     _notice_repeated(sheet, order_ids, job, machines, machine)
-    _notice_unused(sheet)
+    _notice_idle(sheet)
 
     size = len(order_ids)
     release = _per_order(sheet, "release", job, size, 0, np.int64)
@@ -207,9 +208,11 @@ def _assemble(sheet: Sheet, draft: Draft, round_s: int) -> dict[str, Any]:
             step=_per_row(sheet, "step", NO_STEP),
             splittable=_per_row(sheet, "splittable", 0),
             heads=_per_row(sheet, "heads", 1),
+            family=np.where(family == NOBODY, NO_FAMILY, family),
             row=sheet.cells.row,
             notes=_notes(sheet),
         ),
+        "families": families,
         "unit_rounds": unit_rounds,
     }
 
@@ -224,15 +227,15 @@ def _names(sheet: Sheet, name: str) -> tuple[tuple[str, ...], Ints]:
     column = sheet[name]
     index: dict[str, int] = {}
     numbers = [NOBODY if value is None else index.setdefault(value, len(index)) for value in column.values]
-    sheet.fault_rows(np.flatnonzero(column.blank), f"{name}-missing", name, lambda _: {})
+    if COLUMNS[name].needed:
+        sheet.fault_rows(np.flatnonzero(column.blank), f"{name}-missing", name, lambda _: {})
     return tuple(index), np.array(numbers, np.int64)[column.cells.codes]
 
 
 def _report_unknown(sheet: Sheet, names: tuple[str, ...], machine: Ints, floor: Floor) -> None:
     listed = [entry.id for entry in floor.machines]
-    unknown = (
-        np.array([*(name not in set(listed) for name in names), False]) if names else np.zeros(1, np.bool_)
-    )
+    known = set(listed)
+    unknown = np.array([*(name not in known for name in names), False], np.bool_)
     left = NEAREST_BUDGET
     hints: dict[int, str] = {}
 
@@ -250,17 +253,16 @@ def _report_unknown(sheet: Sheet, names: tuple[str, ...], machine: Ints, floor: 
 
 def _notice_alike(sheet: Sheet, names: tuple[str, ...], machine: Ints) -> None:
     """Notice machines whose names differ only by case, spaces or punctuation."""
+    named = np.flatnonzero(machine != NOBODY)
+    rows = named[np.unique(machine[named], return_index=True)[1]]  # where each machine first stands
     first: dict[str, int] = {}
     for number, name in enumerate(names):
         folded = unicodedata.normalize("NFKC", name).casefold()
         key = "".join(filter(str.isalnum, folded)) or folded
         other = first.setdefault(key, number)
         if other != number:
-            here, there = (int((machine == which).argmax()) for which in (number, other))
-            row = sheet.row(there)
-            sheet.findings.notice(
-                sheet.place(here, "machine"), "machines-alike", name, other=names[other], row=row
-            )
+            place, row = sheet.place(rows[number], "machine"), sheet.row(rows[other])
+            sheet.findings.notice(place, "machines-alike", name, other=names[other], row=row)
 
 
 def _notice_repeated(
@@ -276,7 +278,7 @@ def _notice_repeated(
         return
     row = int(again.argmax())
     sheet.findings.notice(
-        sheet.table.place,
+        sheet.table.place.whole,
         "visit-repeated",
         count=count_of(int(again.sum()), "row sends", "rows send"),
         earlier=sheet.row(int(known[first[which[row]]])),
@@ -286,13 +288,13 @@ def _notice_repeated(
     )
 
 
-def _notice_unused(sheet: Sheet) -> None:
-    """Notice columns that are checked although nothing depends on them."""
+def _notice_idle(sheet: Sheet) -> None:
+    """Notice columns that are filled in although nothing in shop.toml makes them count."""
     for name in sheet.positions:
-        rule = "heads-without-crew" if name == "heads" else "column-not-used-yet"
-        if name in sheet and (name == "heads" or not COLUMNS[name].used) and bool(sheet[name].given.any()):
+        table = COLUMNS[name].idle_without
+        if table and name in sheet and bool(sheet[name].given.any()):
             place = sheet.table.at(sheet.table.place.row, sheet.positions[name])
-            sheet.findings.notice(place, rule, place.column)
+            sheet.findings.notice(place, "column-idle", place.column, table=table)
 
 
 # ---- values ---------------------------------------------------------------------------------------

@@ -54,10 +54,7 @@ RULES: dict[str, Rule] = {
     "too-many-rows": Rule("is beyond the {limit:,} rows this tool reads", "split the file"),
     "too-many-columns": Rule("has {count:,} columns, more than {limit:,}", "delete the columns not needed"),
     "cell-too-long": Rule("has {length:,} characters, more than {limit:,}", "shorten it"),
-    "line-too-long": Rule(
-        "has more than {limit:,} characters on one line; reading stopped here",
-        "check that this is the right file",
-    ),
+    "line-too-long": Rule("is a line of more than {limit:,} bytes", "check that this is the right file"),
     "row-too-wide": Rule(
         "stands to the right of the last header", "quote cells that hold the separator, or name the column"
     ),
@@ -178,10 +175,9 @@ NOTICES: dict[str, Rule] = {
     "columns-not-used": Rule(
         "these columns are not used: {names}", "map them in shop.toml under [columns] if they matter"
     ),
-    "column-not-used-yet": Rule(
-        "is read and checked but not used by this version", "the plan does not depend on it"
+    "column-idle": Rule(
+        "counts for nothing while shop.toml has no {table}", "the plan does not depend on it"
     ),
-    "heads-without-crew": Rule("binds nothing while shop.toml has no crew", "the plan does not depend on it"),
     "rows-above-header": Rule(
         "the rows above the header (row {row}) are not read", "nothing to do if they are a title"
     ),
@@ -193,7 +189,7 @@ NOTICES: dict[str, Rule] = {
         "nothing to do if this is another export",
     ),
     "one-round-each": Rule(
-        "has no times: every row is one round of {minutes} min", "fill in the column if times are known"
+        "has no times: every row is one round of {length}", "fill in the column if times are known"
     ),
     "seconds-rounded": Rule(
         "{count} to the nearest whole second; the first, in row {row}, is {seconds} s, taken as {rounded} s",
@@ -225,6 +221,11 @@ class Place:
     row: int = 0
     column: str = ""
     position: int = 0
+
+    @property
+    def whole(self) -> Place:
+        """The sheet as a whole."""
+        return Place(self.file, self.sheet)
 
     def at(self, row: int, column: str = "", position: int = 0) -> Place:
         """Return another place in the same sheet."""
@@ -332,6 +333,11 @@ class Findings:
 
 # Words that come from a file and are therefore cut before they enter a sentence.
 _QUOTED = frozenset({"other", "order", "machine", "first", "release"})
+
+
+def printable(name: str) -> str:
+    """Return a name that a terminal shows as it is, whatever a hostile file was called."""
+    return "".join(c if c.isprintable() else "?" for c in name)
 
 
 def refuse(place: Place, rule: str, value: str = "", **words: Any) -> InputError:

@@ -5,6 +5,9 @@ from __future__ import annotations
 import csv
 import io
 from collections.abc import Iterable, Iterator, Sequence
+from operator import length_hint
+
+import numpy as np
 
 from shopfloor import settings
 from shopfloor.read.headers import Wanted, find_header
@@ -14,7 +17,7 @@ from shopfloor.read.source import Source
 SEPARATORS = (",", ";", "\t")
 SNIFFED_CHARACTERS = 1 << 16
 SNIFFED_ROWS = 25
-MAX_LINE_CHARACTERS = 1_000_000  # one line of a table; guards the memory that splitting it would take
+MAX_LINE_BYTES = 1_000_000
 
 _MARKS = (  # byte-order marks; UTF-32 before UTF-16, which it begins with
     (b"\xef\xbb\xbf", "utf-8-sig"),
@@ -122,6 +125,7 @@ def open_text(
     goes on with the next line.
     """
     codec = find_encoding(source)
+    _refuse_long_lines(source)
     head = _stream(source, codec).read(SNIFFED_CHARACTERS)
     first, _, _ = head.partition("\n")
     lines: Iterator[str] = iter(_stream(source, codec))
@@ -134,19 +138,28 @@ def open_text(
         next(lines)
     else:
         separator = find_separator(head, wanted)
-    return separator, _records(_guarded(lines, source, findings), separator, source, findings)
+    return separator, _records(lines, separator, source, findings)
 
 
 def _stream(source: Source, codec: str) -> io.TextIOWrapper:
     return io.TextIOWrapper(io.BytesIO(source.data), encoding=codec, newline="")
 
 
-def _guarded(lines: Iterable[str], source: Source, findings: Findings) -> Iterator[str]:
-    for line in lines:
-        if len(line) > MAX_LINE_CHARACTERS:
-            findings.fault(source.place, "line-too-long", line[:80], limit=MAX_LINE_CHARACTERS)
-            return
-        yield line
+def _refuse_long_lines(source: Source) -> None:
+    """Refuse a line that would take far more memory to split than a row of any table.
+
+    Raises
+    ------
+    InputError
+        If there is one.
+    """
+    data = np.frombuffer(source.data, np.uint8)
+    ends = np.flatnonzero((data == 10) | (data == 13))
+    gaps = np.diff(np.r_[-1, ends, len(data)])
+    if gaps.max() > MAX_LINE_BYTES:
+        start = int(np.r_[0, ends + 1][gaps.argmax()])
+        line = source.data.count(b"\n", 0, start) + 1
+        raise refuse(source.place.at(line), "line-too-long", limit=MAX_LINE_BYTES)
 
 
 def _records(
@@ -154,21 +167,17 @@ def _records(
 ) -> Iterator[tuple[int, Sequence[str]]]:
     # Strict, so that a quote never closed is noticed instead of swallowing the rest of the file.
     reader = csv.reader(lines, delimiter=separator, strict=True, skipinitialspace=True)
-    row = 0
+    last = settings.MAX_ROWS + 1
+    rows = iter(range(1, last + 1))
     while True:
-        row += 1
         try:
-            record = next(reader)
-        except StopIteration:
-            return
+            yield from zip(rows, reader, strict=False)
+            break
         except csv.Error as error:
-            place = source.place.at(row)
+            place = source.place.at(last - length_hint(rows))  # the number that zip had taken for this record
             if "unexpected end" in str(error) or "field limit" in str(error):
                 findings.fault(place, "open-quote")
                 return
             findings.fault(place, "stray-quote")
-            continue
-        if row > settings.MAX_ROWS + 1:
-            findings.fault(source.place.at(row), "too-many-rows", limit=settings.MAX_ROWS)
-            return
-        yield row, record
+    if not length_hint(rows) and next(lines, None) is not None:
+        findings.fault(source.place.at(last + 1), "too-many-rows", limit=settings.MAX_ROWS)

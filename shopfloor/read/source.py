@@ -10,7 +10,7 @@ from pathlib import Path
 from typing import BinaryIO, TypeAlias
 
 from shopfloor import settings
-from shopfloor.read.rules import Place, refuse
+from shopfloor.read.rules import Place, printable, refuse
 
 Readable: TypeAlias = "str | os.PathLike[str] | bytes | BinaryIO"
 
@@ -68,7 +68,7 @@ def take(source: Readable, *, name: str | None = None, limit: int | None = None)
         If the file is missing, cannot be read, is empty or is too large.
     """
     limit = settings.MAX_FILE_BYTES if limit is None else limit
-    shown = _printable(name or _name_of(source))
+    shown = printable(name or _name_of(source))
     place = Place(shown)
     try:
         data = _bytes_of(source, limit)
@@ -105,10 +105,6 @@ def _name_of(source: Readable) -> str:
         return Path(source).name or str(source)
     name = getattr(source, "name", None)
     return Path(name).name if isinstance(name, str) and name else "<input>"
-
-
-def _printable(name: str) -> str:
-    return "".join(c if c.isprintable() else "?" for c in name)
 
 
 def _bytes_of(source: Readable, limit: int) -> bytes:

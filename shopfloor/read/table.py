@@ -9,7 +9,7 @@ import sys
 from array import array
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
-from itertools import chain, islice
+from itertools import chain, dropwhile, islice
 from operator import itemgetter
 from typing import TYPE_CHECKING, TypeGuard, cast
 
@@ -31,7 +31,7 @@ if TYPE_CHECKING:
 Record = tuple[int, Sequence[str]]
 
 MAX_COLUMNS = 1_000
-CHUNK = 8_192
+CHUNK = 256  # records at a time: few enough to stay in the processor's cache, measured best of 256 to 8192
 
 
 @dataclass(frozen=True)
@@ -45,7 +45,7 @@ class Table:
     sha256
         Of the file's bytes; of a DataFrame's cells written as CSV.
     header
-        As it stands in the file, outer blanks trimmed.
+        As it stands in the file, each run of blanks and line breaks as one space.
     separator
         Of a text table; empty for a workbook or a DataFrame, whose numbers come as numbers.
     records
@@ -115,12 +115,13 @@ def open_table(
         taken = take(cast("Readable", source), name=name)
         sha256 = taken.sha256
         place, separator, records = _file_records(taken, wanted, findings)
+    records = dropwhile(lambda pair: not any(map(str.strip, pair[1])), records)
     first = list(islice(records, HEADER_ROWS))
-    if not any(cell.strip() for _, record in first for cell in record):
+    if not first:
         raise refuse(place, "file-empty")
     at, _ = find_header([record for _, record in first], wanted)
     row, record = first[at]
-    header = tuple(cell.strip() for cell in record)
+    header = tuple(" ".join(cell.split()) for cell in record)
     if len(header) > MAX_COLUMNS:
         raise refuse(place.at(row), "too-many-columns", count=len(header), limit=MAX_COLUMNS)
     if any(any(map(str.strip, above)) for _, above in first[:at]):
@@ -136,8 +137,8 @@ def is_frame(source: object) -> TypeGuard[pd.DataFrame]:
 
 def _file_records(source: Source, wanted: Wanted, findings: Findings) -> tuple[Place, str, Iterator[Record]]:
     if source.data.startswith(ZIP_MAGIC):
-        sheet, records = open_sheet(source, wanted, findings)
-        return Place(source.name, sheet), "", records
+        place, records = open_sheet(source, wanted, findings)
+        return place, "", records
     refuse_other_kinds(source)
     separator, records = open_text(source, wanted, findings)
     return source.place, separator, records
@@ -175,14 +176,15 @@ def gather(table: Table, positions: Mapping[str, int], findings: Findings) -> Ce
     width = max(positions.values(), default=-1) + 1
     named = max((k for k, header in enumerate(table.header) if header), default=-1) + 1
     while chunk := list(islice(table.records, CHUNK)):
-        kept = [pair for pair in chunk if any(map(str.strip, pair[1]))]
+        kept = [pair for pair in chunk if (pair[1] and pair[1][0].strip()) or any(map(str.strip, pair[1]))]
         if not kept:
             continue
         numbers, records = zip(*kept, strict=True)
         rows.extend(numbers)
-        if max(map(len, records)) > named:
+        lengths = set(map(len, records))
+        if max(lengths) > named:
             _report_beyond(table, kept, named, findings)
-        if min(map(len, records)) < width:
+        if min(lengths) < width:
             records = tuple([*record, *[""] * (width - len(record))] for record in records)
         for name, position in positions.items():
             lookup, out = codes[name]

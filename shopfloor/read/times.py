@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 
 from shopfloor import settings
-from shopfloor.model.calendar import MINUTE, minutes_text
+from shopfloor.model.calendar import MINUTE, duration
 from shopfloor.model.shop import Bools, Ints
 from shopfloor.read.cells import nearest_second
 from shopfloor.read.columns import Sheet
@@ -36,7 +36,7 @@ def run_times(sheet: Sheet, round_s: int) -> tuple[Ints, bool]:
     if all(bool(sheet[name].blank.all()) for name in present):
         if present:
             place = sheet.table.at(sheet.table.place.row, sheet.positions[present[0]])
-            sheet.findings.notice(place, "one-round-each", place.column, minutes=minutes_text(round_s))
+            sheet.findings.notice(place, "one-round-each", place.column, length=duration(round_s))
         return np.full(len(sheet), round_s, np.int64), True
 
     times, stated = _stated(sheet)
@@ -109,7 +109,7 @@ def _report_gaps(sheet: Sheet) -> None:
     if len(beside):
         count = count_of(len(beside), "row has", "rows have")
         sheet.findings.notice(
-            sheet.table.place, "quantity-beside-minutes", count=count, row=sheet.row(beside[0])
+            sheet.table.place.whole, "quantity-beside-minutes", count=count, row=sheet.row(beside[0])
         )
 
 
@@ -125,11 +125,11 @@ def _seconds(sheet: Sheet, times: list[Fraction], code: Ints) -> Ints:
     rows = np.flatnonzero(known & (rounded[code] > limit * MINUTE))
     sheet.fault_rows(rows, "minutes-too-large", "quantity", lambda _: {"limit": limit})
     odd = np.array([*(time.denominator != 1 for time in times), False])
-    changed = np.flatnonzero(known & odd[code])
+    changed = np.flatnonzero(known & odd[code] & (rounded[code] > 0))
     if len(changed):
         first = changed[0]
         sheet.findings.notice(
-            sheet.table.place,
+            sheet.table.place.whole,
             "seconds-rounded",
             count=count_of(len(changed), "time is rounded", "times are rounded"),
             row=sheet.row(first),

@@ -13,7 +13,7 @@ from typing import Any, TypeVar
 from shopfloor import settings
 from shopfloor.read.forms import NOT_CALCULATED, text_of
 from shopfloor.read.headers import HEADER_ROWS, Wanted, find_header, listed
-from shopfloor.read.rules import Findings, Place, refuse
+from shopfloor.read.rules import Findings, Place, printable, refuse
 from shopfloor.read.source import Source
 
 ZIP_MAGIC = b"PK\x03\x04"
@@ -28,8 +28,8 @@ _T = TypeVar("_T")
 
 def open_sheet(
     source: Source, wanted: Wanted, findings: Findings
-) -> tuple[str, Iterator[tuple[int, Sequence[str]]]]:
-    """Return the name of the sheet that reads best, and its rows with their numbers.
+) -> tuple[Place, Iterator[tuple[int, Sequence[str]]]]:
+    """Return the sheet that reads best, and its rows with their numbers.
 
     Best means: most headers known, then the first. Dates, times and numbers come in the text forms of
     :func:`text_of`; formulas as their saved results.
@@ -54,14 +54,15 @@ def open_sheet(
     scores = [known(index) for index in range(min(len(sheets), MAX_SHEETS_SEEN))]
     best = max(range(len(scores)), key=lambda index: scores[index])
     title = str(sheets[best].title)
+    place = Place(source.name, printable(title))
     others = [str(sheets[index].title) for index, score in enumerate(scores) if index != best and score >= 0]
     if others:
-        findings.notice(Place(source.name, title), "sheets-not-read", names=listed(others))
+        findings.notice(place, "sheets-not-read", names=listed(others))
     plain = None
     if formulas:
         plain = _whole(source, lambda: _load(source, results=False))[title]
         plain.reset_dimensions()
-    return title, _rows(source, sheets[best], plain, title, findings)
+    return place, _rows(source, sheets[best], plain, place, findings)
 
 
 def _inspect(source: Source) -> bool:
@@ -144,7 +145,7 @@ def _reason(error: Exception) -> str:
 
 
 def _rows(
-    source: Source, sheet: Any, plain: Any, title: str, findings: Findings
+    source: Source, sheet: Any, plain: Any, place: Place, findings: Findings
 ) -> Iterator[tuple[int, Sequence[str]]]:
     """Yield the rows; `plain` is the same sheet with formulas in place of their results, or None."""
     rows = sheet.iter_rows()
@@ -156,7 +157,7 @@ def _rows(
         if cells is None:
             return
         if row > settings.MAX_ROWS + 1:
-            findings.fault(Place(source.name, title, row), "too-many-rows", limit=settings.MAX_ROWS)
+            findings.fault(place.at(row), "too-many-rows", limit=settings.MAX_ROWS)
             return
         texts = _texts(cells)
         if shadows is not None:
