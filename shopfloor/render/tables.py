@@ -73,6 +73,7 @@ def summary(plan: Plan) -> dict[str, Any]:
         "stopped": plan.stopped,
         "repeatable": plan.repeatable,
         "remarks": list(plan.remarks),
+        "would_help": list(plan.would_help),
         "bounds": [
             {
                 "kind": bound.kind,

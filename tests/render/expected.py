@@ -79,7 +79,8 @@ def small_plan() -> Plan:
         ),
         inputs=(("orders.csv", "5e" * 32),),
         options={"time_limit_s": 30.0, "workers": 0, "seed": 7},
-        remarks=("The gap is 1 h 10.",),
+        remarks=("The gap is 1 h.",),
+        would_help=("A second CMM: nothing could end before 06:55.",),
         stopped="time limit",
         repeatable=False,
     )
