@@ -113,14 +113,18 @@ def load(
     round_s = _round_seconds(round_minutes, findings)
     clock = settled[0] if settled is not None and draft.shift_known else None
     wanted = Wanted(tuple(COLUMNS), tuple(n for n, c in COLUMNS.items() if c.needed), draft.floor.columns)
+    before = findings.count
     try:
         table = open_table(source, wanted, findings, name=name)
     except InputError as error:
         findings.merge(error)
         raise InputError(findings.faults, findings.notices) from None
+    unread = findings.count - before  # rows whose quotes are wrong
     positions = match_columns(table, wanted, findings)
+    before = findings.count
     cells = gather(table, positions, findings)
-    if not len(cells):
+    unread += findings.count - before
+    if not len(cells) and not unread:
         findings.fault(table.place, "no-rows")
     sheet = Sheet(table, cells, positions, findings)
     _read_columns(sheet, table.separator, clock)
