@@ -10,6 +10,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
+from shopfloor.render.codes import code
 from shopfloor.render.dispatch_sheets import dispatch_view
 from shopfloor.render.dispatch_view import (
     DispatchView,
@@ -32,7 +33,7 @@ _RUN_TITLES = ("No", "Unit", "Order", "Start", "End", "Began", "Ended", "Done")
 _TICK = '<span class="tick"></span>'
 
 
-def dispatch_page(plan: Plan, *, stamp: str | None = None) -> str:
+def dispatch_page(plan: Plan, *, stamp: str | None = None, codes: str | None = None) -> str:
     """Return dispatch.html for `plan`: machine lists, travellers and, in unit rounds, round sheets.
 
     Parameters
@@ -42,24 +43,31 @@ def dispatch_page(plan: Plan, *, stamp: str | None = None) -> str:
     stamp
         The time of printing, in the words to print; nothing is printed when None, so that the same plan
         gives the same bytes.
+    codes
+        ``qr`` or ``code128`` to print each machine and each order as a code to scan; None for no codes.
+
+    Raises
+    ------
+    ValueError
+        If `codes` is anything else.
 
     Notes
     -----
-    Linear in the number of assignments; about 0.8 kB an assignment.
+    Linear in the number of assignments; about 0.6 kB an assignment.
     """
-    return lay_out(dispatch_view(plan, stamp=stamp))
+    return lay_out(dispatch_view(plan, stamp=stamp), codes)
 
 
-def lay_out(view: DispatchView) -> str:
-    """Return the page for what is to be shown on it."""
+def lay_out(view: DispatchView, codes: str | None = None) -> str:
+    """Return the page for what is to be shown on it; `codes` as in :func:`dispatch_page`."""
     body = [
         # targets of the bar's links: the style sheet shows, and so prints, only the kind targeted
         *(f'<i class="kind" id="only-{kind}"></i>' for kind in ("machines", "strips", "rounds")),
         _bar(view),
         _index(view),
         '<main id="sheets">',
-        *(_machine_sheet(view, number, sheet) for number, sheet in enumerate(view.machines, 1)),
-        *_strip_sheet(view),
+        *(_machine_sheet(view, number, sheet, codes) for number, sheet in enumerate(view.machines, 1)),
+        *_strip_sheet(view, codes),
         *(_round_sheet(view, sheet) for sheet in view.round_sheets),
         "</main>",
     ]
@@ -108,7 +116,7 @@ def _index(view: DispatchView) -> str:
 # ---- machine lists -------------------------------------------------------------------------------
 
 
-def _machine_sheet(view: DispatchView, number: int, sheet: MachineList) -> str:
+def _machine_sheet(view: DispatchView, number: int, sheet: MachineList, codes: str | None) -> str:
     grouped = sheet.units > 1
     runs = f"{len(sheet.runs)} run{'s' if len(sheet.runs) > 1 else ''}"
     units = f"{sheet.units} units, " if grouped else ""
@@ -121,7 +129,7 @@ def _machine_sheet(view: DispatchView, number: int, sheet: MachineList) -> str:
     return "\n".join(
         [
             f'<section class="sheet machine" id="m{number}"><table><colgroup>{widths}</colgroup>',
-            f"<thead>{_head(view, len(titles), title, facts)}",
+            f"<thead>{_head(view, len(titles), title, facts, _code(sheet.machine, codes))}",
             f"<tr>{heads}</tr></thead>",
             f"<tfoot>{_foot(len(titles))}</tfoot>",
             "<tbody>",
@@ -136,13 +144,17 @@ def _long(name: str) -> str:
     return ' class="long"' if len(name) > LONG_NAME else ""
 
 
-def _head(view: DispatchView, columns: int, title: str, facts: str) -> str:
-    """The first row of a table's head, repeated on each page; `title` is markup, `facts` plain text."""
+def _code(text: str, codes: str | None) -> str:
+    return code(text, codes) if codes is not None else ""
+
+
+def _head(view: DispatchView, columns: int, title: str, facts: str, mark: str = "") -> str:
+    """The first row of a table's head, repeated on each page; `facts` is plain text, the rest markup."""
     breaks = f"<br>breaks {escape(view.breaks)}" if view.breaks else ""
     stamp = f"<br>printed {escape(view.stamp)}" if view.stamp else ""
     return (
         f'<tr class="head"><td colspan="{columns}"><div class="flank">'
-        f"<div>{title}<p>{escape(facts)}</p></div>"
+        f"<div>{title}<p>{escape(facts)}</p></div>{mark}"
         f"<p>plan {view.plan}<br>{escape(view.shift)}{breaks}{stamp}</p></div></td></tr>"
     )
 
@@ -174,10 +186,10 @@ def _move(move: Move) -> str:
 # ---- travellers ----------------------------------------------------------------------------------
 
 
-def _strip_sheet(view: DispatchView) -> list[str]:
+def _strip_sheet(view: DispatchView, codes: str | None) -> list[str]:
     if not view.strips:
         return []
-    strips = (_strip(view, number, strip) for number, strip in enumerate(view.strips, 1))
+    strips = (_strip(view, number, strip, codes) for number, strip in enumerate(view.strips, 1))
     return ['<section class="sheet strips">', *strips, "</section>"]
 
 
@@ -185,7 +197,7 @@ def _strip_name(strip: Strip) -> str:
     return f"{strip.order} ({strip.strip} of {strip.strips})" if strip.strips > 1 else strip.order
 
 
-def _strip(view: DispatchView, number: int, strip: Strip) -> str:
+def _strip(view: DispatchView, number: int, strip: Strip, codes: str | None) -> str:
     facts = [f"not before {strip.release}"] if strip.release else []
     facts.append(f"done {strip.finish}")
     facts += [f"due {strip.due}"] if strip.due else []
@@ -193,7 +205,7 @@ def _strip(view: DispatchView, number: int, strip: Strip) -> str:
     return (
         f'<article class="strip" id="o{number}"><div class="flank">'
         f"<h3{_long(_strip_name(strip))}>{isolate(_strip_name(strip))}</h3>"
-        f"{care_notice()}<p>{escape(', '.join(facts))}{late}<br>"
+        f"{_code(strip.order, codes)}{care_notice()}<p>{escape(', '.join(facts))}{late}<br>"
         f"<small>plan {view.plan}, {escape(view.shift)}</small></p></div>"
         f"<ol>{''.join(map(_stop, strip.stops))}</ol></article>"
     )

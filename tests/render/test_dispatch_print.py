@@ -9,6 +9,7 @@ from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
+import numpy as np
 import pytest
 
 from shopfloor.model.calendar import HOUR
@@ -214,6 +215,29 @@ def test_titles_repeat_under_the_longest_names_too(paper, size):
     sheets = paper.sheets(dispatch_page(plan), size, "#only-machines")
     assert len(sheets) > len(machines)
     assert all("Began" in text for text in sheets)
+
+
+@needs_browser
+@pytest.mark.parametrize("kind", ["qr", "code128"])
+def test_printed_codes_can_be_scanned(paper, kind):
+    decoder = pytest.importorskip("zxingcpp", reason="zxing-cpp is not installed (pip install -e .[dev])")
+    view = dispatch_view(hall_plan(60))
+    sheets = paper.sheets(dispatch_page(hall_plan(60), codes=kind), "Letter")
+    command = ["pdftoppm", "-gray", "-r", "300", paper.folder / "dispatch.pdf", paper.folder / "sheet"]
+    subprocess.run(command, check=True)
+    pictures = [_picture(file) for file in sorted(paper.folder.glob("sheet-*.pgm"))]
+    read = [found.text for picture in pictures for found in decoder.read_barcodes(picture)]
+    assert len(pictures) == len(sheets)
+    assert sorted(read) == sorted(
+        [*(sheet.machine for sheet in view.machines), *(strip.order for strip in view.strips)]
+    )
+
+
+def _picture(file: Path) -> np.ndarray:
+    """A grey picture as pdftoppm writes it: P5, width and height, 255, then the bytes."""
+    _, size, _, data = file.read_bytes().split(b"\n", 3)
+    width, height = map(int, size.split())
+    return np.frombuffer(data, np.uint8).reshape(height, width)
 
 
 @needs_browser
