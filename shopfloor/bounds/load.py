@@ -8,8 +8,12 @@ Running time O(m log m) for m operations.
 
 from __future__ import annotations
 
+from collections.abc import Mapping
+from typing import Any
+
 import numpy as np
 
+from shopfloor.bounds.families import least_changeover
 from shopfloor.model.calendar import duration
 from shopfloor.model.results import Bound
 from shopfloor.model.shop import Ints, Machine, Shop
@@ -54,36 +58,67 @@ def machine_bounds(shop: Shop) -> list[Bound]:
 
 
 def _machine_bound(shop: Shop, machine: int, operations: Ints) -> Bound:
-    count = shop.machines[machine].count
+    hall, clock = shop.machines[machine], shop.machine_clocks[machine]
     heads = shop.head_s[operations]
     latest_first = np.argsort(-heads, kind="stable")
-    heads = heads[latest_first]
-    loads = np.cumsum(shop.operations.seconds[operations][latest_first])
-    tails = np.minimum.accumulate(shop.tail_s[operations][latest_first])
-    clock = shop.work_clock
-    values = clock.end(clock.worked(heads) - (-loads // count) + tails)
+    operations, heads = operations[latest_first], heads[latest_first]
+    loads = np.cumsum(shop.operations.seconds[operations])
+    tails = np.minimum.accumulate(shop.tail_s[operations])
+    changes = _forced_changeovers(shop, machine, operations, heads)
+    # The tail runs on other machines, whose closures are not this one's: only the hall's breaks hold it up.
+    done = clock.end(clock.worked(heads) - (-(loads + changes) // hall.count))
+    values = np.where(tails > 0, shop.work_clock.end(shop.work_clock.worked(done) + tails), done)
     # A threshold is only honest once every operation with that same head is inside it.
     whole = np.r_[heads[1:] != heads[:-1], True]
     best = int(np.where(whole, values, -1).argmax())
-    head, load, tail = int(heads[best]), int(loads[best]), int(tails[best])
+    witness = {
+        "machine": hall.id,
+        "from_s": int(heads[best]),
+        "tail_s": int(tails[best]),
+        "load_s": int(loads[best]),
+    }
+    if changes[best]:
+        witness["changeover_s"] = int(changes[best])
     return Bound(
-        kind="machine",
-        value_s=int(values[best]),
-        witness={"machine": shop.machines[machine].id, "from_s": head, "tail_s": tail, "load_s": load},
-        sentence=_machine_sentence(shop, machine, head, load, tail, int(values[best])),
+        "machine", int(values[best]), witness, _machine_sentence(shop, machine, witness, int(values[best]))
     )
 
 
-def _machine_sentence(shop: Shop, machine: int, head: int, load: int, tail: int, value: int) -> str:
+def _forced_changeovers(shop: Shop, machine: int, operations: Ints, heads: Ints) -> Ints:
+    """Return the least changeover time of each prefix of `operations`, which come latest head first."""
+    changes = np.zeros(len(operations), np.int64)
+    rule = shop.changeovers.get(shop.machines[machine].id)
+    if rule is None or rule.none:
+        return changes
+    families = shop.operations.family[operations]
+    seen: set[int] = set()
+    least = 0
+    for place, family in enumerate(families.tolist()):
+        everything = place == len(operations) - 1
+        if family not in seen or everything:
+            seen.add(family)
+            # Only the whole load begins where the machine begins; later parts may find it in any family.
+            least = max(
+                least, least_changeover(shop, machine, operations[: place + 1], from_start=everything)
+            )
+        changes[place] = least
+    return changes
+
+
+def _machine_sentence(shop: Shop, machine: int, witness: Mapping[str, Any], value: int) -> str:
     name, count = shop.machines[machine].id, shop.machines[machine].count
+    head, load, tail = witness["from_s"], witness["load_s"], witness["tail_s"]
     start = f"that cannot start before {shop.clock.say(head)}" if head else "for this shift"
     has = (
         f"{name} has {duration(load)} of work {start}"
         if count == 1
         else f"The {count} units of {name} share {duration(load)} of work {start}"
     )
+    change = witness.get("changeover_s", 0)
+    changes = f", and its families force at least {duration(change)} of changeovers" if change else ""
+    shut = ", around its closures" if shop.machines[machine].closed else ""
     after = f", and each of these orders needs at least {duration(tail)} more afterwards" if tail else ""
-    return f"{has}{after}, so nothing can end before {shop.clock.say(value)}."
+    return f"{has}{changes}{shut}{after}, so nothing can end before {shop.clock.say(value)}."
 
 
 def round_bounds(shop: Shop) -> list[Bound]:

@@ -184,6 +184,17 @@ def minutes_text(seconds: int) -> str:
     return str(whole) if not rest else f"{seconds / MINUTE:.2f}".rstrip("0")
 
 
+def united(spans: Iterable[tuple[int, int]]) -> list[tuple[int, int]]:
+    """Return the union of spans (start, end), in order of time and apart from each other."""
+    out: list[tuple[int, int]] = []
+    for start, end in sorted(spans):
+        if out and start <= out[-1][1]:
+            out[-1] = (out[-1][0], max(out[-1][1], end))
+        else:
+            out.append((start, end))
+    return out
+
+
 class WorkClock:
     """Working time around closures: the clock with its closures squeezed out, and back again.
 

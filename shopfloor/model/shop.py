@@ -16,7 +16,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from shopfloor.errors import ShopError
-from shopfloor.model.calendar import Clock, WorkClock
+from shopfloor.model.calendar import Clock, WorkClock, united
 from shopfloor.model.calendar import Ints as Ints  # every column of the model is one of these
 from shopfloor.model.hall import Changeovers as Changeovers  # a shop is made of these: import them from here
 from shopfloor.model.hall import Closure as Closure
@@ -378,6 +378,16 @@ class Shop:
     def work_clock(self) -> WorkClock:
         """The hall's clock with its breaks squeezed out."""
         return WorkClock((pause.start_s, pause.end_s) for pause in self.breaks)
+
+    @cached_property
+    def machine_clocks(self) -> tuple[WorkClock, ...]:
+        """The clock of each machine with the hall's breaks and its own closures squeezed out."""
+        return tuple(
+            WorkClock(united((c.start_s, c.end_s) for c in (*self.breaks, *machine.closed)))
+            if machine.closed
+            else self.work_clock
+            for machine in self.machines
+        )
 
     @cached_property
     def has_steps(self) -> bool:

@@ -46,7 +46,7 @@ def shift_line(shop: Shop) -> str:
     shift = f"Shift from {shop.clock.start:%Y-%m-%d %H:%M}"
     if shop.shift_end_s is not None:
         shift += f" to {shop.clock.say(shop.shift_end_s)} ({duration(shop.shift_end_s)})"
-    return f"{shift}: {counts}"
+    return wrap(f"{shift}: {counts}")
 
 
 def load_lines(shop: Shop, bounds: Sequence[Bound]) -> list[str]:
