@@ -74,7 +74,7 @@ Kernel = Literal["auto", "plain", "fast"]
 FAST_FROM = 300_000
 #: Colours compared when an alternating path is needed, to swap the shortest of as many paths.
 CANDIDATES = 8
-#: Path steps an edge before an order of rows is given up; random orders have been seen to need 7.
+#: Path steps an edge before an order of rows is given up; random orders have been seen to need 11.
 BUDGET = 50
 #: Orders of rows tried before the colouring is left to halving.
 SHUFFLES = 3
