@@ -274,6 +274,8 @@ def _text(sheet: Any, value: str | None) -> Any:
     if value is None:
         return None
     value = ILLEGAL_CHARACTERS_RE.sub("\N{REPLACEMENT CHARACTER}", value)
+    if value.startswith("'"):
+        value = harmless(value)  # a reader takes one apostrophe off, as in plan.csv
     hides, wraps = harmless(value) != value, _lines(value) > 1
     if not hides and not wraps:
         return value
