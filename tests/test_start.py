@@ -54,6 +54,8 @@ def test_an_input_error_loads_nothing_heavy(command: str) -> None:
 
 def test_a_unit_round_plan_loads_no_solver_and_no_frames(tmp_path: Path) -> None:
     code, modules = loaded("plan", str(DATA / "rounds" / "orders.csv"), "--out", str(tmp_path))
+    assert (code, heavy(modules)) == (0, {"openpyxl"})  # for plan.xlsx, and nothing else
+    code, modules = loaded("plan", str(DATA / "rounds" / "orders.csv"), "--out", str(tmp_path), "--no-xlsx")
     assert (code, heavy(modules)) == (0, set())
 
 

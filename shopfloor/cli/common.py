@@ -71,6 +71,12 @@ def fault_data(fault: Fault) -> dict[str, Any]:
     return {name: getattr(fault, name) for name in names}
 
 
+def one_of(option: str, given: str | None, allowed: tuple[str, ...]) -> None:
+    """Refuse an option whose value is none of those allowed."""
+    if given is not None and given not in allowed:
+        raise typer.BadParameter(f"{given!r} is not one of {', '.join(allowed)}", param_hint=option)
+
+
 def print_json(data: Any) -> None:
     """Print one JSON document on standard output."""
     print(json.dumps(data, indent=2, ensure_ascii=False))

@@ -45,8 +45,7 @@ def fit(
     """
     from shopfloor.errors import InputError
 
-    if by not in ("orders", "operations"):
-        raise typer.BadParameter("is neither 'orders' nor 'operations'", param_hint="--by")
+    common.one_of("--by", by, ("orders", "operations"))
     try:
         reading = common.read(orders, shop, start, end, round_minutes, crew=crew, split=split)
         from shopfloor.cli.progress import Reporter, stopping

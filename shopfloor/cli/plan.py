@@ -4,12 +4,17 @@ from __future__ import annotations
 
 import time
 from pathlib import Path
-from typing import Annotated, Any
+from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
 from shopfloor.cli import common
 from shopfloor.settings import SETTINGS
+
+if TYPE_CHECKING:
+    from shopfloor.model.results import Plan
+
+WORKBOOK_UP_TO = 50_000  # rows; beyond, a workbook takes longer to write than to plan: plan.csv serves
 
 TIME_LIMIT: Any = SETTINGS["time-limit"].default
 WORKERS: Any = SETTINGS["workers"].default
@@ -32,6 +37,13 @@ def plan(
     workers: Annotated[int, common.setting("workers", metavar="N")] = WORKERS,
     seed: Annotated[int, common.setting("seed", metavar="N")] = SEED,
     stamp: Annotated[str | None, common.setting("stamp", metavar="TEXT")] = None,
+    codes: Annotated[
+        str | None, typer.Option("--codes", metavar="KIND", help="Print qr or code128 codes on the sheets.")
+    ] = None,
+    xlsx: Annotated[bool, typer.Option("--xlsx/--no-xlsx", help="Write plan.xlsx too.")] = True,
+    ics: Annotated[
+        str | None, typer.Option("--ics", metavar="BY", help="Write a calendar by plan, or one by machine.")
+    ] = None,
     as_json: common.JsonOption = False,
     quiet: common.QuietOption = False,
 ) -> None:
@@ -41,6 +53,8 @@ def plan(
     """
     from shopfloor.errors import InputError
 
+    common.one_of("--codes", codes, ("qr", "code128"))
+    common.one_of("--ics", ics, ("plan", "machine"))
     try:
         reading = common.read(orders, shop, start, end, round_minutes, crew=crew, split=split)
     except InputError as error:
@@ -61,7 +75,7 @@ def plan(
         )
     report.close()
     solve_s = time.perf_counter() - began
-    written = _write(made, out, stamp) if out is not None else []
+    written = _write(made, out, stamp, codes, xlsx, ics) if out is not None else []
     if as_json:
         from shopfloor.render.tables import summary
 
@@ -77,19 +91,29 @@ def plan(
     raise typer.Exit(common.NO if made.fits_shift is False else common.DONE)
 
 
-def _write(made: Any, out: Path, stamp: str | None) -> list[Path]:
+def _write(
+    made: Plan, out: Path, stamp: str | None, codes: str | None, xlsx: bool, ics: str | None
+) -> list[Path]:
     """Make every file in memory, then write them all or none."""
     from shopfloor.render.dispatch import dispatch_page
     from shopfloor.render.gantt import gantt_page
     from shopfloor.render.save import save
     from shopfloor.render.tables import plan_csv, plan_json
 
-    return save(
-        out,
-        {
-            "plan.json": plan_json(made),
-            "plan.csv": plan_csv(made),
-            "gantt.html": gantt_page(made, stamp=stamp),
-            "dispatch.html": dispatch_page(made, stamp=stamp),
-        },
-    )
+    files: dict[str, bytes | str] = {
+        "plan.json": plan_json(made),
+        "plan.csv": plan_csv(made),
+        "gantt.html": gantt_page(made, stamp=stamp),
+        "dispatch.html": dispatch_page(made, stamp=stamp, codes=codes),
+    }
+    if xlsx and len(made.schedule) <= WORKBOOK_UP_TO:
+        from shopfloor.render.workbook import plan_xlsx
+
+        files["plan.xlsx"] = plan_xlsx(made, stamp=stamp)
+    if ics is not None:
+        from shopfloor.render import ics as calendars
+
+        files |= (
+            {"plan.ics": calendars.plan_ics(made)} if ics == "plan" else calendars.machine_calendars(made)
+        )
+    return save(out, files)
