@@ -113,28 +113,19 @@ def load(
     round_s = _round_seconds(round_minutes, findings)
     clock = settled[0] if settled is not None and draft.shift_known else None
     wanted = Wanted(tuple(COLUMNS), tuple(n for n, c in COLUMNS.items() if c.needed), draft.floor.columns)
-    before = findings.count
     try:
-        table = open_table(source, wanted, findings, name=name)
+        sheet = _sheet(source, wanted, findings, name)
     except InputError as error:
         findings.merge(error)
         raise InputError(findings.faults, findings.notices) from None
-    unread = findings.count - before  # rows whose quotes are wrong
-    positions = match_columns(table, wanted, findings)
-    before = findings.count
-    cells = gather(table, positions, findings)
-    unread += findings.count - before
-    if not len(cells) and not unread:
-        findings.fault(table.place, "no-rows")
-    sheet = Sheet(table, cells, positions, findings)
-    _read_columns(sheet, table.separator, clock)
+    _read_columns(sheet, clock)
     parts = _assemble(sheet, draft, round_s)
     findings.stop_if_any()
     assert settled is not None  # a shift that cannot be settled is a fault
     return Reading(
         shop=Shop(clock=settled[0], shift_end_s=settled[1], **parts),
         notices=findings.notices,
-        inputs=((table.place.file, table.sha256), *draft.floor.inputs),
+        inputs=((sheet.table.place.file, sheet.table.sha256), *draft.floor.inputs),
     )
 
 
@@ -163,11 +154,25 @@ def _round_seconds(minutes: float | None, findings: Findings) -> int:
     return int(seconds)
 
 
-def _read_columns(sheet: Sheet, separator: str, clock: Clock | None) -> None:
+def _sheet(source: Readable | pd.DataFrame, wanted: Wanted, findings: Findings, name: str | None) -> Sheet:
+    """Open the orders file and gather the rows of every column we know."""
+    before = findings.count
+    table = open_table(source, wanted, findings, name=name)
+    unread = findings.count - before  # rows whose quotes are wrong
+    positions = match_columns(table, wanted, findings)
+    before = findings.count
+    cells = gather(table, positions, findings)
+    unread += findings.count - before
+    if not len(cells) and not unread:
+        findings.fault(table.place, "no-rows")
+    return Sheet(table, cells, positions, findings)
+
+
+def _read_columns(sheet: Sheet, clock: Clock | None) -> None:
     """Read every column there is; those on the clock only when the clock is known."""
     columns = [COLUMNS[name] for name in sheet.positions]
     numbers = (text for c in columns if c.kind == "number" for text in sheet.cells.columns[c.name].texts)
-    how = How(find_marks(separator, numbers), clock or Clock())
+    how = How(find_marks(sheet.table.separator, numbers), clock or Clock())
     for column in columns:
         if clock is not None or column.kind != "moment":
             sheet.read(column.name, how)

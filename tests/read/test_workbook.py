@@ -245,3 +245,10 @@ def test_other_zip_files_are_called_by_their_name(name: str, content: bytes, kin
 def test_the_name_of_a_sheet_cannot_play_with_the_terminal() -> None:
     data = bytes_of(workbook(("order", "machine"), ("", "M"), sheet="a\u202eb"))
     assert texts_of(data) == ["orders.csv [a?b] row 2, column order: '' is empty; write the order's number"]
+
+
+def test_a_sheet_that_breaks_off_far_down_does_not_hide_the_faults_of_the_floor() -> None:
+    data = bytes_of(workbook(("order", "machine"), *(("A", "M") for _ in range(2000))))
+    sheet = zipfile.ZipFile(io.BytesIO(data)).read("xl/worksheets/sheet1.xml")
+    cut = changed(data, sheet1=sheet[: len(sheet) - 200])
+    assert rules_of(cut, shop="[shitf]\n") == ["unknown-key", "workbook-damaged"]
