@@ -26,6 +26,7 @@ class Options:
     time_limit_s: float = 30.0
     workers: int = 0
     seed: int = 0
+    even: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -113,6 +114,7 @@ def plan(
         time_limit_s=options.time_limit_s,
         workers=options.workers,
         seed=options.seed,
+        even=options.even,
         report=report or (lambda progress: None),
         stop=stop or threading.Event(),
     )

@@ -26,6 +26,7 @@ SETTINGS: dict[str, Setting] = {
         Setting("start", None, "YYYY-MM-DDTHH:MM", "Start of the shift; without it time counts from 0:00."),
         Setting("end", None, "YYYY-MM-DDTHH:MM or HH:MM", "End of the shift."),
         Setting("crew", None, "heads", "One crew of so many heads attends every machine."),
+        Setting("even", False, "", "Rounds hold as equally many operations as they can: a steady crew."),
         Setting("split", False, "", "Every operation may be cut into parts."),
         Setting("time-limit", 30.0, "seconds", "Longest search for a better plan."),
         Setting("workers", 0, "threads", "Solver threads; 0 takes one for each core."),

@@ -33,6 +33,7 @@ def plan(
     round_minutes: common.RoundOption = None,
     crew: common.CrewOption = None,
     split: common.SplitOption = False,
+    even: common.EvenOption = False,
     time_limit: Annotated[float, common.setting("time-limit", metavar="SECONDS")] = TIME_LIMIT,
     workers: Annotated[int, common.setting("workers", metavar="N")] = WORKERS,
     seed: Annotated[int, common.setting("seed", metavar="N")] = SEED,
@@ -68,7 +69,7 @@ def plan(
     with stopping() as stop:
         made = pipeline.plan(
             reading.shop,
-            pipeline.Options(time_limit_s=time_limit, workers=workers, seed=seed),
+            pipeline.Options(time_limit_s=time_limit, workers=workers, seed=seed, even=even),
             inputs=reading.inputs,
             report=report,
             stop=stop,

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from shopfloor.model.results import Choice
 from shopfloor.model.shop import Shop
+from shopfloor.openshop.crew_rounds import CrewRounds
 from shopfloor.openshop.general import General
 from shopfloor.openshop.method import Method
 from shopfloor.openshop.over_breaks import OverBreaks, all_pause
@@ -11,7 +12,7 @@ from shopfloor.openshop.two_machine import TwoMachine
 from shopfloor.openshop.unit_rounds import UnitRounds
 
 # Exact methods first, in the order of the README's table; the last accepts everything.
-METHODS: tuple[Method, ...] = (UnitRounds(), TwoMachine(), General())
+METHODS: tuple[Method, ...] = (UnitRounds(), CrewRounds(), TwoMachine(), General())
 
 
 def choose(shop: Shop) -> tuple[Method, Choice]:

@@ -36,6 +36,8 @@ class Effort:
         Solver threads; 0 takes one for each core.
     report
         Called now and then, from any thread.
+    even
+        Whether rounds shall hold as equally many operations as possible, where a method has rounds.
     stop
         Set by Ctrl-C; a method then hands back the best it has.
     """
@@ -44,6 +46,7 @@ class Effort:
     time_limit_s: float = 30.0
     workers: int = 0
     seed: int = 0
+    even: bool = False
     report: Callable[[Progress], None] = lambda progress: None
     stop: threading.Event = field(default_factory=threading.Event)
     began: float = field(default_factory=time.monotonic)

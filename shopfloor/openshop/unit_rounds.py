@@ -16,6 +16,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from shopfloor.kernel.colouring import colour_edges
+from shopfloor.kernel.equitable import even_colours
 from shopfloor.model.calendar import duration
 from shopfloor.model.results import Outcome
 from shopfloor.model.schedule import Schedule
@@ -49,7 +50,12 @@ class UnitRounds:
         if not len(shop):
             return Outcome(Schedule(*(np.zeros(0, np.int64),) * 3))
         node, unit = deal_out(shop)
-        colour = colour_edges(shop.operations.job, node, seed=effort.seed)
+        job = shop.operations.job
+        if effort.even:
+            rounds = max(int(np.bincount(job).max()), int(np.bincount(node).max()))
+            colour = even_colours(job, node, rounds, seed=effort.seed)
+        else:
+            colour = colour_edges(job, node, seed=effort.seed)
         return rounds_to_outcome(shop, unit, colour)
 
 
