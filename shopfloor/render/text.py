@@ -143,7 +143,7 @@ def plan_lines(plan: Plan) -> list[str]:
             else f"It overruns the shift, which ends {say(end)}, by {duration(plan.makespan_s - end)}."
         )
     lines += late_lines(plan)
-    if plan.would_help and (plan.fits_shift is False or plan.shop.has_due):
+    if plan.fits_shift is False or plan.late_orders():
         lines += help_lines(plan.would_help)
     return lines
 
