@@ -26,7 +26,7 @@ if TYPE_CHECKING:
 # One script in this order; each file holds one noun.
 SCRIPTS = tuple(
     f"gantt-{noun}.js"
-    for noun in ("data", "clock", "rows", "draw", "chart", "panels", "input", "print", "start")
+    for noun in ("data", "clock", "rows", "draw", "scene", "chart", "panels", "input", "print", "start")
 )
 # Fields of the view that stand on the page as text; all others travel as data, under their own names.
 AS_TEXT = frozenset({"title", "subtitle", "stamp", "finish", "verdict", "summary", "about", "care"})
@@ -126,7 +126,7 @@ def page_data(view: GanttView) -> dict[str, Any]:
             for line in view.lines
         ],
         "shift_end_s": view.shift_end_s,
-        "round_s": view.round_s,
+        "rounds_s": view.rounds_s,
         "closures": [
             {"row": shut.row, "start_s": shut.start_s, "end_s": shut.end_s, "reason": shut.reason}
             for shut in view.closures

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import html
 from datetime import datetime
 from typing import Any
 
@@ -10,9 +11,10 @@ import plotly.graph_objects as go
 
 from shopfloor.model.calendar import HOUR, elapsed
 from shopfloor.render.gantt_view import GanttView
-from shopfloor.render.html import clean, escape
+from shopfloor.render.html import clean
 
 _PATTERNS = {"plain": "", "dots": ".", "stripes": "/", "back-stripes": "\\", "grid": "+"}
+_PATTERN = {"fgopacity": 0.35, "size": 6, "solidity": 0.2}
 _DASHES = {"proved": "solid", "finish": "solid", "bound": "dash", "shift": "dot"}
 _TICK_S = (300, 900, 1800, HOUR, 2 * HOUR, 6 * HOUR, 24 * HOUR, 168 * HOUR)
 _TICKS = 16  # at most, on an axis of elapsed time
@@ -42,12 +44,14 @@ def figure_of(view: GanttView) -> go.Figure:
             marker={
                 "color": group.fill,
                 "line": {"color": "#10202f", "width": 1},
-                "pattern": {"shape": _PATTERNS[group.pattern], "fgcolor": group.ink, "fgopacity": 0.4},
+                "pattern": {"shape": _PATTERNS[group.pattern], "fillmode": "overlay"}
+                | _PATTERN
+                | {"fgcolor": group.ink},
             },
             customdata=np.column_stack([axis.said(bars.start_s[mine]), axis.said(bars.end_s[mine])]),
             hovertemplate="<b>%{text}</b><br>%{y}<br>%{customdata[0]} – %{customdata[1]}<extra></extra>",
         )
-    for line in view.lines:
+    for level, line in enumerate(view.lines):
         at = axis.place(line.at_s)
         figure.add_shape(
             type="line",
@@ -60,12 +64,13 @@ def figure_of(view: GanttView) -> go.Figure:
         )
         figure.add_annotation(
             x=at,
-            y=1,
+            y=0,
             yref="paper",
+            yshift=-4 - 16 * level,  # each on a level of its own, so that labels never meet
             text=_text(line.short),
             showarrow=False,
             xanchor="right",
-            yanchor="bottom",
+            yanchor="top",
         )
     return figure
 
@@ -120,10 +125,10 @@ def _layout(view: GanttView, axis: _Axis) -> dict[str, Any]:
             "type": "category",
         },
         "height": max(320, 140 + 34 * len(view.rows)),
-        "margin": {"t": 110, "r": 20, "b": 20},
+        "margin": {"t": 100, "r": 20, "b": 20 + 16 * len(view.lines)},
     }
 
 
 def _text(name: str) -> str:
     """Escape a name for plotly, which reads a little markup in every text it shows."""
-    return escape(" ".join(clean(name).split()))
+    return html.escape(" ".join(clean(name).split()), quote=False)  # plotly keeps &quot; as it stands

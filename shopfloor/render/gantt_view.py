@@ -23,7 +23,7 @@ if TYPE_CHECKING:
 WHOLE_S = 12 * HOUR  # a plan no longer than this is shown whole when the page opens
 SHIFT_S = 8 * HOUR  # else this much is, or the shift where its end is known
 NAMES_SHOWN = 5  # on one line of the summary
-HELP = "what would help"  # a remark that begins so is the summary's last line
+HELPS_SHOWN = 2
 
 
 @dataclass(frozen=True, slots=True)
@@ -36,7 +36,7 @@ class SummaryLine:
 
 @dataclass(frozen=True, slots=True)
 class ColourGroup:
-    """How the bars of one group look, and what the legend calls them.
+    """How the bars of one group look: `fill` colour, and the `name` that the legend gives it.
 
     Groups must stay apart in print without colour: fills differ in brightness and each has its own
     `pattern` (``plain``, ``dots``, ``stripes``, ``back-stripes``, ``grid``); `ink` is for text on the fill.
@@ -198,8 +198,8 @@ class GanttView:
         Finish, bound and the shift's end.
     shift_end_s
         From here on the chart is shaded; None when it is not known.
-    round_s
-        Length of a round for faint boundaries; 0 outside unit rounds.
+    rounds_s
+        When each round starts, for faint boundaries; empty outside unit rounds.
     closures, changeovers
         Drawn where there are any.
     now_s
@@ -226,7 +226,7 @@ class GanttView:
     groups: tuple[ColourGroup, ...]
     lines: tuple[MarkedTime, ...]
     shift_end_s: int | None
-    round_s: int
+    rounds_s: tuple[int, ...]
     closures: tuple[ShutTime, ...]
     changeovers: tuple[Changeover, ...]
     now_s: int | None
@@ -262,7 +262,7 @@ def gantt_view(plan: Plan, *, stamp: str | None = None) -> GanttView:
         groups=BY_LATENESS,
         lines=_lines(plan),
         shift_end_s=shop.shift_end_s,
-        round_s=_round_length(plan),
+        rounds_s=_round_starts(plan),
         closures=tuple(
             ShutTime(None, closed.start_s, closed.end_s, closed.reason or "break") for closed in shop.breaks
         ),
@@ -320,15 +320,14 @@ def _bars(plan: Plan, first_row: Ints) -> BarColumns:
     )
 
 
-def _round_length(plan: Plan) -> int:
-    """Return the length of a round, or 0 where assignments carry no rounds of one length."""
+def _round_starts(plan: Plan) -> tuple[int, ...]:
+    """Return when each round starts; empty where assignments carry no rounds that start together."""
     schedule = plan.schedule
     if not len(schedule) or bool((schedule.round == NO_ROUND).any()):
-        return 0
-    lengths = schedule.end_s - schedule.start_s
-    length = int(lengths[0])
-    whole = bool((lengths == length).all() and (schedule.start_s == (schedule.round - 1) * length).all())
-    return length if whole else 0
+        return ()
+    pairs = np.unique(np.stack([schedule.round, schedule.start_s]), axis=1)
+    together = len(np.unique(pairs[0])) == pairs.shape[1]
+    return tuple(pairs[1].tolist()) if together else ()
 
 
 def _window(plan: Plan, horizon: int) -> tuple[int, int]:
@@ -437,15 +436,9 @@ def _summary(plan: Plan) -> tuple[SummaryLine, ...]:
         lines.append(SummaryLine("Late", _late(plan)))
     if plan.shop.shift_end_s is not None:
         lines.append(SummaryLine("Shift", _fit(plan, plan.shop.shift_end_s)))
-    helps = [remark for remark in plan.remarks if _is_help(remark)]
-    if helps:
-        said = " ".join(remark[len(HELP) :].lstrip(": ") for remark in helps)
-        lines.append(SummaryLine("Would help", said))
+    if plan.would_help:
+        lines.append(SummaryLine("Would help", " ".join(plan.would_help[:HELPS_SHOWN])))
     return tuple(lines)
-
-
-def _is_help(remark: str) -> bool:
-    return remark.lower().startswith(HELP)
 
 
 def _binds(plan: Plan) -> str:
@@ -492,7 +485,7 @@ def _about(plan: Plan) -> tuple[tuple[str, str], ...]:
     """Return how the plan was made, as terms and texts."""
     about = [("Method", f"{plan.choice.name}: {plan.choice.why}")]
     about += [(f"Not {name}", reason) for name, reason in plan.choice.others.items()]
-    about += [("Remark", remark) for remark in plan.remarks if not _is_help(remark)]
+    about += [("Remark", remark) for remark in plan.remarks]
     about += [("Also proved", bound.sentence) for bound in plan.bounds[1:4]]
     if plan.stopped != "done":
         about.append(("Search", f"ended by {plan.stopped}; this is the best plan it had"))

@@ -29,7 +29,7 @@ def why_not() -> str:
 
 
 def needs_browser(test: Any) -> Any:
-    """Mark a test, or a whole class of them, as one that needs Chromium; skipped, with the reason, without."""
+    """Mark a test, or a class of them, as one that needs Chromium; without, it is skipped and says why."""
     return pytest.mark.browser(pytest.mark.skipif(bool(why_not()), reason=why_not())(test))
 
 
@@ -80,7 +80,7 @@ def opened(
         page.on("pageerror", lambda fault: seen.faults.append(str(fault)))
         page.on("dialog", lambda dialog: (seen.dialogs.append(dialog.message), dialog.dismiss()))
         page.goto(own)
-        page.wait_for_function("document.documentElement.dataset.ready === 'yes'", timeout=30_000)
+        page.wait_for_selector("html[data-ready]", state="attached", timeout=30_000)
         yield page, seen
     finally:
         context.close()

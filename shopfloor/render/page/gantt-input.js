@@ -78,7 +78,8 @@ chart.addEventListener("wheel", (event) => {
   const sideways = event.shiftKey ? down || across : Math.abs(across) > Math.abs(down) ? across : 0;
   const pixels = box.right - box.left;
   wheel.pan += sideways / pixels;
-  if (!sideways && (event.ctrlKey || scroller.hidden)) wheel.zoom *= Math.exp(Math.max(-1, Math.min(1, down / 400)));
+  const zooms = event.ctrlKey || scroller.hidden;
+  if (!sideways && zooms) wheel.zoom *= Math.exp(Math.max(-1, Math.min(1, down / 400)));
   else if (!sideways) wheel.rows += down / 40;
   const at = timeAt(Math.max(box.left, Math.min(place(event)[0], box.right)));
   once("wheel", () => {
@@ -111,8 +112,8 @@ function focusOn(bar) {
   bringIntoSight(bar);
   repaintMarks();
   sayBar(bar);
-  const rect = chart.getBoundingClientRect(), s = { ...box, from: state.from, to: state.to, firstRow: state.firstRow };
-  const b = barBox(s, bar, state.rows.rowOf(bar));
+  const rect = chart.getBoundingClientRect(), { from, to, firstRow } = state;
+  const b = barBox({ ...box, from, to, firstRow }, bar, state.rows.rowOf(bar));
   showTip(bar, rect.left + b.x, rect.top + b.y + b.height - 10);
 }
 

@@ -20,13 +20,23 @@ function standing(order) {
 
 // ---- details of one bar -------------------------------------------------------------------------
 
+// How long a bar is worked on: closures that it spans are no work.
+function workText(bar) {
+  const start = bars.start[bar], end = bars.end[bar];
+  let shut = 0;
+  for (const closed of given.closures) {
+    const here = closed.row === null || closed.row === bars.row[bar];
+    if (here) shut += Math.max(0, Math.min(end, closed.end_s) - Math.max(start, closed.start_s));
+  }
+  return shut ? `${duration(end - start - shut)} of work, ${duration(shut)} closed` : duration(end - start);
+}
+
 function detailLines(bar) {
   const order = bars.order[bar], machine = machines[bars.row[bar]];
   const name = machine.name && machine.name !== machine.machine ? ` (${oneLine(machine.name)})` : "";
-  const length = bars.end[bar] - bars.start[bar];
   const found = [
     `${oneLine(machine.label)}${name}`,
-    `${span(bars.start[bar], bars.end[bar])}, ${duration(length)}`,
+    `${span(bars.start[bar], bars.end[bar])}, ${workText(bar)}`,
     `order ends ${say(orders.finish[order])}, ${standing(order)}`,
   ];
   if (orders.release[order] > 0) found.push(`not before ${say(orders.release[order])}`);

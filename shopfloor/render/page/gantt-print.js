@@ -34,7 +34,7 @@ function paintSheet(firstRow, height) {
   paintSheetAxis({ ...s, ctx });
   paintLower({ ...s, ctx });
   const { hover, focus } = state;
-  state.hover = state.focus = -1;
+  Object.assign(state, { hover: -1, focus: -1 }); // paper has no pointer
   paintUpper({ ...s, ctx });
   Object.assign(state, { hover, focus });
   canvas.style.width = `${width}px`;
@@ -47,8 +47,9 @@ function sheetGeometry(firstRow, height) {
   const shownRows = Math.max(1, Math.min(size - firstRow, Math.floor(room / PRINT_ROW)));
   const rowHeight = Math.min(HIGHEST_ROW, room / shownRows);
   return {
-    scale: SHEET.scale, width: SHEET.width, height, small: PRINT_TEXT, rows: state.rows, head, shownRows, rowHeight, firstRow,
-    from: state.from, to: state.to, left: box.left, right: SHEET.width - 8,
+    scale: SHEET.scale, width: SHEET.width, height, small: PRINT_TEXT,
+    rows: state.rows, head, shownRows, rowHeight, firstRow, from: state.from, to: state.to,
+    left: box.left, right: SHEET.width - 8,
     top: AXIS, bottom: AXIS + head + shownRows * rowHeight,
   };
 }
@@ -63,7 +64,8 @@ function buildSheets() {
   for (let sheet = 0; sheet < PRINT_SHEETS && (row < size || sheet === 0); sheet++) {
     const [canvas, next] = paintSheet(row, height);
     const part = element("section", undefined, "sheet");
-    const rest = sheet === PRINT_SHEETS - 1 && next < size ? `; ${count(size - next, "more row")} not printed` : "";
+    const cut = sheet === PRINT_SHEETS - 1 && next < size;
+    const rest = cut ? `; ${count(size - next, "more row")} not printed` : "";
     part.append(element("p", windowText() + rest, "sheet-title"), canvas, care.cloneNode(true));
     sheets.append(part);
     row = next;
@@ -74,7 +76,8 @@ function buildSheets() {
 function windowText() {
   const minute = (seconds) => Math.round(seconds / 60) * 60;
   const from = minute(Math.max(0, state.from)), to = minute(Math.min(given.horizon_s, state.to));
-  return from > 0 || to < minute(given.horizon_s) ? `${span(from, to)} of a plan to ${say(given.horizon_s)}` : "";
+  const whole = from === 0 && to === minute(given.horizon_s);
+  return whole ? "" : `${span(from, to)} of a plan to ${say(given.horizon_s)}`;
 }
 
 function dropSheets() {
