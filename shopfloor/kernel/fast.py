@@ -20,15 +20,15 @@ from numba.extending import intrinsic
 
 from shopfloor.kernel.multigraph import SPARSE, SPARSE_FROM, IntArray, compact
 
-__all__ = ["colour_rows"]
+__all__ = ["COLUMN", "INT", "OUT", "colour_rows", "compiled"]
 
 Compiled = Callable[..., Any]
 
-_INT = numba.int64
+INT = numba.int64
 # A column that NumPy holds read-only is a type of its own to numba, and a writable one can stand in for it.
-_COLUMN = numba.types.Array(_INT, 1, "C", readonly=True)
-_OUT = numba.types.Array(_INT, 1, "C")
-_PAIR = numba.types.UniTuple(_INT, 2)
+COLUMN = numba.types.Array(INT, 1, "C", readonly=True)
+OUT = numba.types.Array(INT, 1, "C")
+_PAIR = numba.types.UniTuple(INT, 2)
 _COUNTS = numba.uint32[::1]
 _NARROW = numba.int16[::1]
 _WIDE = numba.int32[::1]
@@ -58,7 +58,7 @@ def _lowest(_context: Any, word: Any) -> Any:
     def generate(_target: Any, builder: Any, _signature: Any, arguments: Any) -> Any:
         return builder.cttz(arguments[0], ir.Constant(ir.IntType(1), 0))
 
-    return _INT(numba.uint64), generate
+    return INT(numba.uint64), generate
 
 
 def colour_rows(
@@ -78,7 +78,7 @@ def colour_rows(
     return (colours if done else None), steps
 
 
-@compiled(_INT(_COUNTS, _INT))
+@compiled(INT(_COUNTS, INT))
 def _fold(degree, cap):
     """Replace each node's degree by its group (next fit) and return the number of groups."""
     group = 0
@@ -93,7 +93,7 @@ def _fold(degree, cap):
     return group + 1
 
 
-@compiled(_COUNTS(_INT, numba.uint64))
+@compiled(_COUNTS(INT, numba.uint64))
 def _shuffled(count, seed):
     """Do as `multigraph.shuffled`."""
     bits = 2
@@ -120,7 +120,7 @@ def _shuffled(count, seed):
     return order
 
 
-@compiled(numba.void(_COLUMN, _COLUMN, _COUNTS, _COUNTS, _WIDE, _WIDE, _INT, _COUNTS, _COUNTS, _COUNTS))
+@compiled(numba.void(COLUMN, COLUMN, _COUNTS, _COUNTS, _WIDE, _WIDE, INT, _COUNTS, _COUNTS, _COUNTS))
 def _sort(left, right, left_group, right_group, one, two, columns, row_start, edge_of, end_of):
     """Sort the edges by left group and then right group: two counting sorts, the second one first.
 
@@ -151,8 +151,8 @@ def _sort(left, right, left_group, right_group, one, two, columns, row_start, ed
 
 
 @compiled(
-    _INT(_NARROW, _NARROW, _COUNTS, _COUNTS, _COUNTS, _INT, _INT, _INT, _INT),
-    _INT(_WIDE, _WIDE, _COUNTS, _COUNTS, _COUNTS, _INT, _INT, _INT, _INT),
+    INT(_NARROW, _NARROW, _COUNTS, _COUNTS, _COUNTS, INT, INT, INT, INT),
+    INT(_WIDE, _WIDE, _COUNTS, _COUNTS, _COUNTS, INT, INT, INT, INT),
 )
 def _colour_rows(at_left, at_right, order, row_start, end_of, delta, columns, budget, candidates):
     """Fill in both tables of groups by group and colour; return the steps, above budget if given up."""
@@ -273,8 +273,8 @@ def _colour_rows(at_left, at_right, order, row_start, end_of, delta, columns, bu
 
 
 @compiled(
-    numba.void(_NARROW, _COUNTS, _COUNTS, _COUNTS, _INT, _INT, _INT, _OUT),
-    numba.void(_WIDE, _COUNTS, _COUNTS, _COUNTS, _INT, _INT, _INT, _OUT),
+    numba.void(_NARROW, _COUNTS, _COUNTS, _COUNTS, INT, INT, INT, OUT),
+    numba.void(_WIDE, _COUNTS, _COUNTS, _COUNTS, INT, INT, INT, OUT),
 )
 def _hand_out(at_left, row_start, edge_of, end_of, delta, rows, columns, colours):
     """Give each row's colours, lowest first, to its edges in order of right group."""
@@ -293,7 +293,7 @@ def _hand_out(at_left, row_start, edge_of, end_of, delta, rows, columns, colours
                 cursor[v] += np.uint32(1)
 
 
-@compiled(_PAIR(_COLUMN, _COLUMN, numba.uint64, _INT, _INT, _INT, _OUT))
+@compiled(_PAIR(COLUMN, COLUMN, numba.uint64, INT, INT, INT, OUT))
 def _colour(left, right, seed, budget, candidates, limit, colours):
     """Fill in the colours; return 1 if done, 0 if out of budget, -1 if numbers are sparse or negative."""
     edges = len(left)
