@@ -18,7 +18,7 @@ from shopfloor.render.gantt import gantt_page, page_of
 from shopfloor.render.gantt_view import ShutTime, gantt_view
 from shopfloor.render.html import CARE_NOTICE
 from tests.render.browser import chromium, needs_browser, opened
-from tests.render.expected import round_plan, small_plan
+from tests.render.expected import small_plan
 from tests.render.plans import HOSTILE, hall_plan
 from tests.render.test_gantt import full_view
 from tests.render.test_gantt_view import empty_plan

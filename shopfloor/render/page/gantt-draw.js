@@ -167,29 +167,45 @@ function paintBars(s, source, style, between = () => {}) {
   paintTexts(s, roomy);
 }
 
+// Names in bars. One size serves the whole chart, the largest at which most of them fit; the others are
+// written small where that fits, and else not at all: a shortened name would be another name.
 function paintTexts(s, roomy) {
   const { ctx } = s;
   ctx.textBaseline = "middle";
   ctx.textAlign = "center";
+  const size = commonSize(s, roomy);
   for (const [bar, box, group] of roomy) {
-    for (const [text, size, weight] of candidates(s, bar)) {
-      ctx.font = `${weight} ${size}px ${FONT}`;
-      const width = textWidth(ctx, text);
-      if (width > box.width - 6 || size > box.height) continue;
-      const x = box.x + box.width / 2, y = box.y + box.height / 2 + 0.5;
-      if (group.pattern !== "plain") { // a quiet ground, so that the pattern does not run through letters
-        ctx.fillStyle = group.fill;
-        ctx.fillRect(x - width / 2 - 3, y - size * 0.68, width + 6, size * 1.3);
-      }
-      ctx.fillStyle = group.ink;
-      ctx.fillText(text, x, y);
-      break;
-    }
+    const way = s.rows
+      .inside(bar)
+      .flatMap((text) => [[text, size, 600], [text, s.small, 400]])
+      .find(([text, pixels, weight]) => nameWidth(ctx, text, weight) * pixels <= box.width - 6);
+    if (way) paintText(s, way, box, group);
   }
 }
 
-// Ways to write a bar's name, the best first: large and heavy, else small; whole, else without the unit.
-function candidates(s, bar) {
-  const large = Math.max(12, Math.min(14, Math.floor(s.rowHeight * 0.4)));
-  return s.rows.inside(bar).flatMap((text) => [[text, large, 600], [text, 12, 400], [text, s.small, 400]]);
+function commonSize(s, roomy) {
+  const most = Math.min(18, Math.floor(s.rowHeight * 0.45));
+  const fits = (size) => ([bar, box]) => nameWidth(s.ctx, s.rows.inside(bar)[0], 600) * size <= box.width - 6;
+  for (let size = most; size > s.small + 1; size--) {
+    if (roomy.filter(fits(size)).length >= 0.7 * roomy.length) return size;
+  }
+  return s.small + 1;
+}
+
+// Width of a name at one pixel of size.
+function nameWidth(ctx, text, weight) {
+  ctx.font = `${weight} 100px ${FONT}`;
+  return textWidth(ctx, text) / 100;
+}
+
+function paintText(s, [text, size, weight], box, group) {
+  const { ctx } = s, x = box.x + box.width / 2, y = box.y + box.height / 2 + 0.5;
+  if (group.pattern !== "plain") { // a quiet ground, so that the pattern does not run through letters
+    const width = nameWidth(ctx, text, weight) * size;
+    ctx.fillStyle = group.fill;
+    ctx.fillRect(x - width / 2 - 3, y - size * 0.68, width + 6, size * 1.3);
+  }
+  ctx.font = `${weight} ${size}px ${FONT}`;
+  ctx.fillStyle = group.ink;
+  ctx.fillText(text, x, y);
 }
