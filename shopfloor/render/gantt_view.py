@@ -56,6 +56,8 @@ BY_LATENESS = (
     ColourGroup("no due time", "#e6e2d8", "#10202f", "dots"),
 )
 ON_TIME, LATE, NO_DUE_TIME = range(3)
+# Where no order has a due time there is nothing to tell apart, and a pattern would only make noise.
+ALL_ALIKE = (ColourGroup("no due time", "#93bfe2", "#10202f", "plain"),)
 
 
 @dataclass(frozen=True, slots=True)
@@ -259,7 +261,7 @@ def gantt_view(plan: Plan, *, stamp: str | None = None) -> GanttView:
             binds=shop.orders.ids.index(binding) if kind == "order" and binding in shop.orders.ids else -1,
         ),
         bars=_bars(plan, first_row),
-        groups=BY_LATENESS,
+        groups=BY_LATENESS if shop.has_due else ALL_ALIKE,
         lines=_lines(plan),
         shift_end_s=shop.shift_end_s,
         rounds_s=_round_starts(plan),
@@ -302,6 +304,8 @@ def _bars(plan: Plan, first_row: Ints) -> BarColumns:
     due = shop.orders.due_s
     finish = schedule.completion_s(shop.operations.job, len(shop.orders))
     group = np.where(due == NO_DUE, NO_DUE_TIME, np.where(finish > due, LATE, ON_TIME))
+    if not shop.has_due:
+        group = np.zeros(len(due), np.int64)
     notes = shop.operations.notes
     return BarColumns(
         start_s=schedule.start_s,
@@ -425,7 +429,7 @@ def _lines(plan: Plan) -> tuple[MarkedTime, ...]:
 
 
 def _summary(plan: Plan) -> tuple[SummaryLine, ...]:
-    """Return the strip: bound, what binds, late orders, the shift, what would help."""
+    """Return the strip: bound, what binds, late orders, the shift, and where it is wanted what would help."""
     if not plan.bounds:
         return ()
     lines = [SummaryLine("Bound", plan.bounds[0].sentence)]
@@ -436,7 +440,7 @@ def _summary(plan: Plan) -> tuple[SummaryLine, ...]:
         lines.append(SummaryLine("Late", _late(plan)))
     if plan.shop.shift_end_s is not None:
         lines.append(SummaryLine("Shift", _fit(plan, plan.shop.shift_end_s)))
-    if plan.would_help:
+    if plan.would_help and (plan.fits_shift is False or plan.late_orders()):
         lines.append(SummaryLine("Would help", " ".join(plan.would_help[:HELPS_SHOWN])))
     return tuple(lines)
 

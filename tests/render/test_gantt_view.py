@@ -76,6 +76,12 @@ def test_colour_tells_lateness(plan):
             assert name == ("late" if view.orders.ids[order] in late else "on time")
 
 
+def test_without_due_times_all_bars_look_alike_and_plain():
+    view = gantt_view(hall_plan(60, due=False))
+    assert [(group.name, group.pattern) for group in view.groups] == [("no due time", "plain")]
+    assert not view.bars.group.any()
+
+
 def luminance(colour: str) -> float:
     """Relative luminance, WCAG 2.2."""
     parts = [int(colour[at : at + 2], 16) / 255 for at in (1, 3, 5)]
@@ -143,6 +149,14 @@ def test_a_line_is_left_out_where_nothing_is_known():
     plan = replace(hall_plan(150, due=False, shift_end_s=None), would_help=())
     assert list(lines_of(plan)) == ["Bound", "Binds"]
     assert list(lines_of(round_plan())) == ["Bound"]
+
+
+def test_help_is_offered_only_where_a_plan_is_late_or_overruns():
+    fits = hall_plan(100, due=False)
+    assert fits.would_help
+    assert "Would help" not in lines_of(fits)
+    late = replace(fits, shop=replace(fits.shop, shift_end_s=HOUR))
+    assert "Would help" in lines_of(late)
 
 
 def test_what_binds_names_ties():

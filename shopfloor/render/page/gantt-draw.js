@@ -98,7 +98,7 @@ function fillAs(s, group, x, y, width, height) {
   s.ctx.fillRect(x, y, width, height);
   if (group.pattern !== "plain" && width >= NARROW) {
     s.ctx.save();
-    s.ctx.globalAlpha = 0.38;
+    s.ctx.globalAlpha = 0.34;
     s.ctx.fillStyle = pattern(s, group.pattern, group.ink);
     s.ctx.fillRect(x, y, width, height);
     s.ctx.restore();
