@@ -17,7 +17,9 @@ def test_one_binding_machine_has_levers_best_first() -> None:
     assert by_kind["unit"].value_s == 7200
     assert by_kind["hour"].value_s == 10_800
     assert by_kind["carry over"].value_s == 10_800
-    assert by_kind["unit"].sentence == "One more unit of M1: nothing before 2:00 instead of 4:00, 2 h earlier."
+    assert (
+        by_kind["unit"].sentence == "One more unit of M1: nothing before 2:00 instead of 4:00, 2 h earlier."
+    )
 
 
 def test_two_machines_that_tie_are_named_and_only_helped_together() -> None:
