@@ -9,9 +9,9 @@ from typing import Any
 
 import numpy as np
 
-from shopfloor.audit.breaks import Breaks
 from shopfloor.audit.columns import run_starts
 from shopfloor.audit.match import match_rows
+from shopfloor.audit.shut import Shut
 from shopfloor.audit.witness import Verdict, judge
 from shopfloor.audit.words import moment
 from shopfloor.model.calendar import duration
@@ -77,13 +77,27 @@ class Reading:
         return match_rows(self.shop, self.stated, self.job, self.machine, self.seconds)
 
     @cached_property
-    def breaks(self) -> Breaks:
-        """The breaks of the hall."""
-        return Breaks(self.shop.breaks)
+    def shut(self) -> list[Shut]:
+        """When each machine is shut: the hall's breaks and its own closures; like machines share one."""
+        made = {machine.closed: Shut((*self.shop.breaks, *machine.closed)) for machine in self.shop.machines}
+        return [made[machine.closed] for machine in self.shop.machines]
+
+    @cached_property
+    def calendars(self) -> list[tuple[Shut, Bools]]:
+        """Each different calendar, and which machines keep it."""
+        keepers: dict[int, list[int]] = {}
+        for place, shut in enumerate(self.shut):
+            keepers.setdefault(id(shut), []).append(place)
+        calendars = []
+        for places in keepers.values():
+            machines = np.zeros(len(self.shut), bool)
+            machines[places] = True
+            calendars.append((self.shut[places[0]], machines))
+        return calendars
 
     @cached_property
     def pauses(self) -> Bools:
-        """Whether each machine's work pauses over the breaks."""
+        """Whether each machine's work pauses while it is shut."""
         return np.array([machine.pauses for machine in self.shop.machines], bool)
 
     @cached_property
@@ -94,12 +108,14 @@ class Reading:
 
     @cached_property
     def seconds(self) -> Ints:
-        """Seconds worked in each row: its length, less the breaks in it where the machine pauses."""
+        """Seconds worked in each row: its length, less the time the machine is shut, where it pauses."""
         seconds = self.stated.end_s - self.stated.start_s
-        if len(self.breaks):
-            rows = np.flatnonzero(self.lasting & (self.machine >= 0))
-            rows = rows[self.pauses[self.machine[rows]]]
-            seconds[rows] -= self.breaks.within(self.stated.start_s[rows], self.stated.end_s[rows])
+        rows = np.flatnonzero(self.lasting & (self.machine >= 0))
+        rows = rows[self.pauses[self.machine[rows]]]
+        for shut, machines in self.calendars if len(rows) else ():
+            if len(shut):
+                here = rows[machines[self.machine[rows]]]
+                seconds[here] -= shut.within(self.stated.start_s[here], self.stated.end_s[here])
         return seconds
 
     @cached_property

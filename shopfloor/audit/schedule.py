@@ -11,7 +11,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 
-from shopfloor.audit import claims, hall, overlap, rounds, rows
+from shopfloor.audit import between, claims, hall, overlap, rounds, rows
 from shopfloor.audit.reading import Breaches, Reading
 from shopfloor.model.results import Violation
 from shopfloor.model.shop import Shop
@@ -41,7 +41,9 @@ RULES: dict[str, Rule] = {
     "machine-overlap": Rule(overlap.machine_overlaps, "no unit of a machine runs two orders at once"),
     "release": Rule(overlap.releases, "no order starts before its release"),
     "steps": Rule(overlap.steps, "lower steps of an order finish before higher ones start"),
-    "break": Rule(hall.breaks, "nothing starts or ends inside a break, or runs across one unless it pauses"),
+    "transport": Rule(between.transports, "an order has the time to get to its next machine"),
+    "changeover": Rule(between.changeovers, "a unit has the open time to change to the next family"),
+    "closure": Rule(hall.closures, "nothing starts, ends or, unless it pauses, runs on while shut"),
     "crew": Rule(hall.crews, "no crew gives more heads than it has"),
     "split": Rule(rows.splits, "only operations that may be split are in parts"),
     "parts": Rule(rows.part_numbers, "parts are numbered by time, 1 to as many as there are"),

@@ -13,12 +13,12 @@ from typing import Any
 
 import numpy as np
 
-from shopfloor.audit.breaks import Breaks
 from shopfloor.audit.columns import run_starts, run_sums
+from shopfloor.audit.shut import Shut
 from shopfloor.audit.words import moment
 from shopfloor.model.calendar import duration
 from shopfloor.model.results import Bound, Violation
-from shopfloor.model.shop import NO_STEP, Crew, Ints, Shop
+from shopfloor.model.shop import NO_STEP, Bools, Crew, Ints, Shop
 from shopfloor.model.stated import StatedPlan
 
 
@@ -58,7 +58,7 @@ class _Work:
         self.shop = shop
         self.job, self.machine = shop.operations.job, shop.operations.machine
         self.seconds, self.step = shop.operations.seconds, shop.operations.step
-        self.breaks = Breaks(shop.breaks)
+        self.breaks = Shut(shop.breaks)
 
     def order(self, name: str) -> int:
         return _find(self._orders, name, "order")
@@ -78,9 +78,16 @@ class _Work:
         """The crew of a name, and the operations it attends that cannot start before `begin`."""
         for crew in self.shop.crews:
             if crew.id == name:
+                if crew.levels or crew.heads < 1:
+                    raise _NoProofError(f"counts on the heads of crew {name}, which are not always there")
                 theirs = np.array([machine.crew == name for machine in self.shop.machines], bool)
                 return crew, self.from_on(np.flatnonzero(theirs[self.machine]), begin)
         raise _NoProofError(f"names crew {name!r}, which the shop does not have")
+
+    def only_set_up(self, operations: Ints) -> Bools:
+        """Whether each operation is attended only during its set-up."""
+        only: Bools = np.array([machine.set_up_only for machine in self.shop.machines], bool)
+        return only[self.machine[operations]]
 
     def from_on(self, operations: Ints, begin: int) -> Ints:
         """Those of the operations that their orders keep from starting before `begin`; at least one."""
@@ -204,7 +211,10 @@ def _crew(work: _Work, witness: Mapping[str, Any]) -> int:
     """What a crew cannot attend before `from_s` takes its head-seconds over the crew's heads."""
     begin = _whole(witness, "from_s")
     crew, operations = work.attended(_name(witness, "crew"), begin)
-    load = int((work.seconds[operations] * work.shop.operations.heads[operations]).sum())
+    seconds = np.where(
+        work.only_set_up(operations), work.shop.operations.setup_s[operations], work.seconds[operations]
+    )
+    load = int((seconds * work.shop.operations.heads[operations]).sum())
     _agree(witness, "head_seconds", load, "the crew's work is")
     return work.breaks.finish(begin, _up(load, crew.heads))
 
@@ -218,6 +228,8 @@ def _crew_rounds(work: _Work, witness: Mapping[str, Any]) -> int:
     begin, length = _whole(witness, "from_s"), _whole(witness, "round_s")
     crew, operations = work.attended(_name(witness, "crew"), begin)
     work.demand_rounds(operations, length, f"crew {crew.id}")
+    if work.only_set_up(operations).any():
+        raise _NoProofError("counts whole rounds, but some are attended only while they are set up")
     heads = sorted(set(work.shop.operations.heads[operations].tolist()))
     if len(heads) > 1 or heads[0] < 1:
         raise _NoProofError(f"counts rounds, but its operations take {heads[0]} to {heads[-1]} heads")

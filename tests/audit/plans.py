@@ -10,7 +10,7 @@ import numpy as np
 
 from shopfloor.model.calendar import MINUTE, Clock
 from shopfloor.model.schedule import NO_ROUND
-from shopfloor.model.shop import NO_STEP, Closure, Crew, Machine, Operations, Orders, Shop
+from shopfloor.model.shop import NO_STEP, Changeovers, Closure, Crew, Machine, Operations, Orders, Shop
 from shopfloor.model.stated import StatedPlan
 
 SIX = Clock(datetime(2026, 3, 2, 6, 0))
@@ -165,4 +165,19 @@ BY_CREW = [
     Row("TQ-101", "Wash", "06:00", "06:30"),
     Row("TQ-102", "CMM", "06:10", "06:40"),
     Row("TQ-103", "Test", "06:30", "07:00"),
+]
+
+# A paint booth for two colours, shut for ten minutes in the first change.
+BOOTH = shop({"Booth": 1}, [("TQ-101", "Booth", 30), ("TQ-102", "Booth", 30), ("TQ-103", "Booth", 30)])
+PAINT = replace(
+    BOOTH,
+    families=("grey", "white"),
+    changeovers={"Booth": Changeovers(1200)},
+    machines=(replace(BOOTH.machines[0], closed=(Closure(2100, 2700, "filter"),)),),
+    operations=replace(BOOTH.operations, family=[0, 1, 0]),
+)
+PAINTED = [
+    Row("TQ-101", "Booth", "06:00", "06:30"),
+    Row("TQ-102", "Booth", "07:00", "07:30"),
+    Row("TQ-103", "Booth", "07:50", "08:20"),
 ]

@@ -12,7 +12,7 @@ import pytest
 import shopfloor.audit
 from shopfloor.audit.schedule import MOST_LISTED, RULES, audit
 from shopfloor.model.results import Bound, Violation
-from shopfloor.model.shop import Closure, Shop
+from shopfloor.model.shop import Closure, Shop, Transport
 from shopfloor.model.stated import StatedPlan
 from tests.audit.plans import (
     AROUND_TEA,
@@ -23,6 +23,8 @@ from tests.audit.plans import (
     IN_PARTS,
     IN_ROUNDS,
     ON_ROUTE,
+    PAINT,
+    PAINTED,
     PLAN,
     ROUNDS,
     ROUTE,
@@ -159,25 +161,25 @@ CASES: list[tuple[str, Shop, StatedPlan, str, tuple[int, ...]]] = [
         (2, 5),
     ),
     (
-        "break",
+        "closure",
         TEA,
         stated(changed(AROUND_TEA, 2, start="06:15", end="06:45")),
-        "TQ-101 on Press from 06:15 to 06:45 ends inside the break from 06:30 to 06:45 (tea).",
+        "TQ-101 on Press from 06:15 to 06:45 ends while Press is shut from 06:30 to 06:45 (tea).",
         (2,),
     ),
     (
-        "break",
+        "closure",
         shop({"Press": 1}, [("TQ-101", "Press", 60)], breaks=(Closure(1800, 2700),)),
         stated([Row("TQ-101", "Press", "06:00", "07:00")]),
-        "TQ-101 on Press from 06:00 to 07:00 runs across the break from 06:30 to 06:45, over which Press "
+        "TQ-101 on Press from 06:00 to 07:00 runs on while Press is shut from 06:30 to 06:45, and it "
         "does not pause.",
         (2,),
     ),
     (
-        "break",
+        "closure",
         TEA,
         stated(changed(changed(AROUND_TEA, 3, start="06:40", end="07:15"), 4, start="07:15", end="07:45")),
-        "TQ-102 on Oven from 06:40 to 07:15 starts inside the break from 06:30 to 06:45 (tea).",
+        "TQ-102 on Oven from 06:40 to 07:15 starts while Oven is shut from 06:30 to 06:45 (tea).",
         (3,),
     ),
     (
@@ -191,15 +193,52 @@ CASES: list[tuple[str, Shop, StatedPlan, str, tuple[int, ...]]] = [
         "crew",
         CREW,
         stated(changed(BY_CREW, 4, start="06:20", end="06:50")),
-        "Crew Blue has 2 heads, but 3 are taken when TQ-103 on Test starts at 06:20 beside TQ-102 on CMM.",
+        "Crew Blue has 2 heads at 06:20, but 3 are taken, by TQ-103 on Test beside TQ-102 on CMM.",
         (3, 4),
     ),
     (
         "crew",
         replace(CREW, operations=replace(CREW.operations, heads=[1, 3, 0])),
         stated(changed(BY_CREW, 3, start="06:30", end="07:00")),
-        "Crew Blue has 2 heads, but 3 are taken when TQ-102 on CMM starts at 06:30.",
+        "Crew Blue has 2 heads at 06:30, but 3 are taken, by TQ-102 on CMM.",
         (3,),
+    ),
+    (
+        "crew",
+        replace(CREW, crews=(replace(CREW.crews[0], levels=((2100, 3600, 1), (3600, 4000, 0))),)),
+        stated(BY_CREW),
+        "Crew Blue has 1 head at 06:35, but 2 are taken, by TQ-103 on Test beside TQ-102 on CMM.",
+        (3, 4),
+    ),
+    (
+        "transport",
+        replace(HALL, transport=Transport(300, {("Wash", "CMM"): 600})),
+        stated(changed(changed(PLAN, 3, start="06:35", end="07:35"), 5, start="07:05", end="08:05")),
+        "TQ-101 needs 10 min to get from Wash to CMM, but leaves at 06:30 and starts at 06:35.",
+        (2, 3),
+    ),
+    (
+        "changeover",
+        PAINT,
+        stated(changed(PAINTED, 4, start="07:45", end="08:15")),
+        "Booth needs 20 min to change from white to grey between TQ-102, to 07:30, and TQ-103, from 07:45, "
+        "but has 15 min.",
+        (3, 4),
+    ),
+    (
+        "changeover",
+        PAINT,
+        stated(changed(PAINTED, 3, start="06:55", end="07:25")),
+        "Booth needs 20 min to change from grey to white between TQ-101, to 06:30, and TQ-102, from 06:55, "
+        "but has 15 min.",
+        (2, 3),
+    ),
+    (
+        "changeover",
+        replace(PAINT, machines=(replace(PAINT.machines[0], family="red"),)),
+        stated(PAINTED),
+        "Booth needs 20 min to change from red to grey before TQ-101 starts at 06:00, but has 0 s.",
+        (2,),
     ),
     (
         "split",
@@ -351,6 +390,7 @@ def test_every_rule_has_a_case() -> None:
         (ROUTE, ON_ROUTE),
         (TEA, AROUND_TEA),
         (CREW, BY_CREW),
+        (PAINT, PAINTED),
     ],
 )
 def test_a_clean_plan_breaks_no_rule(hall: Shop, rows: list[Row]) -> None:

@@ -44,6 +44,11 @@ EQUAL_CREW = shop(
     [("TQ-101", "Wash", 30), ("TQ-102", "CMM", 30), ("TQ-103", "Test", 30)],
     crew={"Blue": 2},
 )
+SET_UP_CREW = replace(
+    CREW,
+    machines=tuple(replace(machine, set_up_only=True) for machine in CREW.machines),
+    operations=replace(CREW.operations, setup_s=[600, 600, 600]),
+)
 BREAK = (Closure(45 * MINUTE, 60 * MINUTE, "tea"),)
 
 
@@ -93,6 +98,8 @@ BY_HAND: list[tuple[str, Shop, dict[str, Any], int]] = [
     ("crew", CREW, {"crew": "Blue", "from_s": 0, "head_seconds": 5700}, 47.5),
     # only what must wait for the wash
     ("crew", CREW, {"crew": "Blue", "from_s": 1800, "head_seconds": 1200}, 40),
+    # only 10 min of each are set-up, and only that is attended
+    ("crew", SET_UP_CREW, {"crew": "Blue", "from_s": 0, "head_seconds": 1800}, 15),
     # two at once, so three take two rounds
     (
         "crew rounds",
@@ -202,6 +209,20 @@ TAMPERED: list[tuple[str, Shop, dict[str, Any], str]] = [
         CREW,
         {"crew": "Blue", "from_s": 0, "head_seconds": 5701},
         "states head_seconds 5701, but the crew's work is 5700",
+    ),
+    (
+        "crew",
+        replace(CREW, crews=(replace(CREW.crews[0], levels=((0, 60, 3),)),)),
+        {"crew": "Blue", "from_s": 0, "head_seconds": 5700},
+        "counts on the heads of crew Blue, which are not always there",
+    ),
+    (
+        "crew rounds",
+        replace(
+            EQUAL_CREW, machines=tuple(replace(machine, set_up_only=True) for machine in EQUAL_CREW.machines)
+        ),
+        {"crew": "Blue", "from_s": 0, "operations": 3, "at_once": 2, "round_s": 1800},
+        "counts whole rounds, but some are attended only while they are set up",
     ),
     (
         "crew rounds",
