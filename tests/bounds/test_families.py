@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from itertools import permutations
+from itertools import pairwise, permutations
 
 import numpy as np
 import pytest
@@ -48,7 +48,7 @@ def rules(draw: st.DrawFn) -> Changeovers:
 def test_one_unit_pays_exactly_the_cheapest_sequence(families, rule, start) -> None:
     shop = shop_with(families, rule, start=start)
     cheapest = min(
-        sum(rule.seconds(a, b) for a, b in zip(route, route[1:], strict=False))
+        sum(rule.seconds(a, b) for a, b in pairwise(route))
         for order in permutations(families)
         for route in [([start] if start else []) + [FAMILIES[f] for f in order]]
     )
