@@ -12,7 +12,7 @@ from hypothesis import strategies as st
 from shopfloor.audit.witness import CLAIMS, KINDS, audit_bounds, judge, rederive
 from shopfloor.model.results import Bound
 from shopfloor.model.shop import Closure, Shop
-from tests.audit.plans import PLAN, Row, shop, stated
+from tests.audit.plans import PAINT, PLAN, Row, shop, stated
 from tests.audit.simple import legal
 from tests.audit.test_properties import legal_plans
 
@@ -49,6 +49,8 @@ SET_UP_CREW = replace(
     machines=tuple(replace(machine, set_up_only=True) for machine in CREW.machines),
     operations=replace(CREW.operations, setup_s=[600, 600, 600]),
 )
+RED = replace(PAINT, machines=(replace(PAINT.machines[0], family="red"),))
+BOOTH = {"machine": "Booth", "from_s": 0, "load_s": 5400, "tail_s": 0}
 BREAK = (Closure(45 * MINUTE, 60 * MINUTE, "tea"),)
 
 
@@ -76,6 +78,31 @@ BY_HAND: list[tuple[str, Shop, dict[str, Any], int]] = [
         with_break(HALL, pausing=True),
         {"machine": "Wash", "from_s": 0, "load_s": 3000, "tail_s": 0},
         65,
+    ),
+    # grey, white, grey again: one change of 20, and ten minutes of the booth's own closure
+    (
+        "machine",
+        PAINT,
+        {"machine": "Booth", "from_s": 0, "load_s": 5400, "tail_s": 0, "changeover_s": 1200},
+        120,
+    ),
+    # … and another, if the booth begins the shift in red
+    (
+        "machine",
+        RED,
+        {"machine": "Booth", "from_s": 0, "load_s": 5400, "tail_s": 0, "changeover_s": 2400},
+        140,
+    ),
+    # less than is forced is true as well
+    ("machine", RED, {**BOOTH, "changeover_s": 60}, 101),
+    # TQ-101 alone leaves 55 min after the wash
+    ("window", HALL, {"machine": "Wash", "from_s": 0, "load_s": 1800, "tail_s": 3300}, 30 + 55),
+    # the tea falls into what follows the wash
+    (
+        "window",
+        with_break(HALL, pausing=True),
+        {"machine": "Wash", "from_s": 0, "load_s": 1800, "tail_s": 60},
+        31,
     ),
     # three operations on two units: two rounds
     ("rounds", ROUNDS, {"node": "machine", "id": "Test", "operations": 3, "round_s": 1800}, 60),
@@ -166,6 +193,24 @@ TAMPERED: list[tuple[str, Shop, dict[str, Any], str]] = [
         HALL,
         {"machine": "Wash", "from_s": 0, "load_s": 3000.0, "tail_s": 0},
         "has load_s 3000.0, which is no whole number from 0",
+    ),
+    (
+        "machine",
+        PAINT,
+        {**BOOTH, "changeover_s": 1260},
+        "states changeover_s 1260, but the families force 1200",
+    ),
+    (
+        "machine",
+        replace(RED, orders=replace(RED.orders, release_s=[1200] * 3)),
+        {**BOOTH, "from_s": 1200, "changeover_s": 2400},
+        "states changeover_s 2400, but the families force 1200",
+    ),
+    (
+        "window",
+        HALL,
+        {"machine": "Wash", "from_s": 0, "load_s": 3000, "tail_s": 3301},
+        "counts no operation: none leaves 3301 s to do",
     ),
     (
         "rounds",
@@ -273,12 +318,20 @@ def test_no_bound_that_a_witness_proves_lies_above_a_legal_plan(
     end = int(plan.end_s.max())
     operation = data.draw(st.sampled_from(list(hall)))
     machine = hall.machines[operation.machine]
-    begin = data.draw(st.integers(0, 12))
+    begin, tail = data.draw(st.integers(0, 12)), data.draw(st.integers(0, 4))
     # The figures of a machine or crew witness are found as the audit corrects them.
     kinds: list[tuple[str, dict[str, Any]]] = [
         ("order", {"order": operation.order}),
         ("longest", {"order": operation.order, "machine": operation.machine_id}),
         ("machine", {"machine": machine.id, "from_s": begin, "load_s": 0, "tail_s": 0}),
+        (
+            "machine",
+            {"machine": machine.id, "from_s": begin, "load_s": 0, "tail_s": 0, "changeover_s": 10**6},
+        ),
+        (
+            "window",
+            {"machine": machine.id, "from_s": begin, "load_s": 0, "tail_s": tail},
+        ),
         ("rounds", {"node": "machine", "id": machine.id, "operations": 0, "round_s": operation.seconds}),
         ("rounds", {"node": "order", "id": operation.order, "operations": 0, "round_s": operation.seconds}),
         ("crew", {"crew": "Blue", "from_s": begin, "head_seconds": 0}),
@@ -289,7 +342,7 @@ def test_no_bound_that_a_witness_proves_lies_above_a_legal_plan(
     ]
     kind, witness = data.draw(st.sampled_from(kinds))
     value = rederive(hall, Bound(kind, 0, witness, ""))
-    for _ in range(3):
+    for _ in range(4):
         if isinstance(value, str) and " states " in value:
             key = value.split(" states ")[1].split()[0]
             witness[key] = int(value.rstrip(".").split()[-1])
