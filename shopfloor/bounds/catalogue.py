@@ -6,12 +6,14 @@ from collections.abc import Callable
 
 from shopfloor.bounds.crew import crew_bounds
 from shopfloor.bounds.load import machine_bounds, order_bounds, round_bounds
+from shopfloor.bounds.window import window_bounds
 from shopfloor.model.results import Bound
 from shopfloor.model.shop import Shop
 
 # Ties are shown in this order: a lead can do more about a machine than about an order.
 FAMILIES: tuple[Callable[[Shop], list[Bound]], ...] = (
     machine_bounds,
+    window_bounds,
     round_bounds,
     crew_bounds,
     order_bounds,

@@ -62,9 +62,8 @@ def test_the_sentence_names_work_changeovers_and_closures() -> None:
         "COAT has 30 min of work for this shift, and its families force at least 10 min of changeovers, "
         "so nothing can end before 0:40."
     )
-    closed = Shop(
-        (Machine("CMM", closed=(Closure(600, 1200, "calibration"),)),), Orders(("A",)), Operations([0], [0], [900])
-    )  # fmt: skip
+    cmm = Machine("CMM", closed=(Closure(600, 1200, "calibration"),))
+    closed = Shop((cmm,), Orders(("A",)), Operations([0], [0], [900]))
     assert lower_bounds(closed)[0].value_s == 1500
 
 
