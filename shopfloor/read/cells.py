@@ -104,6 +104,21 @@ def _without_groups(text: str) -> str:
 
 def length(text: str, marks: Marks) -> Fraction:
     """Read a time, decimal minutes or `h:mm[:ss]`, as an exact number of seconds above zero."""
+    seconds = _time(text, marks)
+    if seconds <= 0:
+        raise CellFault("minutes-not-positive")
+    return seconds
+
+
+def set_up(text: str, marks: Marks) -> Fraction:
+    """Read a set-up time like :func:`length`; it may be zero."""
+    seconds = _time(text, marks)
+    if seconds < 0:
+        raise CellFault("setup-negative")
+    return seconds
+
+
+def _time(text: str, marks: Marks) -> Fraction:
     found = _LENGTH.fullmatch(text)
     if found:
         sign, hours, minutes, whole, part = found.groups()
@@ -111,8 +126,6 @@ def length(text: str, marks: Marks) -> Fraction:
         seconds = (seconds + Fraction(f"0.{part or 0}")) * (-1 if sign == "-" else 1)
     else:
         seconds = number(text, marks, "minutes-unreadable") * MINUTE
-    if seconds <= 0:
-        raise CellFault("minutes-not-positive")
     if seconds > settings.MAX_MINUTES * MINUTE:
         raise CellFault("minutes-too-large", limit=settings.MAX_MINUTES)
     return seconds

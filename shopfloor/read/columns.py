@@ -80,6 +80,7 @@ COLUMNS: Mapping[str, Column] = {
         Column("minutes", "number", _number(cell.length), "Run time, decimal minutes or h:mm."),
         Column("quantity", "number", _number(cell.quantity), "Pieces; with minutes_each instead of minutes."),
         Column("minutes_each", "number", _number(cell.length), "Run time of one piece."),
+        Column("setup_minutes", "number", _number(cell.set_up), "Set-up before the run time, on top of it."),
         Column("release", "moment", _moment("release"), "Earliest start of the order."),
         Column("due", "moment", _moment("due"), "Wanted finish of the order."),
         Column("priority", "number", _number(cell.priority), "Weight of the order; 1 unless given."),

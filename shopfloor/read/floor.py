@@ -1,70 +1,105 @@
-"""shop.toml: the shift, the machines, and the headers of an ERP's export."""
+"""shop.toml as a whole: the shift, the hall, and the headers of an ERP's export."""
 
 from __future__ import annotations
 
-import re
-import tomllib
-from collections.abc import Iterator, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass, field
-from datetime import date, datetime, time
-from typing import Any
+from datetime import datetime, time
 from zoneinfo import ZoneInfo, available_timezones
 
 from shopfloor.model.calendar import Clock
-from shopfloor.model.shop import Machine
-from shopfloor.read.cells import CellFault, name_of
+from shopfloor.model.shop import Changeovers, Closure, Crew, Machine, Transport
+from shopfloor.read.between import Betweens, read_betweens, report_unknown_machines
 from shopfloor.read.columns import COLUMNS
-from shopfloor.read.headers import loose, nearest
-from shopfloor.read.rules import Findings, Place, refuse
-from shopfloor.read.shift import Said, Shift, settle, written
+from shopfloor.read.document import Document, Table, parse
+from shopfloor.read.hall import CrewSaid, MachineSaid, check_names, closures, read_crews, read_machines
+from shopfloor.read.headers import Suggestions, loose
+from shopfloor.read.rules import Findings
+from shopfloor.read.shift import Moment, Said, Shift, settle, written
 from shopfloor.read.source import Readable, take
+from shopfloor.read.spans import Stretch, apart, stretches, timed
 
 MAX_FLOOR_BYTES = 256 * 1024
-MAX_UNITS = 10_000
+_TABLES = ("shift", "machine", "crew", "changeover", "transport", "columns")
+_SHIFT = ("start", "end", "zone", "breaks")
 
-# Every key there is: True where this version reads it, False where a later one will.
-_TABLES: Mapping[str, bool] = {
-    "shift": True, "columns": True, "machine": True, "crew": False, "changeover": False, "transport": False
-}  # fmt: skip
-_SHIFT: Mapping[str, bool] = {"start": True, "end": True, "zone": True, "breaks": False}
-_MACHINE: Mapping[str, bool] = {
-    "id": True, "name": True, "count": True, "pauses": False, "closed": False, "crew": False, "heads": False,
-    "attended": False,
-}  # fmt: skip
-_KINDS: tuple[tuple[type, str], ...] = (
-    (bool, "true or false"), (str, "a text"), (int, "a number"), (float, "a number"),
-    (datetime, "a date and time"), (date, "a date"), (time, "a time of day"),
-    (list, "a list"), (dict, "a table"),
-)  # fmt: skip
+
+@dataclass(frozen=True)
+class Draft:
+    """What shop.toml says, as far as it could be read beside its faults; its times are not yet on a clock.
+
+    `shift_known`, `machines_known` and `crews_known` are false where a fault hides part of what is meant.
+    """
+
+    file: str = "shop.toml"
+    shift: Shift = field(default_factory=Shift)
+    breaks: tuple[Stretch, ...] = ()
+    machines: tuple[MachineSaid, ...] = ()
+    crews: tuple[CrewSaid, ...] = ()
+    betweens: Betweens = field(default_factory=Betweens)
+    columns: Mapping[str, str] = field(default_factory=dict)
+    inputs: tuple[tuple[str, str], ...] = ()
+    shift_known: bool = True
+    machines_known: bool = True
+
+    def on(self, clock: Clock | None, shift_end_s: int | None, findings: Findings) -> Floor:
+        """Return the floor with its times on the clock; those that cannot be used become faults.
+
+        Without a clock, because the shift itself is in doubt, times are left out: one
+        fault shall not make many.
+        """
+        transport = self.betweens.transport
+        pauses = apart(timed(self.breaks, clock, findings), "breaks-overlap", findings)
+        return Floor(
+            clock=clock or Clock(),
+            shift_end_s=shift_end_s,
+            breaks=tuple(closures(pauses)),
+            machines=tuple(said.on(clock, findings) for said in self.machines),
+            crews=tuple(said.on(clock, shift_end_s, findings) for said in self.crews),
+            changeovers={machine: said.times for machine, said in self.betweens.changeovers.items()},
+            transport=Transport() if transport is None else transport.times,
+            heads={said.machine.id: said.heads for said in self.machines},
+            setup_s={said.machine.id: said.setup_s for said in self.machines},
+            columns=self.columns,
+            inputs=self.inputs,
+            draft=self,
+        )
 
 
 @dataclass(frozen=True)
 class Floor:
-    """What shop.toml says.
+    """What shop.toml says; made by :func:`load_floor`.
 
     Attributes
     ----------
-    file
-        Name of the file, for messages.
-    clock, shift_end_s
+    clock, shift_end_s, breaks
         From ``[shift]``.
     machines
         In the order of the file; empty when none are listed, and then any machine may stand in the orders.
+    crews, changeovers, transport
+        As a shop holds them.
+    heads, setup_s
+        By machine id: what stands for a row that leaves its column blank.
     columns
         Our column name to the header in an ERP's export.
     inputs
         Name and SHA-256 of the file.
-    shift
-        What ``[shift]`` said, so that a start or an end given elsewhere can take its place.
+    draft
+        The same as it was written, so that a start or an end given elsewhere can move it.
     """
 
-    file: str = "shop.toml"
     clock: Clock = field(default_factory=Clock)
     shift_end_s: int | None = None
+    breaks: tuple[Closure, ...] = ()
     machines: tuple[Machine, ...] = ()
+    crews: tuple[Crew, ...] = ()
+    changeovers: Mapping[str, Changeovers] = field(default_factory=dict)
+    transport: Transport = field(default_factory=Transport)
+    heads: Mapping[str, int] = field(default_factory=dict)
+    setup_s: Mapping[str, int] = field(default_factory=dict)
     columns: Mapping[str, str] = field(default_factory=dict)
     inputs: tuple[tuple[str, str], ...] = ()
-    shift: Shift = field(default_factory=Shift)
+    draft: Draft = field(default_factory=Draft)
 
 
 def load_floor(source: Readable, *, name: str | None = None) -> Floor:
@@ -80,28 +115,26 @@ def load_floor(source: Readable, *, name: str | None = None) -> Floor:
     Raises
     ------
     InputError
-        With every fault of the file: TOML that cannot be read, unknown keys (with the nearest known one),
-        keys that only a later version reads, values of the wrong kind.
+        With every fault of the file: TOML that cannot be read, unknown keys and names (with the nearest known
+        one), values of the wrong kind, times that cannot be used.
     """
     findings = Findings()
-    floor = read_floor(source, findings, name=name).floor
-    settled = settle(floor.shift, findings)
+    draft = read_floor(source, findings, name=name)
+    floor, _ = put_on_clock(draft, findings)
     findings.stop_if_any()
-    assert settled is not None  # a shift that cannot be settled is a fault
-    clock, end_s = settled
-    return Floor(floor.file, clock, end_s, floor.machines, floor.columns, floor.inputs, floor.shift)
+    return floor
 
 
-@dataclass(frozen=True, slots=True)
-class Draft:
-    """As much of a floor as could be read beside its faults; the shift is not yet settled.
+def put_on_clock(
+    draft: Draft, findings: Findings, start: Moment | None = None, end: Moment | None = None
+) -> tuple[Floor, bool]:
+    """Return the floor of a draft on its clock, and whether the clock could be told.
 
-    `shift_known` and `machines_known` are false where a fault hides part of what is meant.
+    `start` and `end` go before what the file says of the shift.
     """
-
-    floor: Floor
-    shift_known: bool = True
-    machines_known: bool = True
+    settled = settle(draft.shift.overruled(start, end), findings)
+    clock, end_s = settled if settled is not None and draft.shift_known else (None, None)
+    return draft.on(clock, end_s, findings), clock is not None
 
 
 def read_floor(source: Readable, findings: Findings, *, name: str | None = None) -> Draft:
@@ -113,216 +146,79 @@ def read_floor(source: Readable, findings: Findings, *, name: str | None = None)
         Only if the file cannot be opened, is no UTF-8, or is not valid TOML.
     """
     taken = take(source, name=name, limit=MAX_FLOOR_BYTES)
-    text = _decoded(taken.data, taken.place)
-    try:
-        tree = tomllib.loads(text)
-    except (tomllib.TOMLDecodeError, RecursionError, ValueError) as error:
-        raise _syntax_error(error, text, taken.place) from None
-    reader = _Reader(taken.place, _lines(text), findings)
-    reader.known_keys(tree, _TABLES, "")
-    shift, shift_known = reader.shift(tree.get("shift", {}))
-    machines, machines_known = reader.machines(tree.get("machine", []))
-    columns = reader.columns(tree.get("columns", {}))
-    inputs = ((taken.name, taken.sha256),)
+    document = parse(taken, findings)
+    document.known(document.tree, _TABLES)
+    shift, breaks, shift_known = _shift(document)
+    machines, machines_known = read_machines(document)
+    crews, crews_known = read_crews(document)
+    betweens = read_betweens(document)
+    check_names(machines, crews, crews_known, findings)
+    if machines and machines_known:
+        report_unknown_machines(betweens, [said.machine.id for said in machines], findings)
     return Draft(
-        Floor(taken.name, machines=machines, columns=columns, inputs=inputs, shift=shift),
+        taken.name,
+        shift,
+        breaks,
+        machines,
+        crews,
+        betweens,
+        _columns(document),
+        ((taken.name, taken.sha256),),
         shift_known,
         machines_known,
     )
 
 
-def _decoded(data: bytes, place: Place) -> str:
-    try:
-        return data.decode("utf-8-sig")
-    except UnicodeDecodeError as error:
-        raise refuse(place, "encoding-broken", encoding="UTF-8", byte=error.start + 1) from None
-
-
-def _syntax_error(error: Exception, text: str, place: Place) -> Exception:
-    """Return the fault for what the TOML parser said: `Expected '=' after a key (at line 3, column 5)`."""
-    words = "nested too deeply" if isinstance(error, RecursionError) else str(error)
-    reason, _, spot = words.partition(" (at ")
-    found = re.match(r"line (\d+)", spot)
-    lines = text.splitlines()
-    line = int(found[1]) if found else len(lines) if spot else 0
-    shown = lines[line - 1].strip() if 0 < line <= len(lines) else ""
-    return refuse(place.at(line), "toml-syntax", shown, reason=reason[:1].lower() + reason[1:])
-
-
-_HEAD = re.compile(r"\s*\[(\[?)\s*([^\[\]#]+?)\s*\]")
-_KEY = re.compile(r"""\s*(?:"([^"]*)"|'([^']*)'|([\w-]+))\s*[.=]""")
-
-
-def _lines(text: str) -> dict[tuple[str, int, str], int]:
-    """Return the line of each key by table, count of the table, and key; for messages only.
-
-    The parser does not tell where a value stood. A key inside a text of several lines may mislead this
-    search, which then only points at a neighbouring line.
-    """
-    where: dict[tuple[str, int, str], int] = {}
-    table, count, seen = "", 0, dict[str, int]()
-    for number, line in enumerate(text.splitlines(), start=1):
-        if found := _HEAD.match(line):
-            table = found[2].strip().strip("\"'")
-            count = seen.get(table, 0) if found[1] else 0
-            seen[table] = count + 1
-            where.setdefault(("", 0, table.partition(".")[0].strip()), number)
-            where.setdefault((table, count, ""), number)
-        elif found := _KEY.match(line):
-            key = found[1] or found[2] or found[3] or ""
-            where.setdefault((table, count, key), number)
-    return where
-
-
-class _Reader:
-    """Checks the tables of one file, key by key."""
-
-    def __init__(self, place: Place, lines: Mapping[tuple[str, int, str], int], findings: Findings) -> None:
-        self._place = place
-        self._lines = lines
-        self._findings = findings
-
-    def _at(self, table: str, key: str = "", count: int = 0) -> Place:
-        line = self._lines.get((table, count, key)) or self._lines.get((table, count, "")) or 0
-        return self._place.at(line or self._lines.get(("", 0, table), 0), f"{table}.{key}".strip("."))
-
-    def known_keys(
-        self, tree: Mapping[str, Any], keys: Mapping[str, bool], table: str, count: int = 0
-    ) -> None:
-        """Report keys that nobody knows, and those that only a later version does."""
-
-        def add(key: str) -> None:
-            close = nearest(key, keys)
-            self._findings.fault(
-                self._at(table, key, count),
-                "unknown-key",
-                key,
-                nearest=f"; the nearest is {close!r}" if close else "",
-                known=", ".join(name for name, read in keys.items() if read),
-            )
-
-        for key in tree:
-            if key in keys and not keys[key]:
-                self._findings.fault(self._at(table, key, count), "not-supported-yet", key)
-        unknown = [key for key in tree if key not in keys]
-        self._findings.each(unknown, len(unknown), add)
-
-    def _kind(self, value: Any, wanted: tuple[type, ...], place: Place, words: str) -> bool:
-        """Whether `value` is of a wanted kind; a fault if not."""
-        if isinstance(value, wanted) and (bool in wanted or not isinstance(value, bool)):
-            return True
-        got = next((words for kind, words in _KINDS if isinstance(value, kind)), "something else")
-        self._findings.fault(
-            place, "wrong-kind", "" if isinstance(value, list | dict) else str(value), got=got, wanted=words
-        )
-        return False
-
-    def shift(self, tree: Any) -> tuple[Shift, bool]:
-        """Read ``[shift]``; also tell whether all of it was of the right kind."""
-        if not self._kind(tree, (dict,), self._at("shift"), "a table: [shift]"):
-            return Shift(), False
-        self.known_keys(tree, _SHIFT, "shift")
-        said: dict[str, Said] = {}
-        sound = True
-        for key, kinds, words in (
-            ("start", (str, datetime), 'a date and time such as "2026-03-02T06:00"'),
-            ("end", (str, datetime, time), 'a time such as "14:00"'),
-        ):
-            place = self._at("shift", key)
-            if key in tree:
-                if self._kind(tree[key], kinds, place, words):
-                    said[key] = Said(written(tree[key]), place)
-                else:
-                    sound = False
-        zone, zone_known = self._zone(tree)
-        return Shift(said.get("start"), said.get("end"), zone), sound and zone_known
-
-    def _zone(self, tree: Mapping[str, Any]) -> tuple[ZoneInfo | None, bool]:
-        place = self._at("shift", "zone")
-        if "zone" not in tree:
-            return None, True
-        name = tree["zone"]
-        if not self._kind(name, (str,), place, 'a text such as "Europe/London"'):
-            return None, False
-        try:
-            return ZoneInfo(name), True
-        except (KeyError, ValueError, OSError):  # unknown, no name at all, or the name of a folder of zones
-            close = nearest(name, sorted(available_timezones()))
-            hint = f"; the nearest is {close!r}" if close else ""
-            self._findings.fault(place, "zone-unknown", name, nearest=hint)
-            return None, False
-
-    def machines(self, entries: Any) -> tuple[tuple[Machine, ...], bool]:
-        """Read every ``[[machine]]``; also tell whether all of them have a sound id."""
-        if not self._kind(entries, (list,), self._at("machine"), "a list of tables: [[machine]]"):
-            return (), False
-        machines: list[Machine] = []
-        lines: dict[str, int] = {}
-        sound = True
-        for count, entry in enumerate(entries):
-            if not self._kind(entry, (dict,), self._at("machine", "", count), "a table: [[machine]]"):
-                sound = False
-                continue
-            self.known_keys(entry, _MACHINE, "machine", count)
-            name = self._text(entry, "id", count, needed=True)
-            title = self._text(entry, "name", count)
-            units = self._units(entry, count)
-            if not name:
-                sound = False
-                continue
-            place = self._at("machine", "id", count)
-            if name in lines:
-                self._findings.fault(place, "machine-duplicate", name, row=lines[name])
-                continue
-            lines[name] = place.row
-            machines.append(Machine(name, title, units))
-        return tuple(machines), sound
-
-    def _text(self, entry: Mapping[str, Any], key: str, count: int, *, needed: bool = False) -> str:
-        """Return a name in an entry of ``[[machine]]``, empty when there is none or it is a fault."""
-        place = self._at("machine", key, count)
-        value = entry.get(key)
-        if value is None or (needed and isinstance(value, str) and not value.strip()):
-            if needed:
-                self._findings.fault(place, "key-missing", table="[[machine]]")
-            return ""
-        if not self._kind(value, (str,), place, 'a text in quotes, such as "CMM"'):
-            return ""
-        try:
-            return name_of(value.strip())
-        except CellFault as fault:
-            self._findings.fault(place, fault.rule, value, **fault.words)
-            return ""
-
-    def _units(self, entry: Mapping[str, Any], count: int) -> int:
-        value = entry.get("count", 1)
-        place = self._at("machine", "count", count)
-        if not self._kind(value, (int, float), place, "a whole number such as 2"):
-            return 1
-        if isinstance(value, float) or not 1 <= value <= MAX_UNITS:
-            self._findings.fault(place, "count-unusable", str(value), limit=MAX_UNITS)
-            return 1
-        return int(value)
-
-    def columns(self, tree: Any) -> dict[str, str]:
-        """Read ``[columns]``: our name = "their header"."""
-        if not self._kind(tree, (dict,), self._at("columns"), "a table: [columns]"):
-            return {}
-        self.known_keys(tree, dict.fromkeys(COLUMNS, True), "columns")
-        mapped: dict[str, str] = {}
-        for name, header in _items(tree, COLUMNS):
-            place = self._at("columns", name)
-            if not self._kind(header, (str,), place, 'a header in quotes, such as "Work Order No"'):
-                continue
-            other = next((ours for ours, theirs in mapped.items() if loose(theirs) == loose(header)), None)
-            if other is not None:
-                self._findings.fault(place, "header-mapped-twice", header, name=other)
-            elif loose(header):
-                mapped[name] = header.strip()
+def _shift(document: Document) -> tuple[Shift, tuple[Stretch, ...], bool]:
+    """Read ``[shift]``; also tell whether its start, end and zone are of the right kind."""
+    table, sound = document.table(document.tree, "shift", None)
+    document.known(table, _SHIFT)
+    said: dict[str, Said] = {}
+    for key, kinds, words in (
+        ("start", (str, datetime), 'a date and time such as "2026-03-02T06:00"'),
+        ("end", (str, datetime, time), 'a time such as "14:00"'),
+    ):
+        if key in table.values:
+            at = document.at("shift", key)
+            if document.kind(table.values[key], kinds, at, words):
+                said[key] = Said(written(table.values[key]), at)
             else:
-                self._findings.fault(place, "header-empty", header)
-        return mapped
+                sound = False
+    zone, zone_known = _zone(document, table)
+    shift = Shift(said.get("start"), said.get("end"), zone)
+    return shift, stretches(document, table, "breaks"), sound and zone_known
 
 
-def _items(tree: Mapping[str, Any], known: Mapping[str, Any]) -> Iterator[tuple[str, Any]]:
-    return ((key, value) for key, value in tree.items() if key in known)
+def _zone(document: Document, table: Table) -> tuple[ZoneInfo | None, bool]:
+    at = document.at("shift", "zone")
+    if "zone" not in table.values:
+        return None, True
+    name = table.values["zone"]
+    if not document.kind(name, (str,), at, 'a text such as "Europe/London"'):
+        return None, False
+    try:
+        return ZoneInfo(name), True
+    except (KeyError, ValueError, OSError):  # unknown, no name at all, or the name of a folder of zones
+        near = Suggestions(sorted(available_timezones()))
+        document.findings.fault(at, "zone-unknown", name, nearest=near.hint(name))
+        return None, False
+
+
+def _columns(document: Document) -> dict[str, str]:
+    """Read ``[columns]``: our name = "their header"."""
+    table, _ = document.table(document.tree, "columns", COLUMNS)
+    mapped: dict[str, str] = {}
+    for name, header in table.values.items():
+        at = document.at("columns", name)
+        if name not in COLUMNS or not document.kind(
+            header, (str,), at, 'a header in quotes, such as "Work Order No"'
+        ):
+            continue
+        other = next((ours for ours, theirs in mapped.items() if loose(theirs) == loose(header)), None)
+        if other is not None:
+            document.findings.fault(at, "header-mapped-twice", header, name=other)
+        elif loose(header):
+            mapped[name] = header.strip()
+        else:
+            document.findings.fault(at, "header-empty", header)
+    return mapped

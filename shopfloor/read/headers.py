@@ -9,6 +9,7 @@ from dataclasses import dataclass, field
 
 from shopfloor.read.rules import MAX_VALUE_CHARACTERS, shorten
 
+NEAREST_BUDGET = 50_000
 HEADER_ROWS = 20  # a title may stand above the header, but not a page of text
 _LOOSE = str.maketrans("", "", " _-\u00a0\t\r\n\ufeff")
 
@@ -23,6 +24,31 @@ def nearest(name: str, among: Iterable[str], cutoff: float = 0.6) -> str | None:
     folded = {candidate.casefold(): candidate for candidate in reversed(list(among))}
     found = difflib.get_close_matches(name.casefold()[:MAX_VALUE_CHARACTERS], list(folded), 1, cutoff)
     return folded[found[0]] if found else None
+
+
+class Suggestions:
+    """The nearest of some names to one that is not among them, each looked for once.
+
+    Beyond ``NEAREST_BUDGET`` pairs of names compared nothing is suggested any more, since a file whose every
+    name is wrong is not helped by it.
+    """
+
+    def __init__(self, among: Iterable[str]) -> None:
+        self.among = dict.fromkeys(among)
+        self._left = NEAREST_BUDGET
+        self._found: dict[str, str | None] = {}
+
+    def nearest(self, name: str) -> str | None:
+        """Return the name most like `name`, or None when none is."""
+        if name not in self._found:
+            self._left -= len(self.among)
+            self._found[name] = nearest(name, self.among) if self._left >= 0 else None
+        return self._found[name]
+
+    def hint(self, name: str) -> str:
+        """Return the nearest name as the tail of a sentence, empty when there is none."""
+        close = self.nearest(name)
+        return f"; the nearest is {close!r}" if close else ""
 
 
 @dataclass(frozen=True)

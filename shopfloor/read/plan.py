@@ -48,7 +48,7 @@ def load_plan(source: Readable, shop: Shop, *, name: str | None = None) -> State
         other columns, such as note, are not looked at. In a workbook the sheet with most of them is read.
     shop
         Its clock reads the times. Around the hour that a clock set back repeats, its operations' times tell
-        which pass is meant; where they do not, the first is taken.
+        which pass is meant, then the order of the rows; where neither does, the first is taken.
     name
         What messages call the source.
 

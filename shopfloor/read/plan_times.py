@@ -67,8 +67,9 @@ def choose_passes(
 ) -> tuple[Ints, Ints]:
     """Return start and end of each row, choosing the pass of times in an hour that occurs twice.
 
-    Of the up to four readings the first is taken in which the row lasts as long as the order's operation on
-    the machine; else the first in which it lasts at all; else the first.
+    Of the up to four readings those count in which the row lasts as long as the order's operation on the
+    machine; else those in which it lasts at all; else all. Of these the first is taken that does not start
+    before the row above, since plans are written in order of start; else the first.
     """
     start, end = first["start"].copy(), first["end"].copy()
     twice = np.flatnonzero((start != second["start"]) | (end != second["end"]))
@@ -88,5 +89,7 @@ def choose_passes(
         known = lengths.get((order[row], machine[row]), set())
         fitting = [pair for pair in readings if pair[1] - pair[0] in known]
         lasting = [pair for pair in readings if pair[1] > pair[0]]
-        start[row], end[row] = (fitting or lasting or readings)[0]
+        candidates = fitting or lasting or readings
+        above = start[row - 1] if row else start[row]
+        start[row], end[row] = next((pair for pair in candidates if pair[0] >= above), candidates[0])
     return start, end

@@ -67,7 +67,7 @@ def settle(shift: Shift, findings: Findings) -> tuple[Clock, int | None] | None:
 
 def _start(said: Said, zone: ZoneInfo | None, findings: Findings) -> datetime | None:
     text = said.text.strip()
-    if _has_offset(text):
+    if has_offset(text):
         findings.fault(said.place, "offset-not-allowed", text)
         return None
     anchor = Clock(datetime(2000, 1, 1))  # any start reads a full date and time alike
@@ -90,7 +90,7 @@ def _start(said: Said, zone: ZoneInfo | None, findings: Findings) -> datetime | 
 
 def _end(said: Said, clock: Clock, findings: Findings) -> int | None:
     text = said.text.strip()
-    if _has_offset(text):
+    if has_offset(text):
         findings.fault(said.place, "offset-not-allowed", text)
         return None
     try:
@@ -110,7 +110,7 @@ def _end(said: Said, clock: Clock, findings: Findings) -> int | None:
     return seconds
 
 
-def _has_offset(text: str) -> bool:
+def has_offset(text: str) -> bool:
     """Whether a date and time ends in `Z` or an offset such as `+01:00`."""
     clock_time = text.partition("T")[2] or text.partition(" ")[2]
     return bool(clock_time) and (clock_time[-1] in "Zz" or "+" in clock_time or "-" in clock_time)

@@ -48,6 +48,18 @@ def run_times(sheet: Sheet, round_s: int) -> tuple[Ints, bool]:
     return _seconds(sheet, [*times, *products], code), False
 
 
+def set_up_times(sheet: Sheet, default: Ints) -> Ints:
+    """Return the seconds of set-up of each row; `default` stands where the column is blank."""
+    if "setup_minutes" not in sheet:
+        return default
+    column = sheet["setup_minutes"]
+    times = [value or Fraction(0) for value in column.values]
+    code = np.where(column.given, column.cells.codes, NONE)
+    rounded = _rounded(times)[code]
+    _notice_rounded(sheet, "setup-rounded", times, code, np.flatnonzero(code != NONE))
+    return np.where(column.given, rounded, default)
+
+
 def _stated(sheet: Sheet) -> tuple[list[Fraction], Ints]:
     """Return the distinct times under `minutes`, and which of them each row has."""
     if "minutes" not in sheet:
@@ -124,16 +136,23 @@ def _seconds(sheet: Sheet, times: list[Fraction], code: Ints) -> Ints:
     limit = settings.MAX_MINUTES
     rows = np.flatnonzero(known & (rounded[code] > limit * MINUTE))
     sheet.fault_rows(rows, "minutes-too-large", "quantity", lambda _: {"limit": limit})
+    known_rows = np.flatnonzero(known & (rounded[code] > 0))
+    _notice_rounded(sheet, "seconds-rounded", times, code, known_rows)
+    return rounded[code]
+
+
+def _notice_rounded(sheet: Sheet, rule: str, times: list[Fraction], code: Ints, rows: Ints) -> None:
+    """Notice which of some rows have a time that is no whole number of seconds."""
     odd = np.array([*(time.denominator != 1 for time in times), False])
-    changed = np.flatnonzero(known & odd[code] & (rounded[code] > 0))
+    changed = rows[odd[code[rows]]]
     if len(changed):
         first = changed[0]
+        one, many = ("time is", "times are") if rule == "seconds-rounded" else ("set-up is", "set-ups are")
         sheet.findings.notice(
             sheet.table.place.whole,
-            "seconds-rounded",
-            count=count_of(len(changed), "time is rounded", "times are rounded"),
+            rule,
+            count=count_of(len(changed), f"{one} rounded", f"{many} rounded"),
             row=sheet.row(first),
             seconds=f"{float(times[code[first]]):.9g}",
-            rounded=int(rounded[code[first]]),
+            rounded=nearest_second(times[code[first]]),
         )
-    return rounded[code]
