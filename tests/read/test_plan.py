@@ -6,6 +6,7 @@ import io
 import json
 from collections.abc import Callable
 from datetime import datetime
+from itertools import pairwise
 from pathlib import Path
 from typing import Any
 from zoneinfo import ZoneInfo
@@ -245,6 +246,22 @@ def test_the_hour_that_occurs_twice(start: str, end: str, begin_h: float, end_h:
     source = text(f"TQ-101,Wash,1,2026-10-25T{start},2026-10-25T{end},,,,")
     [row] = rows_of(load_plan(source, hall(BACK)))
     assert (row[3] / HOUR, row[4] / HOUR) == (begin_h, end_h)
+
+
+def test_rounds_through_the_hour_that_occurs_twice() -> None:
+    """Half-hour rounds from 00:30 BST to 02:00 GMT: six of them, of which two pairs read the same."""
+    walls = ["00:30", "01:00", "01:30", "01:00", "01:30", "02:00", "02:30"]
+    rows = [
+        f"TQ-10{k % 2 + 1},Wash,1,2026-10-25T{start},2026-10-25T{end},{k + 1},,,"
+        for k, (start, end) in enumerate(pairwise(walls))
+    ]
+    shop = hall(BACK)
+    shop = Shop(
+        shop.machines, shop.orders, Operations([0, 1] * 3, [0] * 6, np.full(6, 1800)), clock=shop.clock
+    )
+    read = load_plan(text(*rows), shop)
+    assert (read.start_s / HOUR).tolist() == [2.5, 3, 3.5, 4, 4.5, 5]
+    assert (read.end_s / HOUR).tolist() == [3, 3.5, 4, 4.5, 5, 5.5]
 
 
 def test_an_hour_that_is_skipped_is_a_fault() -> None:
