@@ -27,6 +27,7 @@ class Options:
     workers: int = 0
     seed: int = 0
     even: bool = False
+    shortest_piece_s: int = 0
 
 
 @dataclass(frozen=True, slots=True)
@@ -115,6 +116,7 @@ def plan(
         workers=options.workers,
         seed=options.seed,
         even=options.even,
+        shortest_piece_s=options.shortest_piece_s,
         report=report or (lambda progress: None),
         stop=stop or threading.Event(),
     )

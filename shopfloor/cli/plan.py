@@ -33,6 +33,7 @@ def plan(
     round_minutes: common.RoundOption = None,
     crew: common.CrewOption = None,
     split: common.SplitOption = False,
+    shortest_piece: Annotated[float, common.setting("shortest-piece", metavar="MINUTES")] = 0,
     even: common.EvenOption = False,
     time_limit: Annotated[float, common.setting("time-limit", metavar="SECONDS")] = TIME_LIMIT,
     workers: Annotated[int, common.setting("workers", metavar="N")] = WORKERS,
@@ -69,7 +70,13 @@ def plan(
     with stopping() as stop:
         made = pipeline.plan(
             reading.shop,
-            pipeline.Options(time_limit_s=time_limit, workers=workers, seed=seed, even=even),
+            pipeline.Options(
+                time_limit_s=time_limit,
+                workers=workers,
+                seed=seed,
+                even=even,
+                shortest_piece_s=round(shortest_piece * 60),
+            ),
             inputs=reading.inputs,
             report=report,
             stop=stop,

@@ -6,13 +6,14 @@ from shopfloor.model.results import Choice
 from shopfloor.model.shop import Shop
 from shopfloor.openshop.crew_rounds import CrewRounds
 from shopfloor.openshop.general import General
+from shopfloor.openshop.lot_split import LotSplit
 from shopfloor.openshop.method import Method
 from shopfloor.openshop.over_breaks import OverBreaks, all_pause
 from shopfloor.openshop.two_machine import TwoMachine
 from shopfloor.openshop.unit_rounds import UnitRounds
 
 # Exact methods first, in the order of the README's table; the last accepts everything.
-METHODS: tuple[Method, ...] = (UnitRounds(), CrewRounds(), TwoMachine(), General())
+METHODS: tuple[Method, ...] = (UnitRounds(), CrewRounds(), TwoMachine(), LotSplit(), General())
 
 
 def choose(shop: Shop) -> tuple[Method, Choice]:

@@ -38,6 +38,8 @@ class Effort:
         Called now and then, from any thread.
     even
         Whether rounds shall hold as equally many operations as possible, where a method has rounds.
+    shortest_piece_s
+        No operation may be cut into a piece shorter than this; 0 for no limit.
     stop
         Set by Ctrl-C; a method then hands back the best it has.
     """
@@ -47,6 +49,7 @@ class Effort:
     workers: int = 0
     seed: int = 0
     even: bool = False
+    shortest_piece_s: int = 0
     report: Callable[[Progress], None] = lambda progress: None
     stop: threading.Event = field(default_factory=threading.Event)
     began: float = field(default_factory=time.monotonic)

@@ -99,7 +99,10 @@ def rounds_to_outcome(shop: Shop, unit: Ints, colour: Ints) -> Outcome:
     starts = shop.work_clock.whole(0, length, int(colour.max()) + 1)
     ends = starts + length
     orders = shop.orders
-    order = order_rounds(colour, shop.operations.job, ends, orders.due_s, orders.priority)
+    over = np.r_[0, ends]  # when the first, second, … round is over, by how many have run
+    order = order_rounds(
+        colour, shop.operations.job, np.ones(len(ends), int), over.__getitem__, orders.due_s, orders.priority
+    )
     place = order.position[colour]
     schedule = Schedule(np.arange(len(shop)), starts[place], ends[place], unit=unit, round=place + 1)
     return Outcome(schedule, remarks=_about_lateness(shop, order))
