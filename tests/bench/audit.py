@@ -1,6 +1,6 @@
 """How long the audit takes: seconds for 10^4 to 10^6 rows, clean, cut into parts, and all wrong.
 
-    python tests/bench/audit.py [most rows]
+python tests/bench/audit.py [most rows]
 """
 
 from __future__ import annotations
