@@ -97,10 +97,10 @@ def _forced_changeovers(shop: Shop, machine: int, operations: Ints, heads: Ints)
         everything = place == len(operations) - 1
         if family not in seen or everything:
             seen.add(family)
-            # Only the whole load begins where the machine begins; later parts may find it in any family.
-            least = max(
-                least, least_changeover(shop, machine, operations[: place + 1], from_start=everything)
-            )
+            # Only the whole load, begun with the shift, meets the machine in its starting family; what comes
+            # later may find it in any, changed while it waited.
+            begins = everything and heads[place] == 0
+            least = max(least, least_changeover(shop, machine, operations[: place + 1], from_start=begins))
         changes[place] = least
     return changes
 

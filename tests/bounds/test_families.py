@@ -77,3 +77,13 @@ def test_each_unit_of_a_group_stands_in_its_first_family_for_nothing() -> None:
 def test_a_shorter_way_round_is_refused() -> None:
     with pytest.raises(ShopError, match="changeover from red to black takes longer than by way of grey"):
         Changeovers(60, {("red", "black"): 90, ("red", "grey"): 10, ("grey", "black"): 10})
+
+
+def test_a_change_made_while_the_machine_waits_costs_nothing() -> None:
+    """One grey order released at 1:00 on a machine set up for red: it is changed before the order comes."""
+    coat = Machine("COAT", family="red")
+    shop = Shop(
+        (coat,), Orders(("J",), release_s=[3600]), Operations([0], [0], [600], family=[2]),
+        families=FAMILIES, changeovers={"COAT": Changeovers(1200)},
+    )  # fmt: skip
+    assert lower_bounds(shop)[0].value_s == 4200
