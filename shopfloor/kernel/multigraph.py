@@ -11,7 +11,17 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-__all__ = ["Folded", "IntArray", "as_columns", "compact", "fold", "folded", "group_nodes", "shuffled"]
+__all__ = [
+    "Folded",
+    "IntArray",
+    "as_column",
+    "as_columns",
+    "compact",
+    "fold",
+    "folded",
+    "group_nodes",
+    "shuffled",
+]
 
 IntArray = NDArray[np.int64]
 
@@ -31,7 +41,7 @@ def as_columns(left: ArrayLike, right: ArrayLike) -> tuple[IntArray, IntArray]:
     ValueError
         If a column is not one-dimensional, holds a number of 2**63 or more, or the lengths differ.
     """
-    columns = _as_column(left, "left"), _as_column(right, "right")
+    columns = as_column(left, "left"), as_column(right, "right")
     if len(columns[0]) != len(columns[1]):
         raise ValueError(
             f"left and right must have one entry an edge each, got {len(columns[0])} and {len(columns[1])}"
@@ -39,7 +49,8 @@ def as_columns(left: ArrayLike, right: ArrayLike) -> tuple[IntArray, IntArray]:
     return columns
 
 
-def _as_column(values: ArrayLike, name: str) -> IntArray:
+def as_column(values: ArrayLike, name: str) -> IntArray:
+    """Return one column as a contiguous int64 array; errors as for `as_columns`."""
     column = np.asarray(values)
     if column.ndim != 1:
         raise ValueError(f"{name} must be one-dimensional, got shape {column.shape}")
