@@ -37,7 +37,7 @@ SETTINGS: dict[str, Setting] = {
 }
 
 # Limits on hostile or mistaken input. Each is enforced where the data enters, with its own fault.
-MAX_FILE_BYTES = 64 * 1024 * 1024
+MAX_FILE_BYTES = 90 * 1024 * 1024
 MAX_ROWS = 1_500_000
 MAX_CELL_CHARACTERS = 1_000
 MAX_NAME_CHARACTERS = 80
