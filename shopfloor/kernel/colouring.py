@@ -25,8 +25,8 @@ The trail argument alone is quadratic. What makes it fast here:
   ends first is the one swapped. Towards the end trails grow long, and the shortest of eight is far shorter.
 - Sets of free colours are the bits of one Python integer a group.
 
-From `FAST_FROM` edges on, and where numba is installed, the same steps run compiled (`fast`): the same
-colours, sooner.
+From `FAST_FROM` edges on, where numba is installed, the same steps run compiled (`fast`): the same colours,
+sooner.
 
 Trails are counted against a budget of `BUDGET` steps an edge. Past it the rows are shuffled again, and after
 `SHUFFLES` orders the colouring starts afresh by halving (`splitting`), whose time is guaranteed.
@@ -44,6 +44,7 @@ References
 
 from __future__ import annotations
 
+import sys
 from importlib import import_module
 from itertools import chain
 from operator import index
@@ -70,8 +71,9 @@ __all__ = [
 
 Kernel = Literal["auto", "plain", "fast"]
 
-#: Edges from which the compiled kernel, where it is installed, repays the half second numba takes to start.
-FAST_FROM = 300_000
+#: Edges from which the compiled kernel, where it is installed, repays the half second that loading it takes.
+#: On this many the plain one needs between a tenth of a second and two seconds, by shape.
+FAST_FROM = 500_000
 #: Colours compared when an alternating path is needed, to swap the shortest of as many paths.
 CANDIDATES = 8
 #: Path steps an edge before an order of rows is given up; random orders have been seen to need 11.
@@ -156,11 +158,12 @@ def colour_with_steps(
 
 
 def fast_kernel(edges: int, kernel: Kernel) -> ModuleType | None:
-    """Return the compiled implementation if it is asked for, or installed and worth its start-up time."""
-    if kernel == "plain" or (kernel == "auto" and edges < FAST_FROM):
+    """Return the compiled implementation if it is asked for, is loaded already, or is worth loading."""
+    name = "shopfloor.kernel.fast"
+    if kernel == "plain" or (kernel == "auto" and edges < FAST_FROM and name not in sys.modules):
         return None
     try:
-        return import_module("shopfloor.kernel.fast")
+        return import_module(name)
     except ImportError:
         if kernel == "fast":
             raise

@@ -45,7 +45,7 @@ def compiled(*signatures: Any) -> Callable[[Compiled], Compiled]:
     def compile_it(function: Compiled) -> Compiled:
         try:
             return numba.njit(list(signatures), cache=True, nogil=True)(function)
-        except RuntimeError:  # numba found neither the package's own nor the user's cache folder writable
+        except (RuntimeError, OSError):  # numba found neither the package's own nor the user's cache folder writable
             return numba.njit(list(signatures), nogil=True)(function)
 
     return compile_it

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import random
+import sys
 from importlib.util import find_spec
 
 import networkx as nx
@@ -255,14 +256,17 @@ def test_folding_keeps_tables_linear():
     assert (graph.left_groups + graph.right_groups) * graph.delta <= 5 * len(left)
 
 
-def test_compiled_kernel_is_for_large_graphs_only(monkeypatch):
+def test_compiled_kernel_is_for_large_graphs_unless_it_is_loaded(monkeypatch):
     asked = []
+    monkeypatch.delitem(sys.modules, "shopfloor.kernel.fast", raising=False)
     monkeypatch.setattr(colouring, "import_module", lambda name: asked.append(name) or colouring)
     assert colouring.fast_kernel(colouring.FAST_FROM - 1, "auto") is None
     assert colouring.fast_kernel(10**9, "plain") is None
     assert not asked
     assert colouring.fast_kernel(colouring.FAST_FROM, "auto") is not None
     assert asked == ["shopfloor.kernel.fast"]
+    monkeypatch.setitem(sys.modules, "shopfloor.kernel.fast", colouring)
+    assert colouring.fast_kernel(1, "auto") is not None
 
 
 def test_without_numba_large_graphs_are_coloured_plainly(monkeypatch):
