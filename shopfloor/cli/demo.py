@@ -8,7 +8,7 @@ from typing import Annotated
 
 import typer
 
-SETS = ("rounds", "mixed", "overload", "faulty")
+SETS = ("rounds", "groups", "crew", "two-machines", "splits", "breaks", "mixed", "overload", "faulty")
 
 
 def demo(

@@ -151,7 +151,7 @@ def test_hostile_names_stay_text_on_every_page(tmp_path: Path) -> None:
 def test_demo_writes_sets_that_plan(tmp_path: Path) -> None:
     said = shopfloor("demo", tmp_path)
     assert said.code == 0
-    for name in ("rounds", "mixed", "overload", "faulty"):
+    for name in ("rounds", "groups", "crew", "splits", "breaks", "mixed", "overload", "faulty"):
         assert (tmp_path / name / "orders.csv").read_bytes() == (DATA / name / "orders.csv").read_bytes()
 
 
