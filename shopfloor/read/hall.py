@@ -35,7 +35,7 @@ _LEVEL = '{ from = "12:00", to = "12:30", heads = 3 }'
 class MachineSaid:
     """One ``[[machine]]``: all but its times, its times as written, and the defaults of its rows.
 
-    `open` is None where nothing is said about opening hours. `heads` and `setup_s` stand for rows that leave
+    `open` is None where nothing is known about opening hours. `heads` and `setup_s` stand for rows that leave
     their columns blank. `places` knows where each key stands.
     """
 
@@ -124,12 +124,19 @@ def _machine(document: Document, table: Table) -> MachineSaid | None:
         machine,
         document.at(*table.path, "id"),
         stretches(document, table, "closed"),
-        stretches(document, table, "open") if "open" in table.values else None,
+        _openings(document, table),
         1 if heads is None else heads,
         document.minutes(table, "setup_minutes") or 0,
         {key: document.at(*table.path, key) for key in table.values},
     )
     return said if name else None
+
+
+def _openings(document: Document, table: Table) -> tuple[Stretch, ...] | None:
+    """Read the opening hours; None where there are none, or where a fault hides some."""
+    before = document.findings.count
+    found = stretches(document, table, "open")
+    return found if "open" in table.values and document.findings.count == before else None
 
 
 def _set_up_only(document: Document, table: Table) -> bool:
