@@ -45,7 +45,10 @@ def compiled(*signatures: Any) -> Callable[[Compiled], Compiled]:
     def compile_it(function: Compiled) -> Compiled:
         try:
             return numba.njit(list(signatures), cache=True, nogil=True)(function)
-        except (RuntimeError, OSError):  # numba found neither the package's own nor the user's cache folder writable
+        except (
+            RuntimeError,
+            OSError,
+        ):  # neither the package's own cache folder nor the user's can be written
             return numba.njit(list(signatures), nogil=True)(function)
 
     return compile_it
