@@ -13,7 +13,7 @@ from tests.kernel.graphs import multigraphs, random_regular
 @given(graph=multigraphs(least=1))
 @settings(max_examples=100, deadline=None)
 def test_halves_are_equal_at_every_node(graph):
-    """H. N. Gabow, Int. J. Computer and Information Sciences 5 (1976) 345-355; degrees made even by doubling."""
+    """H. N. Gabow, Int. J. Comp. Inf. Sci. 5 (1976) 345-355; doubling makes degrees even."""
     left, right = (np.repeat(np.unique(column, return_inverse=True)[1], 2) for column in graph)
     picked = euler_halves(left, right)
     for column in (left, right):
