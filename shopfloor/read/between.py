@@ -100,7 +100,11 @@ def _between(
         return BetweenSaid(build(between, pairs), place, tuple(sides))
     except ShopError as error:  # the home of the rule is the model
         problem, _, advice = str(error).partition("; ")
-        document.findings.fault(place, "way-round-shorter", name, problem=problem, advice=advice)
+        if "between" in table.values:
+            document.findings.fault(place, "way-round-shorter", name, problem=problem, advice=advice)
+        else:
+            at = document.at(*table.path, "between")
+            document.findings.fault(at, "between-missing", problem=problem)
         return BetweenSaid(build(0, {}), place, tuple(sides))
 
 

@@ -8,8 +8,8 @@ from shopfloor.model.feasible import Impossible, beyond_shift, impossible
 from shopfloor.model.shop import Ints, Shop
 from shopfloor.read.columns import Sheet
 from shopfloor.read.rules import count_of
-from shopfloor.read.times import TIME_COLUMNS
 
+_TIMES = ("minutes", "quantity", "minutes_each")
 _COLUMNS = {"too-few-heads": ("heads",), "longer-than-heads-stay": ("heads",), "never-open-again": ()}
 
 
@@ -27,9 +27,7 @@ def report_impossible(sheet: Sheet, shop: Shop, rows: Ints) -> Ints:
 
     def add(one: Impossible) -> None:
         row = int(rows[one.operation])
-        names = [
-            name for name in _COLUMNS.get(one.rule, TIME_COLUMNS) if name in sheet and sheet[name].given[row]
-        ]
+        names = [name for name in _COLUMNS.get(one.rule, _TIMES) if name in sheet and sheet[name].given[row]]
         name = names[0] if names else "machine"
         place, text = sheet.place(row, name), sheet.text(row, name)
         sheet.findings.fault(place, one.rule, text, problem=one.problem, advice=one.advice)

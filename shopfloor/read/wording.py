@@ -184,6 +184,10 @@ RULES: dict[str, Rule] = {
         "give only the pairs that differ from between",
     ),
     "way-round-shorter": Rule("contradicts itself: {problem}", "{advice}"),
+    "between-missing": Rule(
+        "is missing, so pairs that are not listed take no time, and {problem}",
+        "add between: the minutes of every pair that is not listed",
+    ),
     "crew-option-unusable": Rule("is no number of people", "give a whole number from 0 to {limit:,}"),
     "crew-option-taken": Rule(
         "would make a crew of the name 'crew', which {floor} has already", "rename the crew there"

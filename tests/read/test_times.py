@@ -131,3 +131,55 @@ def test_products_are_exact(pairs: list[tuple[int, int]]) -> None:
     rows = [f"{pieces},{each // 100}.{each % 100:02d}" for pieces, each in pairs]
     seconds = shop_of(table("quantity,minutes_each", *rows)).operations.seconds.tolist()
     assert seconds == [(2 * 6 * pieces * each + 10) // 20 for pieces, each in pairs]
+
+
+# ---- set-up -----------------------------------------------------------------------------------------
+
+BENCH = "[[machine]]\nid = 'BALANCE'\nsetup_minutes = 10\n[[machine]]\nid = 'WASH'\n"
+
+
+def test_set_up_comes_on_top_of_the_run_time() -> None:
+    shop = shop_of("order,machine,minutes,setup_minutes\nA,M,30,5\nB,M,30,0:07:30\nC,M,30,\nD,M,30,0\n")
+    assert shop.operations.seconds.tolist() == [2100, 2250, 1800, 1800]
+    assert shop.operations.setup_s.tolist() == [300, 450, 0, 0]
+
+
+def test_a_blank_set_up_takes_that_of_its_machine_and_zero_is_none() -> None:
+    rows = "A,BALANCE,30,\nB,BALANCE,30,0\nC,BALANCE,30,20\nD,WASH,30,\n"
+    shop = shop_of("order,machine,minutes,setup_minutes\n" + rows, shop=BENCH)
+    assert shop.operations.setup_s.tolist() == [600, 0, 1200, 0]
+    assert shop.operations.seconds.tolist() == [2400, 1800, 3000, 1800]
+    without = shop_of("order,machine,minutes\nA,BALANCE,30\nB,WASH,30\n", shop=BENCH)
+    assert without.operations.setup_s.tolist() == [600, 0]
+
+
+def test_set_up_comes_on_top_of_a_product_too() -> None:
+    shop = shop_of("order,machine,quantity,minutes_each,setup_minutes\nA,M,4,5,10\n")
+    assert (shop.operations.seconds.tolist(), shop.operations.setup_s.tolist()) == ([1800], [600])
+
+
+def test_rounds_with_a_set_up_are_no_longer_all_one_round() -> None:
+    assert shop_of("order,machine,setup_minutes\nA,M,\nB,M,0\n").unit_rounds
+    shop = shop_of("order,machine\nA,BALANCE\nB,WASH\n", shop=BENCH)
+    assert not shop.unit_rounds
+    assert shop.operations.seconds.tolist() == [2400, 1800]
+
+
+def test_a_set_up_is_not_below_zero_and_is_rounded_aloud() -> None:
+    assert texts_of("order,machine,minutes,setup_minutes\nA,M,30,-5\nB,M,30,soon\nC,M,30,600000\n") == [
+        "orders.csv row 2, column setup_minutes: '-5' is below zero; write 0, or minutes such as 10, or h:mm "
+        "such as 0:10",
+        "orders.csv row 3, column setup_minutes: 'soon' is no time; "
+        "write minutes such as 30 or 12.5, or h:mm such as 0:30",
+        "orders.csv row 4, column setup_minutes: '600000' is longer than 525,600 minutes; "
+        "correct it, or divide the order",
+    ]
+    found = reading("order,machine,minutes,setup_minutes\nA,M,30,0.51\nB,M,30,0.004\n")
+    assert found.shop.operations.setup_s.tolist() == [31, 0]
+    assert [(notice.rule, notice.text()) for notice in found.notices] == [
+        (
+            "setup-rounded",
+            "orders.csv: 2 set-ups are rounded to the nearest whole second; the first, in row 2, is 30.6 s, "
+            "taken as 31 s; nothing to do unless a second matters",
+        )
+    ]
