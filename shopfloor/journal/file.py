@@ -20,11 +20,12 @@ from shopfloor.journal.errors import JournalError
 
 BUSY_S = 30.0  # how long a recorder waits for others before giving up
 
+_RIGHTS = "ask for the right to, or copy the file elsewhere"
 _REASONS = {
     "SQLITE_FULL": "the disk is full; make room, then record this again",
-    "SQLITE_READONLY": "you may not write there; ask for the right to, or copy the file elsewhere",
-    "SQLITE_READONLY_DIRECTORY": "you may not write into its folder; ask for the right to",
-    "SQLITE_PERM": "you may not write there; ask for the right to",
+    "SQLITE_READONLY": f"you may not write there; {_RIGHTS}",
+    "SQLITE_READONLY_DIRECTORY": f"you may not write into its folder; {_RIGHTS}",
+    "SQLITE_PERM": f"you may not write there; {_RIGHTS}",
     "SQLITE_CANTOPEN": "it, or its folder, cannot be opened; check the rights of both",
     "SQLITE_BUSY": f"another program has kept it in use for {BUSY_S:.0f} s; try again",
     "SQLITE_LOCKED": f"another program has kept it in use for {BUSY_S:.0f} s; try again",
@@ -141,9 +142,12 @@ def _look(path: Path) -> None:
 def _connect(path: Path, write: bool, busy_s: float) -> sqlite3.Connection:
     def opened(how: str) -> sqlite3.Connection:
         uri = f"{path.resolve().as_uri()}?{how}"
-        return sqlite3.connect(uri, uri=True, timeout=busy_s, isolation_level=None)
+        connection = sqlite3.connect(uri, uri=True, timeout=busy_s, isolation_level=None)
+        connection.execute(f"PRAGMA query_only = {not write:d}")
+        return connection
 
-    connection = opened("mode=rw" if write else "mode=ro")
+    # Also to read: only who may write can tidy up the log that SQLite keeps beside the file.
+    connection = opened("mode=rw")
     if write:
         return connection
     try:

@@ -63,8 +63,11 @@ class Lookup:
     def corrector(self, seq: int) -> Event | None:
         """Return the entry that counts and corrects entry `seq`, if there is one."""
         for event in self._events("WHERE corrects = ? AND corrects > 0", seq):
-            if self.counts(event.seq):
+            by = self.corrector(event.seq)
+            if by is None:
                 return event
+            if by.kind is not Kind.WITHDRAWN:
+                return by  # the correction was replaced, not taken back
         return None
 
     def counts(self, seq: int) -> bool:
@@ -130,10 +133,9 @@ class Lookup:
 
     def machine_named(self, text: str) -> str | None:
         """Return the machine of that name, or the only one that differs from it by case alone."""
-        exact = self._ask(
-            "SELECT DISTINCT source FROM visit WHERE machine = ? COLLATE NOCASE AND machine = ?", text, text
-        )
-        if any(self.counts(row[0]) for row in exact):
+        query = "SELECT source FROM visit WHERE machine = ? COLLATE NOCASE AND machine = ? LIMIT 1"
+        row = self._ask(query, text, text).fetchone()
+        if row is not None and self.counts(row[0]):  # nearly always; the rest looks at every visit there is
             return text
         rows = self._ask("SELECT DISTINCT machine, source FROM visit WHERE machine = ? COLLATE NOCASE", text)
         return _only(text, {name for name, source in rows if self.counts(source)})

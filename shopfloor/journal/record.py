@@ -58,6 +58,8 @@ class Writer:
         """
         entry = self._named(checked(given))
         at_s, notes, refusals = self._time(index, entry)
+        if not self._by.accept and any(one.rule == "clock-back" for one in refusals):
+            return refusals  # what else is wrong may follow from the wrong time
         known = self._known(index, entry, at_s)
         if isinstance(known, Recorded | Refusal):
             return known if isinstance(known, Recorded) else [known]
@@ -85,7 +87,7 @@ class Writer:
         machine = self._machine(entry.machine)
         data = dict(entry.data)
         if "operations" in data:
-            data["operations"] = [[self._machine(name), seconds] for name, seconds in data["operations"]]
+            data["operations"] = [[*self._numbered(name), seconds] for name, seconds in data["operations"]]
         return replace(entry, order=order, machine=machine, data=data)
 
     def _machine(self, name: str) -> str:
@@ -169,15 +171,14 @@ class Writer:
         """Return the operations that an order added or changed brings."""
         found: list[Piece] = []
         known = self._lookup.visits(entry.order) if entry.kind is Kind.CHANGED else {}
-        for name, seconds in entry.data.get("operations", ()):
-            machine, number = self._numbered(name)
+        for machine, number, seconds in entry.data.get("operations", ()):
             pieces = sorted(key.piece for key in known if key.machine == machine)
             if entry.kind is Kind.CHANGED and not number:
                 if len(pieces) > 1:
                     words = {"order": entry.order, "machine": machine, "last": len(pieces)}
                     return refusal(index, "piece-needed", **words)
                 number = pieces[0] if pieces else 0
-            if not number:
+            if not number:  # a further operation
                 number = 1 + sum(one.key.machine == machine for one in found)
             key = Key(entry.order, machine, number)
             unit = known[key][1].unit if key in known else 1
@@ -185,10 +186,11 @@ class Writer:
         return found
 
     def _numbered(self, name: str) -> tuple[str, int]:
-        """Take `CMM:2` apart, unless that is the name of a machine."""
+        """Take `CMM:2` apart, unless that is the name of a machine; 0 stands for no number."""
         machine, colon, number = name.rpartition(":")
-        if not colon or not number.isdecimal() or self._lookup.machine_named(name) == name:
-            return name, 0
+        known = self._lookup.machine_named(name)
+        if known is not None or not colon or not number.isdecimal():
+            return known or name, 0
         return self._machine(machine), int(number)
 
     # ---- judging and writing ----------------------------------------------------------------------

@@ -160,7 +160,7 @@ class Judge:
             found += self._visit(index, entry, list(visits))
         if machine and entry.unit and not found and entry.unit > (units := self.lookup.units(machine)):
             found.append(refusal(index, "unit-unknown", machine=machine, unit=entry.unit, last=units))
-        for name, _ in entry.data.get("operations", ()):
+        for name, _, _ in entry.data.get("operations", ()):
             if not self._machine_known(name):
                 near = self._nearest(name, "machine", "order_id")
                 found.append(refusal(index, "machine-unknown", machine=name, nearest=near))

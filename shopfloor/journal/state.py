@@ -2,7 +2,8 @@
 
 Events are taken in order of the time at which things happened, not of their arrival; among equal times, in
 order of recording. An event counts unless one that counts corrects it, so that a correction leaves
-everything as if the mistake had never been made, and striking out a correction brings the mistake back.
+everything as if the mistake had never been made, and striking out a correction brings the mistake back. What
+replaces a correction corrects what that corrected.
 """
 
 from __future__ import annotations
@@ -31,15 +32,23 @@ MINIMUM_LEFT_S = 60  # work that goes on longer than planned is taken to need th
 def counting(events: Iterable[Event]) -> list[Event]:
     """Return the events that count, in order of time and place. O(n log n)."""
     listed = list(events)
-    correctors: dict[int, list[int]] = defaultdict(list)
+    correctors: dict[int, list[Event]] = defaultdict(list)
     for event in listed:
         if event.corrects:
-            correctors[event.corrects].append(event.seq)
-    # Whoever corrects was recorded later, so from the last back every answer needed is there already.
+            correctors[event.corrects].append(event)
     struck: set[int] = set()
+    replaced: set[int] = set()  # struck, but with a successor that corrects what it corrected
+
+    def holds(event: Event) -> bool:
+        return event.seq not in struck or event.seq in replaced
+
+    # Whoever corrects was recorded later, so from the last back every answer needed is there already.
     for seq in sorted(correctors, reverse=True):
-        if any(other not in struck for other in correctors[seq]):
+        held = [event for event in correctors[seq] if holds(event)]
+        if held:
             struck.add(seq)
+        if any(event.kind is not Kind.WITHDRAWN for event in held):
+            replaced.add(seq)
     return sorted((event for event in listed if event.seq not in struck), key=lambda event: event.moment)
 
 

@@ -55,7 +55,10 @@ def _counts(event: Event) -> str:
 
 
 def _order(event: Event, say: Say) -> str:
-    parts = [f"{cut(name, NAME)} {duration(seconds)}" for name, seconds in event.data.get("operations", ())]
+    parts = [
+        f"{cut(name, NAME)}{f' (piece {piece})' if piece > 1 else ''} {duration(seconds)}"
+        for name, piece, seconds in event.data.get("operations", ())
+    ]
     for name in ("release", "due"):
         if f"{name}_s" in event.data:
             parts.append(f"{name} {say(event.data[f'{name}_s'])}")
