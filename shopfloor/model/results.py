@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from html import escape
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
@@ -190,6 +191,27 @@ class Plan:
             for index in (finish > orders.due_s).nonzero()[0]
         ]
         return sorted(late, key=lambda row: (-row.late_s, row.order))
+
+    def _repr_html_(self) -> str:
+        """Return the summary that notebooks show; `gantt_figure(plan)` draws the plan itself."""
+        say = self.shop.clock.say
+        bound = self.bounds[0].sentence if self.bounds else "There is nothing to do."
+        late = ", ".join(
+            f"{row.order} (due {say(row.due_s)}, ends {say(row.finish_s)})" for row in self.late_orders()
+        )
+        fits = {None: "the shift's end is not known", True: "yes", False: "no"}[self.fits_shift]
+        rows = {
+            "Ends": say(self.makespan_s)
+            + (", proved: nothing can end earlier" if self.proved_optimal else ""),
+            "Bound": bound,
+            "Method": self.choice.name,
+            "Fits the shift": fits,
+            "Late": late or "none",
+        }
+        cells = "".join(
+            f"<tr><th>{escape(name)}</th><td>{escape(text)}</td></tr>" for name, text in rows.items()
+        )
+        return f"<table>{cells}</table><p>This is a plan, not a permit: isolate and lock out first.</p>"
 
     def to_frame(self) -> pd.DataFrame:
         """Return the assignments as a pandas table with the columns of plan.csv, and seconds beside."""
