@@ -41,13 +41,17 @@ class Draft:
     inputs: tuple[tuple[str, str], ...] = ()
     shift_known: bool = True
     machines_known: bool = True
+    crews_known: bool = True
 
     def on(self, clock: Clock | None, shift_end_s: int | None, findings: Findings) -> Floor:
-        """Return the floor with its times on the clock; those that cannot be used become faults.
+        """Return the floor with its times on the clock; times and names that cannot be used become faults.
 
         Without a clock, because the shift itself is in doubt, times are left out: one
         fault shall not make many.
         """
+        check_names(self.machines, self.crews, self.crews_known, findings)
+        if self.machines and self.machines_known:
+            report_unknown_machines(self.betweens, [said.machine.id for said in self.machines], findings)
         transport = self.betweens.transport
         pauses = apart(timed(self.breaks, clock, findings), "breaks-overlap", findings)
         return Floor(
@@ -152,9 +156,6 @@ def read_floor(source: Readable, findings: Findings, *, name: str | None = None)
     machines, machines_known = read_machines(document)
     crews, crews_known = read_crews(document)
     betweens = read_betweens(document)
-    check_names(machines, crews, crews_known, findings)
-    if machines and machines_known:
-        report_unknown_machines(betweens, [said.machine.id for said in machines], findings)
     return Draft(
         taken.name,
         shift,
@@ -166,6 +167,7 @@ def read_floor(source: Readable, findings: Findings, *, name: str | None = None)
         ((taken.name, taken.sha256),),
         shift_known,
         machines_known,
+        crews_known,
     )
 
 
