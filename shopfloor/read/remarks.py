@@ -7,7 +7,7 @@ from collections.abc import Iterable
 
 import numpy as np
 
-from shopfloor.model.shop import NO_FAMILY, Ints, Machine, Shop
+from shopfloor.model.shop import Ints, Machine, Shop
 from shopfloor.read.between import notice_unused_families, notice_unvisited
 from shopfloor.read.columns import COLUMNS, Sheet
 from shopfloor.read.floor import Floor
@@ -81,10 +81,11 @@ def notice_hall(floor: Floor, shop: Shop, findings: Findings) -> None:
     set_up = np.bincount(operations.machine, operations.setup_s, len(shop.machines)) > 0
     visited = np.bincount(operations.machine, minlength=len(shop.machines)) > 0
     places = {said.machine.id: said.places for said in floor.draft.machines}
-    pairs = np.unique(np.stack([operations.machine, operations.family]), axis=1)
+    width = len(shop.families) + 1  # a last place for no family, which is -1
+    pairs = np.unique(operations.machine * width + operations.family % width)
     for index, machine in enumerate(shop.machines):
-        has = pairs[1][(pairs[0] == index) & (pairs[1] != NO_FAMILY)]
-        families = [shop.families[family] for family in has.tolist()]
+        first, last = np.searchsorted(pairs, [index * width, (index + 1) * width - 1])
+        families = [shop.families[pair % width] for pair in pairs[first:last].tolist()]
         said, mine = floor.draft.betweens.changeovers.get(machine.id), places.get(machine.id, {})
         if said is not None and visited[index]:
             notice_unused_families(said, machine.id, families, findings)

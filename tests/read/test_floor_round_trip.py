@@ -22,7 +22,17 @@ CLOCKS = (
     Clock(datetime(2026, 12, 31, 22, 15, 30), ZoneInfo("Europe/London")),
     Clock(datetime(2026, 3, 28, 22), ZoneInfo("Europe/London")),  # the night before the clocks go forward
 )
-PARTS = "clock shift_end_s breaks machines crews changeovers transport heads setup_s".split()
+PARTS = [
+    "clock",
+    "shift_end_s",
+    "breaks",
+    "machines",
+    "crews",
+    "changeovers",
+    "transport",
+    "heads",
+    "setup_s",
+]
 _names = st.text(st.sampled_from("aZ7 .-_'\"\\#[]=é漢"), min_size=1, max_size=5).map(str.strip).filter(bool)
 _reasons = st.sampled_from(["", "tea", 'a "long" one, # no remark'])
 
