@@ -93,7 +93,7 @@ def notice_hall(floor: Floor, shop: Shop, findings: Findings) -> None:
             if said is None:
                 place = mine["family"]
                 findings.notice(place, "family-without-changeover", machine.family, machine=machine.id)
-            elif machine.family not in {*families, *(side.name for side in said.sides)}:
+            elif visited[index] and machine.family not in {*families, *(side.name for side in said.sides)}:
                 near = Suggestions(families).hint(machine.family)
                 findings.notice(
                     mine["family"], "family-idle", machine.family, machine=machine.id, nearest=near

@@ -192,6 +192,7 @@ def test_the_family_at_the_start_may_be_yesterdays_but_is_compared_with_todays()
     ivory = f"pairs = [{pair('ivory', 'red', 5)}]\n"
     assert [n.rule for n in reading(ORDERS, shop=coat.format("'red'")).notices] == []
     assert "family-idle" not in [n.rule for n in reading(ORDERS, shop=coat.format("'ivory'") + ivory).notices]
+    assert reading("order,machine\nA,WASH\n", shop=coat.format("'rde'")).notices == ()
     (notice,) = reading(ORDERS, shop=coat.format("'rde'")).notices
     assert (notice.rule, notice.text()) == (
         "family-idle",

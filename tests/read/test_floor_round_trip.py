@@ -165,6 +165,7 @@ def test_a_floor_that_is_written_reads_back_the_same(floor: Floor) -> None:
     read = load_floor(written(floor).encode())
     for name in PARTS:
         assert getattr(read, name) == getattr(floor, name), name
+    assert read.setup_s == floor.setup_s
 
 
 @patient
