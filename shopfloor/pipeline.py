@@ -16,7 +16,7 @@ from shopfloor.model.stated import state
 from shopfloor.openshop.choose import choose
 from shopfloor.openshop.method import Effort, Progress
 
-HELP_UP_TO = 200_000  # operations; beyond, taking the bounds a dozen times more would take seconds
+HELP_UP_TO = 50_000  # operations; beyond, taking the bounds twenty times more would take seconds
 
 
 @dataclass(frozen=True, slots=True)

@@ -14,7 +14,9 @@ from shopfloor.settings import SETTINGS
 if TYPE_CHECKING:
     from shopfloor.model.results import Plan
 
-WORKBOOK_UP_TO = 50_000  # rows; beyond, a workbook takes longer to write than to plan: plan.csv serves
+# Rows of a plan; beyond, plan.csv serves: a workbook takes longer to write than the plan to make, and
+# nobody prints a hundred thousand sheets.
+WORKBOOK_UP_TO, SHEETS_UP_TO = 50_000, 100_000
 
 TIME_LIMIT: Any = SETTINGS["time-limit"].default
 WORKERS: Any = SETTINGS["workers"].default
@@ -112,8 +114,9 @@ def _write(
         "plan.json": plan_json(made),
         "plan.csv": plan_csv(made),
         "gantt.html": gantt_page(made, stamp=stamp),
-        "dispatch.html": dispatch_page(made, stamp=stamp, codes=codes),
     }
+    if len(made.schedule) <= SHEETS_UP_TO:
+        files["dispatch.html"] = dispatch_page(made, stamp=stamp, codes=codes)
     if xlsx and len(made.schedule) <= WORKBOOK_UP_TO:
         from shopfloor.render.workbook import plan_xlsx
 
