@@ -77,6 +77,11 @@ def test_a_floor_read_once_serves_many_orders() -> None:
         ("a = 1\nb = \n", 2, "'b =' is not valid TOML: invalid value; correct the line"),
         ("a = 1\na = 2\n", 2, "'a = 2' is not valid TOML: cannot overwrite a value; correct the line"),
         ("a = " + "[" * 5000, 0, "is not valid TOML: nested too deeply; correct the line"),
+        (
+            "[shift]\n" + "a." * 100_000 + "a = 1\n",
+            2,
+            f"'{'a.' * 19}a…' is not valid TOML: nested too deeply; correct the line",
+        ),
     ],
 )
 def test_what_is_no_toml_is_shown_with_its_line(text: str, line: int, said: str) -> None:
