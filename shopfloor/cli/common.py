@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import json
 import sys
-from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated, Any, NoReturn
 
@@ -60,10 +59,7 @@ def read(
     from shopfloor.read.orders import load
 
     source: Any = sys.stdin.buffer if orders == "-" else Path(orders)
-    reading = load(source, shop=shop, start=start, end=end, round_minutes=round_minutes)
-    if split:
-        reading = replace(reading, shop=reading.shop.with_splits())
-    return reading if crew is None else replace(reading, shop=reading.shop.with_crew(crew))
+    return load(source, shop=shop, start=start, end=end, round_minutes=round_minutes, crew=crew, split=split)
 
 
 def fault_data(fault: Fault) -> dict[str, Any]:

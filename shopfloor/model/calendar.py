@@ -162,8 +162,9 @@ def duration(seconds: int) -> str:
     hours, rest = divmod(seconds, HOUR)
     minutes, odd = divmod(rest, MINUTE)
     if hours:
-        text = f"{hours} h {minutes:02d}" if minutes else f"{hours} h"
-        return f"{text} min {odd} s" if odd else text
+        if odd:
+            return f"{hours} h {minutes} min {odd} s"
+        return f"{hours} h {minutes:02d}" if minutes else f"{hours} h"
     if minutes:
         return f"{minutes} min {odd} s" if odd else f"{minutes} min"
     return f"{odd} s"

@@ -12,7 +12,20 @@ from shopfloor.model.calendar import minutes_exact
 from shopfloor.model.shop import NO_DUE, NO_STEP, Bools, Shop
 from shopfloor.render.tables import harmless
 
-COLUMNS = ("order", "machine", "minutes", "release", "due", "priority", "step", "splittable", "heads", "note")
+COLUMNS = (
+    "order",
+    "machine",
+    "minutes",
+    "release",
+    "due",
+    "priority",
+    "step",
+    "splittable",
+    "heads",
+    "family",
+    "setup_minutes",
+    "note",
+)
 
 
 def orders_csv(shop: Shop, chosen: Bools, reasons: Mapping[str, str] | None = None) -> str:
@@ -38,16 +51,19 @@ def orders_csv(shop: Shop, chosen: Bools, reasons: Mapping[str, str] | None = No
 def _row(shop: Shop, index: int) -> dict[str, str]:
     operation, columns = shop.operation(index), shop.operations
     job = shop.orders[operation.job]
-    heads = int(columns.heads[index])
+    machine = shop.machines[operation.machine]
     return {
         "order": operation.order,
         "machine": operation.machine_id,
-        "minutes": "" if shop.unit_rounds else minutes_exact(operation.seconds),
+        "minutes": "" if shop.unit_rounds else minutes_exact(operation.seconds - operation.setup_s),
         "release": shop.clock.write(job.release_s) if job.release_s else "",
         "due": "" if int(shop.orders.due_s[operation.job]) == NO_DUE else shop.clock.write(job.due_s or 0),
         "priority": "" if job.priority == 1 else f"{job.priority:g}",
         "step": "" if columns.step[index] == NO_STEP else str(operation.step),
         "splittable": "yes" if operation.splittable else "",
-        "heads": "" if heads == 1 else str(heads),
+        # Written even when 0 or 1, since a blank means the machine's own default.
+        "heads": str(operation.heads) if machine.crew is not None else "",
+        "family": operation.family,
+        "setup_minutes": minutes_exact(operation.setup_s) if shop.operations.setup_s.any() else "",
         "note": operation.note,
     }
