@@ -11,6 +11,7 @@ from types import TracebackType
 from zoneinfo import ZoneInfo
 
 from shopfloor.journal import file, lookup, moments
+from shopfloor.journal.collector import collector_held
 from shopfloor.journal.entries import Entry
 from shopfloor.journal.errors import JournalError, Refusal, RefusedError
 from shopfloor.journal.pieces import IssuedPlan
@@ -179,7 +180,7 @@ class Journal:
 
     def events(self) -> list[Event]:
         """Return every entry in order of recording; plans come with their pieces. O(n)."""
-        with file.in_words(self.path, "read"):
+        with file.in_words(self.path, "read"), collector_held():
             return lookup.all_events(self._connection)
 
     def state(self, at_s: int | None = None, *, minimum_left_s: int = MINIMUM_LEFT_S) -> ShiftState:

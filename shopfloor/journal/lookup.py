@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import json
 import sqlite3
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import replace
 from typing import Any, NamedTuple
 
@@ -225,44 +225,13 @@ def _only(text: str, names: set[str]) -> str | None:
     return next(iter(names)) if len(names) == 1 else None
 
 
-def event_of(row: Any) -> Event:
-    """Return the event that a row of the table `event` holds."""
-    (
-        seq,
-        name,
-        kind,
-        at_s,
-        at,
-        who,
-        order,
-        machine,
-        piece,
-        unit,
-        corrects,
-        place,
-        entered,
-        entered_s,
-        *rest,
-    ) = row
-    accepted, data = rest
-    return Event(
-        seq,
-        name,
-        Kind(kind),
-        at_s,
-        at,
-        who,
-        order,
-        machine,
-        piece,
-        unit,
-        corrects,
-        place,
-        entered,
-        entered_s,
-        tuple(accepted.split(",")) if accepted else (),
-        {} if data == "{}" else json.loads(data),
-    )
+def event_of(row: Any, data: Mapping[str, Any] | None = None) -> Event:
+    """Return the event that a row of the table `event` holds; `data` is its last cell, if read already."""
+    *facts, accepted, text = row
+    facts[2] = Kind(facts[2])
+    facts.append(tuple(accepted.split(",")) if accepted else ())
+    facts.append(json.loads(text) if data is None else data)
+    return Event(*facts)
 
 
 def piece_of(row: Any) -> Piece:
@@ -279,11 +248,12 @@ def all_events(connection: sqlite3.Connection) -> list[Event]:
     )
     for source, *row in rows:
         bring.setdefault(source, []).append(piece_of(row))
-    events = map(event_of, connection.execute(f"SELECT {_COLUMNS} FROM event ORDER BY seq"))
-    if not bring:
-        return list(events)
-    return [_with(event, bring.get(event.seq)) for event in events]
-
-
-def _with(event: Event, pieces: list[Piece] | None) -> Event:
-    return event if pieces is None else replace(event, pieces=tuple(pieces))
+    known: dict[str, Mapping[str, Any]] = {}  # most entries say one of a few things
+    events: list[Event] = []
+    for row in connection.execute(f"SELECT {_COLUMNS} FROM event ORDER BY seq"):
+        data = known.get(row[-1])
+        if data is None:
+            data = known[row[-1]] = json.loads(row[-1])
+        event = event_of(row, data)
+        events.append(replace(event, pieces=tuple(bring[event.seq])) if event.seq in bring else event)
+    return events

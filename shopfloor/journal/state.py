@@ -10,7 +10,9 @@ from __future__ import annotations
 
 from collections import defaultdict
 from collections.abc import Iterable, Mapping, Sequence
+from typing import Any
 
+from shopfloor.journal.collector import collector_held
 from shopfloor.journal.outages import Outages
 from shopfloor.journal.walk import WORK, Phase, Walk
 from shopfloor.model.actuals import (
@@ -72,10 +74,11 @@ def state(
     ShiftState
         O(n log n) for n events and planned operations together.
     """
-    listed = [event for event in counting(events) if event.kind is not Kind.WITHDRAWN]
-    if at_s is None:
-        at_s = listed[-1].at_s if listed else 0
-    return _Replay([event for event in listed if event.at_s <= at_s], at_s, minimum_left_s).state()
+    with collector_held():
+        listed = [event for event in counting(events) if event.kind is not Kind.WITHDRAWN]
+        if at_s is None:
+            at_s = listed[-1].at_s if listed else 0
+        return _Replay([event for event in listed if event.at_s <= at_s], at_s, minimum_left_s).state()
 
 
 class _Replay:
@@ -97,7 +100,8 @@ class _Replay:
     def _take(self, event: Event) -> None:
         kind = event.kind
         if kind in WORK:
-            walk = self.walks.get(event.key)
+            key: Any = (event.order, event.machine, event.piece)  # equal to its Key, and sooner made
+            walk = self.walks.get(key)
             if walk is None:
                 walk = self.walks[event.key] = Walk()
             walk.step(event)

@@ -388,9 +388,9 @@ def test_striking_out_a_strike_brings_the_entry_back_if_there_is_room(book: Jour
 
 def test_the_last_entry_of_a_person_is_found_for_undoing(book: Journal) -> None:
     put(book, replace(STARTED, who="Ann"), replace(machine("down", "CMM", 6, reason="x"), who="Bo"))
-    assert (book.to_undo().seq, book.to_undo("Ann").seq) == (3, 2)  # type: ignore[union-attr]
+    assert (book.to_undo().seq, book.to_undo("Ann").seq) == (3, 2)
     put(book, strike(3))
-    assert book.to_undo().seq == 2  # type: ignore[union-attr]
+    assert book.to_undo().seq == 2
     put(book, strike(2))
     assert book.to_undo() is None
 
@@ -505,7 +505,7 @@ def test_another_plan_is_issued_into_the_same_shift(book: Journal) -> None:
 
 
 def test_a_plan_of_another_shift_is_refused(book: Journal) -> None:
-    other = issued(clock=Clock(CLOCK.start.replace(day=3)), sha256="1" * 64)  # type: ignore[union-attr]
+    other = issued(clock=Clock(CLOCK.start.replace(day=3)), sha256="1" * 64)
     with pytest.raises(JournalError) as caught:
         book.issue(other, LATE)
     assert str(caught.value) == (

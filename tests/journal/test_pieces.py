@@ -22,15 +22,15 @@ def stated(rows: list[Row], parts: list[tuple[int, int]] | None = None) -> State
     """Return rows of order, machine, start and end as a stated plan on unit 1."""
     cut = parts or [(1, 1)] * len(rows)
     return StatedPlan(
-        row=range(1, len(rows) + 1),  # type: ignore[arg-type]
+        row=range(1, len(rows) + 1),
         order=[row[0] for row in rows],
         machine=[row[1] for row in rows],
-        unit=[1] * len(rows),  # type: ignore[arg-type]
-        start_s=[row[2] for row in rows],  # type: ignore[arg-type]
-        end_s=[row[3] for row in rows],  # type: ignore[arg-type]
-        round=[-1] * len(rows),  # type: ignore[arg-type]
-        part=[part for part, _ in cut],  # type: ignore[arg-type]
-        parts=[parts for _, parts in cut],  # type: ignore[arg-type]
+        unit=[1] * len(rows),
+        start_s=[row[2] for row in rows],
+        end_s=[row[3] for row in rows],
+        round=[-1] * len(rows),
+        part=[part for part, _ in cut],
+        parts=[parts for _, parts in cut],
     )
 
 

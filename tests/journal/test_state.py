@@ -74,7 +74,7 @@ def test_every_prefix_has_a_state_that_hangs_together(listed: list[Entry], minut
 )
 def test_the_order_of_arrival_does_not_matter_where_times_differ(listed: list[Entry], random: object) -> None:
     shuffled = list(listed)
-    random.shuffle(shuffled)  # type: ignore[attr-defined]
+    random.shuffle(shuffled)
     for minute in (None, 30, 60, 130):
         at_s = None if minute is None else minute * MIN
         assert without_places(state(recorded(listed), at_s)) == without_places(

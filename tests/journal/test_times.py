@@ -15,7 +15,7 @@ from tests.journal.floor import MIN, journal, machine, put, work
 def found(*entries: Entry, accept: bool = False, **options: object) -> list[Timing]:
     book = journal()
     put(book, *entries, accept=accept)
-    return timings(book.events(), **options)  # type: ignore[arg-type]
+    return timings(book.events(), **options)
 
 
 START, FINISH = work("started", "TQ-1", "WASH", 5), work("finished", "TQ-1", "WASH", 45)
