@@ -212,7 +212,7 @@ def _runs(graph: Folded) -> tuple[IntArray, list[int], list[int], list[int]]:
     row = pair // graph.right_groups
     ends = pair - row * graph.right_groups
     starts = np.searchsorted(row, np.arange(graph.left_groups + 1))
-    # One Python integer a group instead of one a run: less memory, and trails stay within the processor's cache.
+    # One Python integer a group, not one a run: less memory, and trails stay in the processor's cache.
     names = np.arange(graph.right_groups).astype(object)
     return edge, starts.tolist(), names[ends].tolist(), sizes.tolist()
 
