@@ -4,7 +4,7 @@ The index of apparent tardiness cost (A. P. J. Vepsalainen, T. E. Morton, Manage
 1035-1047): weight over run time, discounted by exp(-slack / (κ × mean run time)); here as a logarithm,
 so that far due times do not vanish. A common deadline joins as a due time of every order, so that a
 plan for due times keeps a makespan in view. To add a rule: one function from :class:`Waiting` to an
-index an operation, and a line where :mod:`shopfloor.openshop.list_rule` lists its runs.
+index an operation, and a line in the grid of :mod:`shopfloor.openshop.due_search`.
 """
 
 from __future__ import annotations
@@ -30,6 +30,7 @@ class Waiting:
     work: Ints  # left of the operation's order, the operation included
     due: Ints  # of the order, FAR if none
     weight: Floats
+    bias: Floats  # of the operation, added to the logarithm of its weight
     usual: float  # mean run time of the shop
 
 
@@ -53,7 +54,7 @@ def apparent_cost(look_ahead: float, flow: float, deadline: int, pull: float) ->
         scale = look_ahead * waiting.usual
         rest = waiting.work - waiting.seconds
         slack = waiting.due - waiting.now - waiting.seconds - flow * rest
-        own = np.log(waiting.weight) - np.maximum(slack, 0.0) / scale
+        own = np.log(waiting.weight) + waiting.bias - np.maximum(slack, 0.0) / scale
         common = np.log(pull) - np.maximum(deadline - waiting.now - waiting.work, 0.0) / scale
         urgency: Floats = np.maximum(own, common) - np.log(waiting.seconds)
         return urgency
@@ -86,10 +87,14 @@ def modified_due(deadline: int) -> Index:
 
 
 class MostUrgent:
-    """A queue that hands out the operation with the highest index; O(waiting operations) each time."""
+    """A queue that hands out the operation with the highest index; O(waiting operations) each time.
 
-    def __init__(self, shop: Shop, index: Index) -> None:
+    `bias` is what :class:`Waiting` calls so, an entry an operation.
+    """
+
+    def __init__(self, shop: Shop, index: Index, bias: Floats | None = None) -> None:
         self._shop, self._index = shop, index
+        self._bias = np.zeros(len(shop)) if bias is None else bias
 
     def attach(self, loop: Dispatch) -> None:
         """Learn the loop whose state the queue reads."""
@@ -135,6 +140,7 @@ class MostUrgent:
                 self._work[jobs],
                 self._due[jobs],
                 self._weight[jobs],
+                self._bias[rows],
                 self._usual,
             )
             operation = int(rows[int(self._index(waiting).argmax())])

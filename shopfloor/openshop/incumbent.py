@@ -58,9 +58,13 @@ class Incumbent:
         self._values: tuple[int, ...] = ()
         self._lock = threading.Lock()
 
+    def measure(self, start: Ints) -> tuple[int, ...]:
+        """Return what a schedule has of each goal; compared as tuples, less is better."""
+        return tuple(MEASURES[goal](self.shop, start) for goal in self.goals)
+
     def offer(self, start: Ints) -> bool:
         """Keep `start` if it is better than what is kept; tell whether it was."""
-        values = tuple(MEASURES[goal](self.shop, start) for goal in self.goals)
+        values = self.measure(start)
         with self._lock:
             if self.start is not None and values >= self._values:
                 return False

@@ -1,9 +1,10 @@
 """List schedules: legal in one pass, near-linear, and often at the bound already.
 
-Each goal has a fixed sequence of runs, the plain rule first; later runs hold machines for tight
-orders (:class:`~shopfloor.openshop.dense.Holds`), place near-bound orders in advance
-(:mod:`shopfloor.openshop.reserve`) or blur their keys at random from the seed. How many are made
-depends on the size of the shop, never on the clock, so that they repeat.
+For the makespan there is a fixed sequence of runs, the plain rule first; later runs hold machines for
+tight orders (:class:`~shopfloor.openshop.dense.Holds`), place near-bound orders in advance
+(:mod:`shopfloor.openshop.reserve`) or blur their keys at random from the seed. For due times a grid
+of rules is tried, and the best of them is then varied (:mod:`shopfloor.openshop.due_search`). How many
+runs are made depends on the size of the shop, never on the clock, so that they repeat.
 """
 
 from __future__ import annotations
@@ -14,12 +15,12 @@ from itertools import cycle, product
 
 from shopfloor.model.shop import Ints, Shop
 from shopfloor.openshop.dense import Chance, Floor, Holds, MostWork, starts
-from shopfloor.openshop.due_rules import Index, MostUrgent, apparent_cost, earliest_due, modified_due
+from shopfloor.openshop.due_search import due_runs
 from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS, Incumbent
 from shopfloor.openshop.reserve import may_reserve, near_bound_orders, reserved_starts
 
-DISPATCHED = 60_000  # operations placed in all the runs for one goal together, if that is several runs
-FEWEST, MOST = 2, 40  # runs for one goal
+# For each goal: operations placed in all its runs together, and the fewest and the most runs.
+BUDGETS = {MAKESPAN: (60_000, 2, 40), TARDINESS: (300_000, 4, 600)}
 RESERVATIONS = 6  # ways tried to place near-bound orders in advance
 
 Run = Callable[[], Ints]
@@ -52,11 +53,9 @@ def list_schedules(
     -------
     Whether every run was made that the size of the shop allows, or the goal was met.
     """
-    if not len(shop):
-        incumbent.offer(shop.operations.seconds.copy())
-        return True
-    allowed = max(FEWEST, min(MOST, DISPATCHED // len(shop)))
-    runs = makespan_runs(shop, target, seed) if goal == MAKESPAN else due_runs(shop, target)
+    placed, fewest, most = BUDGETS[goal]
+    allowed = max(fewest, min(most, placed // max(len(shop), 1)))
+    runs = makespan_runs(shop, target, seed) if goal == MAKESPAN else due_runs(shop, incumbent, target, seed)
     for number, run in zip(range(allowed), runs, strict=False):
         if number and over():
             return False
@@ -88,22 +87,6 @@ def makespan_runs(shop: Shop, target: int, seed: int) -> Iterator[Run]:
         yield partial(_heavy, floor, (seed, number), noise, longest, target, tight)
 
 
-def due_runs(shop: Shop, deadline: int) -> Iterator[Run]:
-    """Yield the runs for weighted tardiness, each keeping a makespan of `deadline` in view."""
-    floor = Floor.of(shop)
-    heaviest = float(shop.orders.priority.max())
-    for tight in (0, 2):
-        for pull, flow, look_ahead in product((1.0, 0.1, 10.0), (1.0, 0.0), (1.0, 3.0)):
-            index = apparent_cost(look_ahead, flow, deadline, pull * heaviest)
-            yield partial(_urgent, shop, floor, index, deadline, tight)
-        yield partial(_urgent, shop, floor, modified_due(deadline), deadline, tight)
-        yield partial(_urgent, shop, floor, earliest_due(deadline), deadline, tight)
-
-
 def _heavy(floor: Floor, chance: Chance, noise: float, longest: float, target: int, tight: int) -> Ints:
     queue = MostWork(chance, noise=noise, longest=longest)
     return starts(floor, queue, Holds(target, tight) if tight else None)
-
-
-def _urgent(shop: Shop, floor: Floor, index: Index, deadline: int, tight: int) -> Ints:
-    return starts(floor, MostUrgent(shop, index), Holds(deadline, tight) if tight else None)
