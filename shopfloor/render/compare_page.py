@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable
 from typing import TYPE_CHECKING
 
 from shopfloor.model.calendar import HOUR
 from shopfloor.render import compare_text as words
 from shopfloor.render.html import care_notice, document, escape, isolate, page_file
+from shopfloor.render.report import table
 from shopfloor.render.text import cut
 
 if TYPE_CHECKING:
@@ -54,29 +55,6 @@ def _shift(clock: Clock) -> str:
     return f"Shift from {clock.start:%Y-%m-%d %H:%M}."
 
 
-def table(head: Sequence[str], rows: Iterable[Sequence[str]], *, left: int = 1) -> str:
-    """Return a table; cells are markup already, those after the first `left` are figures."""
-
-    def kind(place: int) -> str:
-        return "" if place < left else ' class="n"'
-
-    heads = "".join(f'<th scope="col"{kind(place)}>{escape(name)}</th>' for place, name in enumerate(head))
-    lines = (
-        "<tr>"
-        + "".join(
-            f"<td{kind(place)}>{cell}</td>" if place else f'<th scope="row">{cell}</th>'
-            for place, cell in enumerate(row)
-        )
-        + "</tr>"
-        for row in rows
-    )
-    return (
-        f'<div class="scroll"><table><thead><tr>{heads}</tr></thead>\n<tbody>'
-        + "\n".join(lines)
-        + "</tbody></table></div>"
-    )
-
-
 def _sides(found: Comparison, say: Callable[[int], str]) -> str:
     def column(side: Side) -> list[str]:
         proved = "yes" if side.proved else "no"
@@ -105,7 +83,7 @@ def _sides(found: Comparison, say: Callable[[int], str]) -> str:
         "lateness",
     )
     columns = zip(names, column(found.a), column(found.b), strict=True)
-    return table(("", "A", "B"), columns, left=3)
+    return table(("", "A", "B"), columns, texts=(0, 1, 2))
 
 
 def _machines(found: Comparison, say: Callable[[int], str]) -> list[str]:
@@ -125,7 +103,10 @@ def _orders(found: Comparison, say: Callable[[int], str]) -> list[str]:
         order, *cells, late = words.order_cells(row, say)
         mark = f'<span class="late">{escape(late)}</span>' if row.late_after_s else escape(late)
         rows.append([isolate(order), *map(escape, cells), mark])
-    return ["<h2>By order</h2>", table(("Order", "ends A", "ends B", "change", "lateness"), rows)]
+    return [
+        "<h2>By order</h2>",
+        table(("Order", "ends A", "ends B", "change", "lateness"), rows, texts=(0, 4)),
+    ]
 
 
 def _changes(found: Comparison, say: Callable[[int], str]) -> list[str]:
@@ -138,7 +119,10 @@ def _changes(found: Comparison, say: Callable[[int], str]) -> list[str]:
             [isolate(c.row.machine), isolate(c.row.order), escape(words.change_words(c, say))]
             for c in changes[:LISTED]
         )
-        parts += [f"<h2>{title} ({len(changes):,})</h2>", table(("Machine", "Order", "When"), rows, left=3)]
+        parts += [
+            f"<h2>{title} ({len(changes):,})</h2>",
+            table(("Machine", "Order", "When"), rows, texts=(0, 1, 2)),
+        ]
         if len(changes) > LISTED:
             parts.append(f"<p>… and {len(changes) - LISTED:,} more.</p>")
     return parts
