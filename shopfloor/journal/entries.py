@@ -108,7 +108,9 @@ def checked(entry: Entry) -> Entry:
                 name, str(data[name]), "not-wanted", f"says nothing for {entry.kind}", "leave it out"
             )
     for name in ("order", "machine"):
-        _name(name, getattr(entry, name))
+        text = _name(name, getattr(entry, name))
+        if text and entry.kind not in _NAMES[name]:
+            raise EntryError(name, text, "not-wanted", f"says nothing for {entry.kind}", "leave it out")
     _name("who", entry.who)
     _name("id", entry.id)
     for name in ("piece", "unit", "corrects"):
@@ -240,6 +242,11 @@ _MISSING = {
     "operations": "give at least one machine with its minutes, such as CMM=25",
     "text": "give the remark",
     "corrects": "give the number of the entry that is wrong",
+}
+_WORK = frozenset({Kind.STARTED, Kind.STOPPED, Kind.RESUMED, Kind.FINISHED, Kind.LEFT, Kind.REMARK})
+_NAMES = {
+    "order": _WORK | {Kind.ADDED, Kind.CHANGED, Kind.CANCELLED},
+    "machine": _WORK | {Kind.DOWN, Kind.UP},
 }
 _ORDER_DATA = frozenset({"operations", "release_s", "due_s", "priority"})
 # What each kind needs, and which data it may carry.

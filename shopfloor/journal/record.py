@@ -87,7 +87,11 @@ class Writer:
         machine = self._machine(entry.machine)
         data = dict(entry.data)
         if "operations" in data:
-            data["operations"] = [[*self._numbered(name), seconds] for name, seconds in data["operations"]]
+            change = entry.kind is Kind.CHANGED
+            data["operations"] = [
+                [*(self._numbered(name) if change else (self._machine(name), 0)), seconds]
+                for name, seconds in data["operations"]
+            ]
         return replace(entry, order=order, machine=machine, data=data)
 
     def _machine(self, name: str) -> str:
@@ -141,6 +145,11 @@ class Writer:
         """Return `entry` with the piece and the unit that must be meant."""
         if entry.kind not in WORK:
             return entry
+        corrected = self._lookup.by_seq(entry.corrects) if entry.corrects else None
+        if corrected is not None and (corrected.order, corrected.machine) == (entry.order, entry.machine):
+            piece = entry.piece or corrected.piece
+            unit = entry.unit or (corrected.unit if piece == corrected.piece else 0)
+            entry = replace(entry, piece=piece, unit=unit)
         visits = self._lookup.visits(entry.order, entry.machine)
         piece = entry.piece or self._piece_meant(entry, sorted(key.piece for key in visits))
         unit = entry.unit
@@ -169,27 +178,30 @@ class Writer:
 
     def _pieces(self, index: int, entry: Entry) -> list[Piece] | Refusal:
         """Return the operations that an order added or changed brings."""
-        found: list[Piece] = []
+        found: dict[Key, Piece] = {}
         known = self._lookup.visits(entry.order) if entry.kind is Kind.CHANGED else {}
         for machine, number, seconds in entry.data.get("operations", ()):
             pieces = sorted(key.piece for key in known if key.machine == machine)
-            if entry.kind is Kind.CHANGED and not number:
-                if len(pieces) > 1:
-                    words = {"order": entry.order, "machine": machine, "last": len(pieces)}
-                    return refusal(index, "piece-needed", **words)
-                number = pieces[0] if pieces else 0
-            if not number:  # a further operation
-                number = 1 + sum(one.key.machine == machine for one in found)
+            words = {"order": entry.order, "machine": machine, "last": max(pieces, default=0)}
+            if number and number not in pieces:
+                return replace(refusal(index, "piece-unknown", piece=number, **words), final=True)
+            if not number and len(pieces) > 1:
+                return refusal(index, "piece-needed", **words)
+            if not number:  # the only one, or a further operation
+                number = pieces[0] if pieces else 1 + sum(key.machine == machine for key in found)
             key = Key(entry.order, machine, number)
-            unit = known[key][1].unit if key in known else 1
-            found.append(Piece(key, seconds, unit))
-        return found
+            if key in found:
+                raise EntryError(
+                    "operations", machine, "operation-twice", "is given twice", "give each operation once"
+                )
+            found[key] = Piece(key, seconds, known[key][1].unit if key in known else 1)
+        return list(found.values())
 
     def _numbered(self, name: str) -> tuple[str, int]:
         """Take `CMM:2` apart, unless that is the name of a machine; 0 stands for no number."""
         machine, colon, number = name.rpartition(":")
         known = self._lookup.machine_named(name)
-        if known is not None or not colon or not number.isdecimal():
+        if known is not None or not colon or not (number.isdecimal() and 0 < len(number) < 6):
             return known or name, 0
         return self._machine(machine), int(number)
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable, Iterable, Mapping
 from typing import Any
 
@@ -144,12 +145,9 @@ def whole(name: str, text: str) -> int:
 
 
 def _number(name: str, text: str) -> float:
-    try:
-        return float(text.replace(",", "."))
-    except ValueError:
-        raise EntryError(
-            name, text, f"{name}-unusable", "is no number", "write digits such as 2 or 2.5"
-        ) from None
+    if not re.fullmatch(r"[0-9]{1,9}(?:[.,][0-9]{1,9})?", text):
+        raise EntryError(name, text, f"{name}-unusable", "is no number", "write digits such as 2 or 2.5")
+    return float(text.replace(",", "."))
 
 
 def _entry(values: Mapping[str, Any]) -> Entry:

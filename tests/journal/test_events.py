@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import re
 import sqlite3
 from dataclasses import replace
@@ -14,6 +15,7 @@ from hypothesis import strategies as st
 from shopfloor.journal.entries import Entry
 from shopfloor.journal.errors import EntryError, JournalError, RefusedError
 from shopfloor.journal.events import Journal, Recorder
+from shopfloor.journal.migrations import OPEN
 from shopfloor.journal.state import counting
 from shopfloor.model.actuals import Key, Kind, Status
 from shopfloor.model.calendar import Clock
@@ -230,6 +232,31 @@ def test_an_accepted_oddity_does_not_stand_in_the_way_of_what_follows(book: Jour
     assert [event.accepted for event in book.events()] == [(), (), ("unit-busy",), (), ()]
 
 
+def test_an_accepted_oddity_of_an_operation_does_not_either(book: Journal) -> None:
+    put(book, STARTED)
+    put(book, work("started", "TQ-1", "WASH", 9), accept=True)
+    put(book, work("stopped", "TQ-1", "WASH", 12, reason="x"), work("finished", "TQ-1", "WASH", 30))
+    assert [odd.rule for odd in book.state().odd] == ["already-running"]
+
+
+def test_one_may_start_in_the_very_minute_in_which_the_other_ends(book: Journal) -> None:
+    put(book, work("started", "TQ-2", "CMM", 0), work("finished", "TQ-2", "CMM", 30))
+    put(book, work("started", "TQ-1", "CMM", 30), work("finished", "TQ-1", "CMM", 60))
+    put(book, work("started", "TQ-1", "WASH", 60), work("started", "TQ-3", "CMM", 60))
+
+
+def test_work_resumed_goes_on_where_it_ran_unless_another_unit_is_named(book: Journal) -> None:
+    put(
+        book,
+        work("started", "TQ-2", "BENCH", 0, unit=2),
+        work("stopped", "TQ-2", "BENCH", 5, reason="x"),
+        work("resumed", "TQ-2", "BENCH", 6),
+        work("stopped", "TQ-2", "BENCH", 8, reason="x"),
+        work("resumed", "TQ-2", "BENCH", 9, unit=1),
+    )
+    assert [run.unit for run in book.state().pieces[Key("TQ-2", "BENCH")].runs] == [2, 2, 1]
+
+
 def test_an_unknown_order_that_is_accepted_shows_in_the_state(book: Journal) -> None:
     put(book, work("started", "TQ-77", "CMM", 5), accept=True)
     piece = book.state(10 * MIN).pieces[Key("TQ-77", "CMM")]
@@ -369,6 +396,14 @@ def test_a_corrected_journal_stands_as_if_nobody_had_erred(book: Journal) -> Non
     put(book, work("started", "TQ-2", "CMM", 7))  # the unit is free: the mistake holds nothing
 
 
+def test_a_correction_keeps_its_place_among_entries_of_the_same_minute(book: Journal) -> None:
+    stop = work("stopped", "TQ-1", "WASH", 10, reason="gauge")
+    put(book, STARTED, stop, work("resumed", "TQ-1", "WASH", 10))
+    put(book, replace(stop, data={"reason": "vice"}, corrects=3))
+    piece = book.state().pieces[Key("TQ-1", "WASH")]
+    assert (piece.status, [pause.reason for pause in piece.pauses]) == (Status.RUNNING, ["vice"])
+
+
 def test_a_correction_can_be_corrected_and_struck_out(book: Journal) -> None:
     put(book, STARTED, replace(work("started", "TQ-1", "WASH", 6), corrects=2))
     put(book, replace(work("started", "TQ-1", "WASH", 7), corrects=3))
@@ -493,6 +528,56 @@ def test_a_change_names_one_of_several_pieces(book: Journal) -> None:
     assert book.state().pieces[Key("TQ-3", "CMM", 2)].total_s == 1200
 
 
+@pytest.mark.parametrize("order", ["TQ-1", "TQ-3"])
+def test_a_change_that_names_an_operation_twice_is_refused(book: Journal, order: str) -> None:
+    name = "CMM" if order == "TQ-1" else "CMM:2"
+    with pytest.raises(EntryError, match="operations 'CMM' is given twice; give each"):
+        put(book, Entry(Kind.CHANGED, 60, order=order, data={"operations": [(name, 60), (name, 90)]}))
+
+
+def test_a_change_of_a_piece_that_is_not_there_is_refused(book: Journal) -> None:
+    change = Entry(Kind.CHANGED, 60, order="TQ-3", data={"operations": [("CMM:3", 60)]})
+    assert refused(book, change) == ["TQ-3 has no piece 3 on CMM, only 1 to 2; correct the number"]
+
+
+def test_an_added_order_may_visit_a_machine_twice(book: Journal) -> None:
+    put(book, Entry(Kind.ADDED, 60, order="TQ-9", data={"operations": [("CMM", 60), ("CMM", 90)]}))
+    found = book.state().pieces
+    assert [found[Key("TQ-9", "CMM", number)].total_s for number in (1, 2)] == [60, 90]
+
+
+def test_a_correction_means_the_piece_and_unit_of_what_it_corrects(book: Journal) -> None:
+    put(book, work("started", "TQ-3", "CMM", 5), replace(work("started", "TQ-3", "CMM", 6), corrects=2))
+    assert book.events()[-1].piece == 1
+    put(book, work("started", "TQ-2", "BENCH", 5, unit=2))
+    put(book, replace(work("started", "TQ-2", "BENCH", 6), corrects=4))
+    assert book.events()[-1].unit == 2
+
+
+@settings(deadline=None, max_examples=80)
+@given(st.data())
+def test_what_is_kept_beside_the_entries_is_what_the_entries_say(data: st.DataObject) -> None:
+    book = journal()
+    for _ in range(data.draw(st.integers(1, 14))):
+        last = book.events()[-1].seq
+        corrects = data.draw(st.sampled_from([0, *range(2, last + 1)]))
+        entry = replace(data.draw(_possible()), corrects=corrects)
+        if corrects and data.draw(st.booleans()):
+            entry = strike(corrects)
+        with contextlib.suppress(RefusedError):  # some cannot be insisted on
+            put(book, entry, accept=True)
+    events = book.events()
+    standing = {event.seq for event in counting(events)}
+    assert standing == {event.seq for event in events if book._lookup.counts(event.seq)}
+    kept = sorted(book._connection.execute("SELECT order_id, machine, piece, unit, start_s, end_s FROM run"))
+    runs = [
+        (*key, run.unit, run.start_s, run.until(OPEN))
+        for key, piece in book.state().pieces.items()
+        for run in piece.runs
+    ]
+    assert kept == sorted(runs)
+
+
 def test_another_plan_is_issued_into_the_same_shift(book: Journal) -> None:
     put(book, STARTED)
     row = ("TQ-1", "WASH", 1, 5, 40)
@@ -528,6 +613,7 @@ def test_a_plan_of_another_shift_is_refused(book: Journal) -> None:
         ),
         (work("started", "TQ-1", "WASH", 5, good=1), "good '1' says nothing for started; leave it out"),
         (work("started", "", "WASH", 5), "order '' is missing; give the order"),
+        (work("down", "TQ-1", "WASH", 5, reason="x"), "order 'TQ-1' says nothing for down; leave it out"),
         (
             work("started", "TQ\x1b[2J", "WASH", 5),
             "order 'TQ?[2J' holds an invisible character (U+001B); delete it",

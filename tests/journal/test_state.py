@@ -218,6 +218,18 @@ def test_one_unit_down_blocks_only_what_runs_there() -> None:
     assert waiting.pieces[Key("TQ-3", "BENCH")].status is Status.WAITING
 
 
+def test_only_outages_of_its_own_unit_and_of_the_whole_machine_hold_work_up() -> None:
+    three = work("started", "TQ-3", "BENCH", 0, unit=2)
+    outages = (
+        machine("down", "BENCH", 2, 1, reason="vice"),  # the other unit
+        machine("down", "BENCH", 5, 2, reason="vice"),
+        machine("down", "BENCH", 8, reason="power"),
+        machine("up", "BENCH", 10, 2),
+        machine("up", "BENCH", 15),
+    )
+    assert at(20, three, *outages).pieces[Key("TQ-3", "BENCH")].run_s == 10 * MIN
+
+
 def test_finished_work_counts_good_and_scrap() -> None:
     found = at(60, STARTED, work("finished", "TQ-1", "WASH", 33, good=9, scrap=1))
     piece = found.pieces[WASH]
