@@ -1,0 +1,247 @@
+"""Improving a legal plan of a floor with all its rules, one goal after the other.
+
+A whole model, begun at the plan, up to ``MODEL_MOST`` operations: it may prove. Beyond that, parts of the
+plan are placed again, over and over (``windows``).
+"""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Callable
+from dataclasses import dataclass
+from functools import partial
+
+import numpy as np
+from ortools.sat.python import cp_model
+
+from shopfloor.model.calendar import duration
+from shopfloor.model.results import Outcome
+from shopfloor.model.schedule import Schedule
+from shopfloor.model.shop import Shop
+from shopfloor.openshop.cpsat.floor.best import CHANGEOVERS, Best, Places
+from shopfloor.openshop.cpsat.floor.extract import places_of
+from shopfloor.openshop.cpsat.floor.objective import GOAL_BUILDERS
+from shopfloor.openshop.cpsat.floor.rules import add_rules
+from shopfloor.openshop.cpsat.floor.variables import Model
+from shopfloor.openshop.cpsat.objective import Goal
+from shopfloor.openshop.cpsat.solve import ROOM_S, Answer, Found, Switchboard, threads, watch
+from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS
+from shopfloor.openshop.method import Effort, Progress
+from shopfloor.openshop.round_order import PRIORITY_UNIT
+
+MODEL_MOST = 1_000  # operations up to which the whole shop is put into one model
+BRIEF_MOST = 300  # operations up to which one thread may settle a goal in a moment, and repeatably
+BRIEF_WORK = 0.5  # the solver's own units, about two seconds each
+LEAN_FROM = 400  # operations from which presolve is kept short: the first solution comes first
+FIRST_SHARE = 0.6  # of the time left goes to a goal that another one follows
+STAGES = {MAKESPAN: "shortening", TARDINESS: "late orders", CHANGEOVERS: "changeovers"}
+
+
+def improve_floor(
+    shop: Shop, schedule: Schedule, goals: tuple[str, ...], bound_s: int, effort: Effort
+) -> Outcome:
+    """Return the best plan found from a legal one, with the makespan bound proved on the way.
+
+    Parameters
+    ----------
+    schedule
+        A legal plan. Where it cuts operations into parts it is handed back as it is.
+    goals
+        What counts first, second, …: ``makespan``, ``tardiness``, ``changeovers``.
+    bound_s
+        A lower bound of the makespan, proved elsewhere.
+
+    Returns
+    -------
+    Outcome
+        Never worse than `schedule` in `goals`, compared one after the other. ``proven_s`` holds for every
+        plan of the shop; it is `bound_s` or less where the solver added nothing.
+    """
+    if len(schedule) != len(shop):
+        return Outcome(schedule, remarks=("Operations in parts were left as the list rule placed them.",))
+    if not len(shop):
+        return Outcome(schedule)
+    return _Search(shop, Places.of(schedule), goals, bound_s, effort).run()
+
+
+@dataclass(frozen=True, slots=True)
+class StageResult:
+    """A lower bound of a goal in its own measure, whether the search came to its end, and repeats."""
+
+    bound: int
+    ended: bool
+    repeatable: bool
+
+
+class _Search:
+    """One run: what was found, what was proved, whether it repeats."""
+
+    def __init__(
+        self, shop: Shop, places: Places, goals: tuple[str, ...], bound_s: int, effort: Effort
+    ) -> None:
+        self.shop, self.goals, self.effort = shop, goals, effort
+        self.best = Best(shop, places, goals)
+        self.bound_s, self.proven_s = bound_s, 0
+        self.least = {goal: bound_s if goal == MAKESPAN else 0 for goal in goals}
+        self.complete = self.repeatable = True
+
+    def run(self) -> Outcome:
+        """Serve every goal in its turn."""
+        for number, goal in enumerate(self.goals):
+            last = number == len(self.goals) - 1
+            until = None if last else time.monotonic() + FIRST_SHARE * self.effort.left_s
+            self._serve(goal, self.goals[:number], until)
+        stopped = "done"
+        if not self.complete:
+            stopped = "interrupted" if self.effort.stop.is_set() else "time limit"
+        return Outcome(
+            self.best.places.schedule(),
+            proven_s=self.proven_s,
+            stopped=stopped,
+            repeatable=self.repeatable,
+            remarks=self._remarks(),
+        )
+
+    def proved(self, goal: str) -> bool:
+        """Whether the best plan is known to have the least there is of a goal, given the goals before."""
+        return self.best.value(goal) <= self.least[goal]
+
+    def _serve(self, goal: str, kept: tuple[str, ...], until: float | None) -> None:
+        self._tell(goal)
+        whole = len(self.shop) <= MODEL_MOST
+        for brief in (True, False) if len(self.shop) <= BRIEF_MOST else (False,):
+            if self.proved(goal):
+                return
+            if self.effort.over:
+                self.complete = self.repeatable = False
+                return
+            if whole:
+                self._model(goal, kept, until, brief=brief)
+
+    def _model(self, goal: str, kept: tuple[str, ...], until: float | None, *, brief: bool) -> None:
+        result = improve(
+            self.shop, self.best, goal, kept, self.least[goal], self.effort, self.progress, until, brief
+        )
+        self.complete &= result.ended
+        self.repeatable &= result.repeatable
+        self.least[goal] = max(self.least[goal], result.bound)
+        if goal == MAKESPAN and not kept and result.bound > self.bound_s:
+            self.bound_s = self.proven_s = result.bound
+
+    def progress(self, goal: str) -> Progress:
+        """Say where the search stands."""
+        return Progress(STAGES[goal], self.best.value(MAKESPAN), self.bound_s, self.effort.left_s)
+
+    def _tell(self, goal: str) -> None:
+        self.effort.report(self.progress(goal))
+
+    def _remarks(self) -> tuple[str, ...]:
+        return tuple(
+            self._about(goal, number)
+            for number, goal in enumerate(self.goals)
+            if (goal == TARDINESS and self.shop.has_due)
+            or (goal == CHANGEOVERS and any(not times.none for times in self.shop.changeovers.values()))
+        )
+
+    def _about(self, goal: str, number: int) -> str:
+        """Say what a goal came to, and what is proved about it: nothing is called near that is not."""
+        value, unit = self.best.value(goal), PRIORITY_UNIT if goal == TARDINESS else 1
+        if not value:
+            return "Nothing is late." if goal == TARDINESS else "Nothing is changed over."
+        said = (
+            f"Weighted lateness is {duration(value // unit)} (priority × time late, summed)"
+            if goal == TARDINESS
+            else f"Changeovers take {duration(value)} in all"
+        )
+        kind = "plan as good in what comes first" if number else "plan"
+        if self.proved(goal):
+            return f"{said}; no {kind} has less."
+        return f"{said}; all that is proved is that every {kind} has {duration(self.least[goal] // unit)} or more."
+
+
+def improve(
+    shop: Shop,
+    best: Best,
+    goal: str,
+    kept: tuple[str, ...],
+    least: int,
+    effort: Effort,
+    progress: Callable[[str], Progress],
+    until: float | None,
+    brief: bool,
+) -> StageResult:
+    """Lower `goal` with the whole model, without giving up anything of the goals in `kept`.
+
+    Parameters
+    ----------
+    best
+        Holds a legal plan; receives every better one.
+    least
+        A lower bound of the goal, put into the model: the solver's own is often weaker.
+    until
+        A moment of ``time.monotonic()`` at which to stop.
+    brief
+        Search a short while in one thread, which repeats; else to the end in all of them.
+    """
+    workers = 1 if brief else threads(effort.workers)
+    board, solver = Switchboard(), cp_model.CpSolver()
+    set_parameters(solver, effort, workers, BRIEF_WORK if brief else None, lean=len(shop) >= LEAN_FROM)
+    found: list[tuple[Goal, Found]] = []
+
+    def search() -> None:
+        model, aim = _whole_model(shop, best, goal, kept, least)
+        found.append((aim, board.solve(model.cp, solver, partial(keep, model, best))))
+
+    ended = watch([search], board, effort, lambda: progress(goal), until=until)
+    aim, result = found[0]
+    known = aim.exact and result.answer in (Answer.PROVED, Answer.FOUND)
+    bound = max(least, aim.worth(result.bound)) if known else least
+    return StageResult(bound, ended, repeatable=ended and workers == 1)
+
+
+def keep(model: Model, best: Best, value: Callable[[cp_model.IntVar], int]) -> None:
+    """Offer a solution of the model."""
+    best.offer(places_of(model, value))
+
+
+def _whole_model(shop: Shop, best: Best, goal: str, kept: tuple[str, ...], least: int) -> tuple[Model, Goal]:
+    limited = goal == MAKESPAN or MAKESPAN in kept
+    places = best.places
+    latest_s = best.value(MAKESPAN) if limited else max(whole_horizon_s(shop), best.value(MAKESPAN))
+    model = Model(shop, places, latest_s)
+    add_rules(model)
+    for other in kept:
+        if other != MAKESPAN:
+            limit = GOAL_BUILDERS[other](model, 0)
+            model.cp.add(limit.expression <= limit.at_most(best.value(other)))
+    aim = GOAL_BUILDERS[goal](model, least)
+    model.cp.minimize(aim.expression)
+    return model, aim
+
+
+def whole_horizon_s(shop: Shop) -> int:
+    """Return a time by which some best plan has ended: from the last change in the hall one after another."""
+    quiet = [0, *shop.orders.release_s.tolist(), *(pause.end_s for pause in shop.breaks)]
+    quiet += [shut.end_s for machine in shop.machines for shut in machine.closed]
+    quiet += [end for crew in shop.crews for _, end, _ in crew.levels]
+    change = [max(each.between, *each.pairs.values(), 0) for each in shop.changeovers.values()]
+    way = max(shop.transport.between, *shop.transport.pairs.values(), 0)
+    gaps = (max(change, default=0) + way) * (len(shop) + 1)
+    return int(max(quiet) + np.sum(shop.operations.seconds) + gaps)
+
+
+def set_parameters(
+    solver: cp_model.CpSolver, effort: Effort, workers: int, work: float | None, *, lean: bool
+) -> None:
+    """Set the solver up; `work` in its own units, `lean` keeps presolve short."""
+    chosen = solver.parameters
+    chosen.num_workers = workers
+    chosen.random_seed = effort.seed % 2**31
+    chosen.max_time_in_seconds = max(effort.left_s, ROOM_S)
+    chosen.catch_sigint_signal = False
+    if work is not None:
+        chosen.max_deterministic_time = work
+    if lean:
+        chosen.linearization_level = 0
+        chosen.cp_model_probing_level = 0
+        chosen.symmetry_level = 0

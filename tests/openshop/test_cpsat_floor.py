@@ -1,0 +1,89 @@
+"""The exact model of floors: legal, never worse than its start, and as good as trying everything."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+from shopfloor.audit.schedule import audit
+from shopfloor.bounds.catalogue import lower_bounds
+from shopfloor.model.results import Choice, Plan
+from shopfloor.model.schedule import Schedule
+from shopfloor.model.shop import Changeovers, Closure, Crew, Machine, Operations, Orders, Shop, Transport
+from shopfloor.model.stated import state
+from shopfloor.openshop.cpsat.floor.best import MEASURES, Places
+from shopfloor.openshop.cpsat.floor.solve import improve_floor
+from shopfloor.openshop.floor.rules import Rules
+from shopfloor.openshop.floor.timetable import Timetable
+from shopfloor.openshop.method import Effort
+from shopfloor.openshop.units import assign_units
+from tests.floor_oracle import Hall, least_makespan, least_tardiness, plays
+from tests.floor_shops import floors
+
+
+def one_after_the_other(shop: Shop, gap_s: int = 0) -> Schedule:
+    """A legal plan that wastes time: each operation begins when the one before has ended, and a gap later."""
+    rules, moment = Rules.of(shop), 0
+    table = Timetable(rules)
+    for operation in sorted(range(len(shop)), key=lambda k: (rules.step[k], k)):
+        spot = table.earliest(operation, moment + gap_s)
+        assert spot is not None
+        table.place(operation, spot)
+        moment = spot.end
+    spots = [spot for spot in table.spots if spot is not None]
+    start, end = np.array([s.start for s in spots]), np.array([s.end for s in spots])
+    unit = np.array([spot.unit + 1 for spot in spots])
+    return Schedule(
+        np.arange(len(shop)), start, end, unit=np.where(unit, unit, assign_units(shop, start, end))
+    )
+
+
+def check(shop: Shop, schedule: Schedule | None) -> Places:
+    """The audit is content, and so is the oracle, which shares nothing with it."""
+    assert schedule is not None
+    assert audit(shop, state(Plan(shop, schedule, lower_bounds(shop), Choice("", "", {})))) == []
+    places = Places.of(schedule)
+    assert plays(shop, places.start.tolist(), places.unit.tolist()) == places.end.tolist()
+    return places
+
+
+def measures(shop: Shop, schedule: Schedule, goals: tuple[str, ...]) -> list[int]:
+    return [MEASURES[goal](shop, Places.of(schedule)) for goal in goals]
+
+
+@given(floors(max_operations=5), st.integers(0, 2))
+@settings(max_examples=150, deadline=None)
+def test_the_least_makespan_is_reached_and_proved(shop: Shop, gap: int) -> None:
+    outcome = improve_floor(shop, one_after_the_other(shop, gap), ("makespan",), 0, Effort(workers=1))
+    places = check(shop, outcome.schedule)
+    assert (outcome.stopped, outcome.repeatable) == ("done", True)
+    assert outcome.proven_s == places.end.max() == least_makespan(shop)
+
+
+@given(floors(max_operations=5), st.integers(0, 2))
+@settings(max_examples=100, deadline=None)
+def test_the_least_tardiness_is_reached(shop: Shop, gap: int) -> None:
+    start = one_after_the_other(shop, gap)
+    outcome = improve_floor(shop, start, ("tardiness",), 0, Effort(workers=1))
+    check(shop, outcome.schedule)
+    assert outcome.schedule is not None
+    assert measures(shop, outcome.schedule, ("tardiness",)) == [least_tardiness(shop)]
+
+
+GOALS = ("makespan", "tardiness", "changeovers")
+
+
+@given(floors(max_operations=6), st.permutations(GOALS), st.integers(1, 3))
+@settings(max_examples=100, deadline=None)
+def test_no_goal_spoils_the_ones_before(shop: Shop, goals: list[str], count: int) -> None:
+    chosen = tuple(goals[:count])
+    start = one_after_the_other(shop)
+    outcome = improve_floor(shop, start, chosen, 0, Effort(workers=1))
+    check(shop, outcome.schedule)
+    assert outcome.schedule is not None
+    assert measures(shop, outcome.schedule, chosen) <= measures(shop, start, chosen)
+    shorter = improve_floor(shop, start, chosen[:1], 0, Effort(workers=1)).schedule
+    assert shorter is not None
+    assert measures(shop, shorter, chosen[:1]) == measures(shop, outcome.schedule, chosen[:1])
