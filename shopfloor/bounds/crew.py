@@ -32,7 +32,7 @@ def _crew_bound(shop: Shop, crew: Crew, attended: Ints) -> Bound:
     release = int(shop.head_s[attended].min())
     stays = not only_setup[attended].any()
     equal = stays and int(seconds.min()) == int(seconds.max()) and int(heads.min()) == int(heads.max())
-    if equal and heads[0] > 0 and not shop.has_splits:
+    if equal and heads[0] > 0 and not shop.has_splits and not _lends_heads(shop, attended):
         length, at_once = int(seconds[0]), max(1, crew.heads // int(heads[0]))
         rounds = -(-len(attended) // at_once)
         value = shop.work_clock.finish(release, rounds * length)
@@ -58,3 +58,13 @@ def _crew_bound(shop: Shop, crew: Crew, attended: Ints) -> Bound:
         sentence=f"The {crew.heads} heads of crew {crew.id} have {duration(work)} of one head's work, "
         f"so nothing can end before {shop.clock.say(value)}.",
     )
+
+
+def _lends_heads(shop: Shop, attended: Ints) -> bool:
+    """Whether work may pause on one machine while the crew goes on elsewhere: then rounds do not count.
+
+    Two heads can share three operations of two seconds in three seconds, if one of them pauses for a
+    second. A break of the whole hall is no such time: nobody works then.
+    """
+    machines = [shop.machines[machine] for machine in np.unique(shop.operations.machine[attended]).tolist()]
+    return any(machine.pauses and machine.closed for machine in machines)
