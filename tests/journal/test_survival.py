@@ -77,6 +77,17 @@ def recorded(path: Path) -> set[str]:
     return {event.id for event in events}
 
 
+@pytest.fixture
+def memory_disk(tmp_path: Path) -> Iterator[Path]:
+    """A folder on a disk in memory, where there is one: thousands of commits wait for no platter."""
+    shared = Path("/dev/shm")
+    if not os.access(shared, os.W_OK):
+        yield tmp_path
+        return
+    with tempfile.TemporaryDirectory(dir=shared) as name:
+        yield Path(name)
+
+
 def killed_at_random(task: Callable[[int], None], chance: random.Random) -> str:
     """Run `task` in a child, kill it a while after its first few acknowledgements; return all of them."""
     reader, writer = os.pipe()
@@ -97,15 +108,15 @@ def killed_at_random(task: Callable[[int], None], chance: random.Random) -> str:
 
 
 def test_no_acknowledged_entry_is_lost_and_no_import_is_halved_by_killing_the_recorder(
-    tmp_path: Path,
+    memory_disk: Path,
 ) -> None:
-    path = tmp_path / "shift.db"
+    path = memory_disk / "shift.db"
     filed(path).close()
     command("remark", "warm", "--at", "06:01", "--journal", str(path))  # imports are paid for once, here
     chance = random.Random(240)
     acknowledged: set[str] = set()
     for kill in range(KILLS):
-        scratch, tag = tmp_path / f"{kill}.csv", f"k{kill}"
+        scratch, tag = memory_disk / f"{kill}.csv", f"k{kill}"
         said = killed_at_random(
             lambda pipe, scratch=scratch, tag=tag: keep_recording(path, scratch, tag, pipe),
             chance,
@@ -121,30 +132,19 @@ def test_no_acknowledged_entry_is_lost_and_no_import_is_halved_by_killing_the_re
     assert set(batches.values()) == {BATCH}
 
 
-def test_a_journal_killed_in_the_making_is_there_whole_or_not_at_all(tmp_path: Path) -> None:
+def test_a_journal_killed_in_the_making_is_there_whole_or_not_at_all(memory_disk: Path) -> None:
     rows = [(f"TQ-{k}", f"M{k % 12}", 1, k, k + 1) for k in range(300)]
     began = time.perf_counter()
-    filed(tmp_path / "undisturbed.db", rows=rows).close()
+    filed(memory_disk / "undisturbed.db", rows=rows).close()
     took = time.perf_counter() - began
     for kill in range(30):
-        path = tmp_path / f"{kill}.db"
+        path = memory_disk / f"{kill}.db"
         child = in_child(lambda path=path: filed(path, rows=rows).close())
         time.sleep(took * kill / 20)
         os.kill(child, signal.SIGKILL)
         os.waitpid(child, 0)
         if path.exists():
             assert len(recorded(path)) == 1
-
-
-@pytest.fixture
-def memory_disk(tmp_path: Path) -> Iterator[Path]:
-    """A folder on a disk in memory, where there is one: eight thousand commits wait for no platter."""
-    shared = Path("/dev/shm")
-    if not os.access(shared, os.W_OK):
-        yield tmp_path
-        return
-    with tempfile.TemporaryDirectory(dir=shared) as name:
-        yield Path(name)
 
 
 def test_eight_recorders_at_once_lose_nothing_and_write_nothing_twice(memory_disk: Path) -> None:
