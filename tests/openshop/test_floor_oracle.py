@@ -25,7 +25,7 @@ def starts(draw: st.DrawFn) -> tuple[Shop, list[int], list[int], list[int]]:
         unit = draw(st.integers(1, shop.machines[hall.columns["machine"][operation]].count))
         late = draw(st.sampled_from([0, 0, 0, 1, 2]))
         begin = stack[-1].start if stack else 0
-        spots = (hall.visit(operation, unit, start) for start in range(begin, 2 * hall.horizon))
+        spots = (hall.visit(operation, unit, start) for start in range(begin, begin + hall.horizon + 9))
         legal = (spot for spot in spots if spot is not None and hall.may_follow(stack, spot))
         stack.append([next(legal) for _ in range(late + 1)][-1])
     stack.sort(key=lambda visit: visit.operation)
