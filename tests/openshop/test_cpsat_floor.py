@@ -11,15 +11,16 @@ from shopfloor.audit.schedule import audit
 from shopfloor.bounds.catalogue import lower_bounds
 from shopfloor.model.results import Choice, Plan
 from shopfloor.model.schedule import Schedule
-from shopfloor.model.shop import Changeovers, Closure, Crew, Machine, Operations, Orders, Shop, Transport
+from shopfloor.model.shop import Machine, Operations, Orders, Shop
 from shopfloor.model.stated import state
+from shopfloor.openshop.cpsat.floor import solve, windows
 from shopfloor.openshop.cpsat.floor.best import MEASURES, Places
 from shopfloor.openshop.cpsat.floor.solve import improve_floor
 from shopfloor.openshop.floor.rules import Rules
 from shopfloor.openshop.floor.timetable import Timetable
 from shopfloor.openshop.method import Effort
 from shopfloor.openshop.units import assign_units
-from tests.floor_oracle import Hall, least_makespan, least_tardiness, plays
+from tests.floor_oracle import least_makespan, least_tardiness, plays
 from tests.floor_shops import floors
 
 
@@ -87,3 +88,28 @@ def test_no_goal_spoils_the_ones_before(shop: Shop, goals: list[str], count: int
     shorter = improve_floor(shop, start, chosen[:1], 0, Effort(workers=1)).schedule
     assert shorter is not None
     assert measures(shop, shorter, chosen[:1]) == measures(shop, outcome.schedule, chosen[:1])
+
+
+@given(floors(max_operations=6), st.permutations(GOALS), st.integers(1, 3))
+@settings(max_examples=60, deadline=None)
+def test_parts_placed_again_fit_what_stays(shop: Shop, goals: list[str], count: int) -> None:
+    chosen = tuple(goals[:count])
+    start = one_after_the_other(shop)
+    with pytest.MonkeyPatch.context() as patch:
+        for name, value in (("MODEL_MOST", 0), ("BRIEF_MOST", 0), ("WINDOWS_FROM", 0)):
+            patch.setattr(solve, name, value)
+        for name, sizes in (("WINDOW_SIZES", (1, 2, 3)), ("TAIL_SIZES", (1, 2, 4, 8)), ("FRUITLESS", 6)):
+            patch.setattr(windows, name, sizes)
+        outcome = improve_floor(shop, start, chosen, 0, Effort(workers=1))
+    check(shop, outcome.schedule)
+    assert outcome.schedule is not None
+    assert measures(shop, outcome.schedule, chosen) <= measures(shop, start, chosen)
+
+
+def test_a_stop_is_obeyed_and_the_best_plan_handed_back() -> None:
+    shop = Shop((Machine("M"),), Orders(("A", "B")), Operations([0, 1], [0, 0], [5, 7]))
+    effort = Effort(workers=1)
+    effort.stop.set()
+    outcome = improve_floor(shop, one_after_the_other(shop, 3), ("makespan",), 0, effort)
+    assert outcome.stopped == "interrupted"
+    check(shop, outcome.schedule)

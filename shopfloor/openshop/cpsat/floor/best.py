@@ -3,13 +3,13 @@
 from __future__ import annotations
 
 import threading
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 
 import numpy as np
 
 from shopfloor.model.schedule import Schedule
-from shopfloor.model.shop import NO_DUE, NO_FAMILY, Ints, Shop
+from shopfloor.model.shop import NO_DUE, NO_FAMILY, Bools, Ints, Shop
 from shopfloor.openshop.floor.rules import Rules
 from shopfloor.openshop.floor.timetable import Timetable, serial
 from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS, weights
@@ -48,19 +48,19 @@ def makespan_of(shop: Shop, places: Places) -> int:
     return int(places.end.max(initial=0))
 
 
-def tardiness_of(shop: Shop, places: Places) -> int:
-    """Return seconds late × thousandths of priority, summed over the orders."""
-    done = np.full(len(shop.orders), -1, np.int64)
-    np.maximum.at(done, shop.operations.job, places.end)
+def tardiness_of(shop: Shop, places: Places, chosen: Bools | None = None) -> int:
+    """Return seconds late × thousandths of priority, summed over the orders; of `chosen` operations only."""
+    done, job = np.full(len(shop.orders), -1, np.int64), shop.operations.job
+    rows = np.arange(len(job)) if chosen is None else np.flatnonzero(chosen)
+    np.maximum.at(done, job[rows], places.end[rows])
     due = shop.orders.due_s
     late = np.flatnonzero((due != NO_DUE) & (done > due))
     weight = weights(shop) if len(late) else []
     return sum(weight[job] * int(done[job] - due[job]) for job in late.tolist())
 
 
-def changeovers_of(shop: Shop, places: Places) -> int:
-    """Return the seconds of all changeovers, from the shift's start on."""
-    total = 0
+def changes(shop: Shop, places: Places) -> Iterator[tuple[int, int]]:
+    """Yield each operation on a machine with changeovers, and the seconds to change over for it."""
     for index, machine in enumerate(shop.machines):
         times = shop.changeovers.get(machine.id)
         if times is None or times.none:
@@ -70,9 +70,18 @@ def changeovers_of(shop: Shop, places: Places) -> int:
         for row in rows[np.argsort(places.start[rows], kind="stable")].tolist():
             unit, family = int(places.unit[row]), family_name(shop, row)
             old = before.get(unit, machine.family)
-            total += 0 if old is None else times.seconds(old, family)
+            yield row, 0 if old is None else times.seconds(old, family)
             before[unit] = family
-    return total
+
+
+def changeovers_of(shop: Shop, places: Places) -> int:
+    """Return the seconds of all changeovers, from the shift's start on."""
+    return sum(seconds for _, seconds in changes(shop, places))
+
+
+def costly_changes(shop: Shop, places: Places) -> Ints:
+    """Return the operations that a unit is changed over for."""
+    return np.array([row for row, seconds in changes(shop, places) if seconds], np.int64)
 
 
 MEASURES: dict[str, Callable[[Shop, Places], int]] = {
@@ -91,11 +100,16 @@ class Best:
         A legal plan.
     goals
         What counts first, second, …; the rest of :data:`MEASURES` does not count.
+
+    Attributes
+    ----------
+    values
+        What the best plan has of each goal.
     """
 
     def __init__(self, shop: Shop, places: Places, goals: tuple[str, ...]) -> None:
         self.shop, self.goals, self.places = shop, goals, places
-        self._values = self.measure(places)
+        self.values = self.measure(places)
         self._rules = Rules.of(shop)
         self._lock = threading.Lock()
         self.offer(places)
@@ -107,7 +121,7 @@ class Best:
     def value(self, goal: str) -> int:
         """Return what the best plan has of a goal, or of anything else that is measured."""
         if goal in self.goals:
-            return self._values[self.goals.index(goal)]
+            return self.values[self.goals.index(goal)]
         return MEASURES[goal](self.shop, self.places)
 
     def offer(self, places: Places) -> bool:
@@ -125,9 +139,9 @@ class Best:
             values = self.measure(each)
             with self._lock:
                 earlier = int(each.start.sum()) < int(self.places.start.sum())
-                if values < self._values or (values == self._values and earlier):
-                    better |= values < self._values
-                    self.places, self._values = each, values
+                if values < self.values or (values == self.values and earlier):
+                    better |= values < self.values
+                    self.places, self.values = each, values
         return better
 
     def _pushed(self, places: Places) -> Places | None:

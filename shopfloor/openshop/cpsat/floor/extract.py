@@ -6,7 +6,7 @@ from collections.abc import Callable
 
 from ortools.sat.python import cp_model
 
-from shopfloor.openshop.cpsat.floor.best import Places
+from shopfloor.openshop.cpsat.floor.best import Best, Places
 from shopfloor.openshop.cpsat.floor.variables import Model
 from shopfloor.openshop.units import assign_units
 
@@ -23,9 +23,9 @@ def places_of(model: Model, value: Callable[[cp_model.IntVar], int]) -> Places:
         clock = visit.hours.clock
         start[visit.operation] = int(clock.start(at)) * unit_s
         end[visit.operation] = int(clock.end(at + visit.work)) * unit_s
-        for unit, literal in enumerate(visit.on_unit):
+        for place, literal in enumerate(visit.on_unit):
             if value(literal):
-                chosen.append((visit.operation, unit + 1))
+                chosen.append((visit.operation, place + 1))
     unit = assign_units(shop, start, end)
     kept = [machine for machine in range(len(shop.machines)) if model.has_units(machine)]
     for machine in kept:
@@ -34,3 +34,8 @@ def places_of(model: Model, value: Callable[[cp_model.IntVar], int]) -> Places:
     for operation, which in chosen:
         unit[operation] = which
     return Places(start, end, unit)
+
+
+def keep(model: Model, best: Best, value: Callable[[cp_model.IntVar], int]) -> None:
+    """Offer a solution of the model."""
+    best.offer(places_of(model, value))

@@ -26,11 +26,12 @@ def makespan(model: Model, least: int) -> Goal:
 
 
 def tardiness(model: Model, least: int) -> Goal:
-    """Return the weighted tardiness of the orders with operations in the model; due times are on the grid."""
+    """Return the weighted tardiness of the orders with operations to be placed; due times are on the grid."""
     due, weight, unit_s = model.shop.orders.due_s, weights(model.shop), model.grid.unit_s
+    placed = {visit.job for visit in model.visits if model.is_free(visit)}
     jobs: dict[int, list[Visit]] = {}
     for visit in model.visits:
-        if due[visit.job] != NO_DUE:
+        if due[visit.job] != NO_DUE and visit.job in placed:
             jobs.setdefault(visit.job, []).append(visit)
     last = max([model.latest, *(visit.end_was for visit in model.visits)])
     terms: list[tuple[int, cp_model.IntVar]] = []

@@ -19,12 +19,14 @@ from shopfloor.model.results import Outcome
 from shopfloor.model.schedule import Schedule
 from shopfloor.model.shop import Shop
 from shopfloor.openshop.cpsat.floor.best import CHANGEOVERS, Best, Places
-from shopfloor.openshop.cpsat.floor.extract import places_of
+from shopfloor.openshop.cpsat.floor.extract import keep
 from shopfloor.openshop.cpsat.floor.objective import GOAL_BUILDERS
 from shopfloor.openshop.cpsat.floor.rules import add_rules
+from shopfloor.openshop.cpsat.floor.setting import set_parameters
 from shopfloor.openshop.cpsat.floor.variables import Model
+from shopfloor.openshop.cpsat.floor.windows import improve_in_parts
 from shopfloor.openshop.cpsat.objective import Goal
-from shopfloor.openshop.cpsat.solve import ROOM_S, Answer, Found, Switchboard, threads, watch
+from shopfloor.openshop.cpsat.solve import Answer, Found, Switchboard, threads, watch
 from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS
 from shopfloor.openshop.method import Effort, Progress
 from shopfloor.openshop.round_order import PRIORITY_UNIT
@@ -33,6 +35,8 @@ MODEL_MOST = 1_000  # operations up to which the whole shop is put into one mode
 BRIEF_MOST = 300  # operations up to which one thread may settle a goal in a moment, and repeatably
 BRIEF_WORK = 0.5  # the solver's own units, about two seconds each
 LEAN_FROM = 400  # operations from which presolve is kept short: the first solution comes first
+WINDOWS_FROM = 110  # operations from which windows are smaller than the shop
+TRIED_SHARE = 0.5  # of a goal's time goes to windows before the whole model
 FIRST_SHARE = 0.6  # of the time left goes to a goal that another one follows
 STAGES = {MAKESPAN: "shortening", TARDINESS: "late orders", CHANGEOVERS: "changeovers"}
 
@@ -108,23 +112,46 @@ class _Search:
 
     def _serve(self, goal: str, kept: tuple[str, ...], until: float | None) -> None:
         self._tell(goal)
-        whole = len(self.shop) <= MODEL_MOST
-        for brief in (True, False) if len(self.shop) <= BRIEF_MOST else (False,):
+        size = len(self.shop)
+        ways: list[Callable[[], None]] = []
+        if size <= BRIEF_MOST:
+            ways.append(lambda: self._model(goal, kept, until, brief=True))
+        if size > WINDOWS_FROM and (goal != MAKESPAN or size > MODEL_MOST):
+            ways.append(lambda: self._parts(goal, kept, until, 1.0 if size > MODEL_MOST else TRIED_SHARE))
+        if size <= MODEL_MOST:
+            ways.append(lambda: self._model(goal, kept, until, brief=False))
+        for way in ways:
             if self.proved(goal):
                 return
             if self.effort.over:
                 self.complete = self.repeatable = False
                 return
-            if whole:
-                self._model(goal, kept, until, brief=brief)
+            way()
+
+    def _parts(self, goal: str, kept: tuple[str, ...], until: float | None, share: float) -> None:
+        """Place parts again for some share of the time left."""
+        now = time.monotonic()
+        left = self.effort.left_s if until is None else max(0.0, until - now)
+        repeats = improve_in_parts(
+            self.shop,
+            self.best,
+            goal,
+            kept,
+            self.least[goal],
+            self.effort,
+            self.progress,
+            now + share * left,
+        )
+        self.repeatable &= repeats
+        self.complete &= share < 1 or self.proved(goal)
 
     def _model(self, goal: str, kept: tuple[str, ...], until: float | None, *, brief: bool) -> None:
         result = improve(
             self.shop, self.best, goal, kept, self.least[goal], self.effort, self.progress, until, brief
         )
-        self.complete &= result.ended
         self.repeatable &= result.repeatable
         self.least[goal] = max(self.least[goal], result.bound)
+        self.complete &= self.proved(goal) or (result.ended and not self.effort.over)
         if goal == MAKESPAN and not kept and result.bound > self.bound_s:
             self.bound_s = self.proven_s = result.bound
 
@@ -156,7 +183,8 @@ class _Search:
         kind = "plan as good in what comes first" if number else "plan"
         if self.proved(goal):
             return f"{said}; no {kind} has less."
-        return f"{said}; all that is proved is that every {kind} has {duration(self.least[goal] // unit)} or more."
+        least = duration(self.least[goal] // unit)
+        return f"{said}; all that is proved is that every {kind} has {least} or more."
 
 
 def improve(
@@ -199,11 +227,6 @@ def improve(
     return StageResult(bound, ended, repeatable=ended and workers == 1)
 
 
-def keep(model: Model, best: Best, value: Callable[[cp_model.IntVar], int]) -> None:
-    """Offer a solution of the model."""
-    best.offer(places_of(model, value))
-
-
 def _whole_model(shop: Shop, best: Best, goal: str, kept: tuple[str, ...], least: int) -> tuple[Model, Goal]:
     limited = goal == MAKESPAN or MAKESPAN in kept
     places = best.places
@@ -228,20 +251,3 @@ def whole_horizon_s(shop: Shop) -> int:
     way = max(shop.transport.between, *shop.transport.pairs.values(), 0)
     gaps = (max(change, default=0) + way) * (len(shop) + 1)
     return int(max(quiet) + np.sum(shop.operations.seconds) + gaps)
-
-
-def set_parameters(
-    solver: cp_model.CpSolver, effort: Effort, workers: int, work: float | None, *, lean: bool
-) -> None:
-    """Set the solver up; `work` in its own units, `lean` keeps presolve short."""
-    chosen = solver.parameters
-    chosen.num_workers = workers
-    chosen.random_seed = effort.seed % 2**31
-    chosen.max_time_in_seconds = max(effort.left_s, ROOM_S)
-    chosen.catch_sigint_signal = False
-    if work is not None:
-        chosen.max_deterministic_time = work
-    if lean:
-        chosen.linearization_level = 0
-        chosen.cp_model_probing_level = 0
-        chosen.symmetry_level = 0

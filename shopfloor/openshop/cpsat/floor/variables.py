@@ -1,4 +1,4 @@
-"""The variables of the model: when each operation starts and ends, on the clock and in its machine's open time.
+"""The variables of the model: when operations start and end, on the clock and in open time.
 
 In open time (working time of the machine, its closures squeezed out) every operation is as long as its
 work, whether it pauses or not, and changeovers are plain distances; so machines are modelled there. On the
@@ -16,7 +16,6 @@ from dataclasses import dataclass, field
 from itertools import chain
 from math import gcd
 
-import numpy as np
 from ortools.sat.python import cp_model
 
 from shopfloor.model.calendar import WorkClock, united
@@ -240,11 +239,10 @@ class Model:
             return cp_model.Domain(was, was)
         machine = int(self.shop.operations.machine[row])
         hours, head = self._hours[machine], self.grid.up(int(self.shop.head_s[row]))
-        latest = self.latest
+        latest = self.latest - self.grid.down(int(self.shop.tail_s[row]))
         if self.part is not None:
             head = max(head, self.grid.up(self.part.begin_s))
             latest = min(latest, self.grid.down(self.part.end_s))
-        latest -= self.grid.down(int(self.shop.tail_s[row]))
         low, high = hours.worked(head), hours.worked(latest) - work
         spans = [low]
         if not self.shop.machines[machine].pauses:  # no closure may begin while it is worked on
@@ -290,7 +288,7 @@ def grouped(visits: Iterable[Visit], key: Callable[[Visit], int]) -> list[list[V
 
 
 def heads_by_time(crew: Crew, latest: int, unit_s: int) -> list[tuple[int, int, int]]:
-    """Return how many heads a crew has: stretches (start, end, heads) that fill 0 to `latest`, on the grid."""
+    """Return the heads of a crew as stretches (start, end, heads) from 0 to `latest`, on the grid."""
     out, moment = [], 0
     for start, end, heads in crew.levels:
         first, last = max(start, 0) // unit_s, min(end // unit_s, latest)
