@@ -15,7 +15,17 @@ import numpy as np
 from shopfloor.model.calendar import HOUR, Clock, duration
 from shopfloor.model.results import Bound, Choice, Plan
 from shopfloor.model.schedule import Schedule
-from shopfloor.model.shop import NO_DUE, Closure, Machine, Operations, Orders, Shop
+from shopfloor.model.shop import (
+    NO_DUE,
+    Changeovers,
+    Closure,
+    Crew,
+    Machine,
+    Operations,
+    Orders,
+    Shop,
+    Transport,
+)
 
 TRADES = (
     *("Wash", "Blast", "Dye-penetrant", "CMM", "Pressure test", "Balancing", "Engraving", "Coating"),
@@ -164,3 +174,49 @@ def _bounds(shop: Shop) -> tuple[Bound, ...]:
         ),
     ]
     return tuple(sorted(found, key=lambda bound: -bound.value_s))
+
+
+def many_plan(operations: int, *, floor: bool = False, names: int = 0, notes: bool = False) -> Plan:
+    """Return a plan of very many operations, made at once: blocks of 60 orders that change places 8 times.
+
+    `floor` gives every operation a set-up, a family, heads and a way; `names` makes order names so long;
+    `notes` gives every order a note of its own.
+    """
+    machines, rounds = 60, 8
+    orders = -(-operations // rounds)
+    job, turn = np.divmod(np.arange(orders * rounds), rounds)
+    machine = (job + turn) % machines
+    begin = (job // machines * rounds + turn) * 1800
+    seconds = 60 * (10 + (job * 7 + turn * 13 + machine * 5) % 16)
+    family = (job // machines + machine) % 7
+    shop = Shop(
+        machines=tuple(
+            Machine(f"M{k + 1:02d}", crew="crew" if floor else None, family="fam 0" if floor else None)
+            for k in range(machines)
+        ),
+        orders=Orders(
+            tuple(f"TQ-{k:06d}".ljust(names, "x") for k in range(orders)),
+            due_s=(np.arange(orders) // machines + 1) * rounds * 1800 - 7200 * (np.arange(orders) % 3 > 1),
+        ),
+        operations=Operations(
+            job,
+            machine,
+            seconds,
+            family=family if floor else None,
+            setup_s=seconds // 300 * 60 if floor else None,
+            heads=1 + job % 2 if floor else None,
+            notes={k: f"note {k} on the way" for k in range(0, len(job), rounds)} if notes else {},
+        ),
+        crews=(Crew("crew", 2 * machines),) if floor else (),
+        families=tuple(f"fam {k}" for k in range(7)) if floor else (),
+        changeovers={f"M{k + 1:02d}": Changeovers(300) for k in range(machines)} if floor else {},
+        transport=Transport(240) if floor else Transport(),
+        clock=SHIFT,
+        shift_end_s=8 * HOUR,
+    )
+    return Plan(
+        shop=shop,
+        schedule=Schedule(np.arange(len(job)), begin + 300, begin + 300 + seconds),
+        bounds=_bounds(shop),
+        choice=Choice("plain rule", "it is only for drawing", {}),
+    )
