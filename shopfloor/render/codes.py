@@ -51,7 +51,7 @@ def _qr(text: str) -> str:
 def _bars(text: str) -> str:
     if not text.isascii() or not text.isprintable() or not 0 < len(text) <= MAX_BAR_CHARACTERS:
         return ""
-    from barcode import Code128  # type: ignore[import-untyped]
+    from barcode import Code128
 
     modules = Code128(text).build()[0]
     runs = [(bit, len(list(group))) for bit, group in itertools.groupby(modules)]

@@ -12,27 +12,26 @@ from pathlib import Path
 from string import Template
 from typing import TYPE_CHECKING, Any
 
-import numpy as np
-
-from shopfloor.render.gantt_view import GanttView, gantt_view
+from shopfloor.render.gantt_data import page_data
+from shopfloor.render.gantt_facts import gantt_view
+from shopfloor.render.gantt_view import GanttView
 from shopfloor.render.html import care_notice, document, escape, isolate, json_element, page_file
 
 if TYPE_CHECKING:
     import plotly.graph_objects as go
 
     from shopfloor.model.results import Plan
-    from shopfloor.model.shop import Ints
 
 # One script in this order; each file holds one noun.
 SCRIPTS = tuple(
     f"gantt-{noun}.js"
-    for noun in ("data", "clock", "rows", "draw", "scene", "chart", "panels", "input", "print", "start")
+    for noun in (
+        *("data", "clock", "rows", "draw", "scene", "floor", "load", "chart"),
+        *("panels", "details", "input", "print", "start"),
+    )
 )
-# Fields of the view that stand on the page as text; all others travel as data, under their own names.
-AS_TEXT = frozenset({"title", "subtitle", "stamp", "finish", "verdict", "summary", "about", "care"})
 
-_DIGITS = np.frombuffer(b"0123456789ABCDEFGHIJKLMNOPQRSTUVWXYZabcdefghijklmnopqrstuvwxyz-_", dtype="S1")
-_BITS = 5
+LONG_FINISH = 9  # characters: `Tue 01:15` still has room at full size
 
 
 def gantt_page(plan: Plan, *, stamp: str | None = None) -> str:
@@ -61,10 +60,12 @@ def page_of(view: GanttView) -> str:
         subtitle=escape(view.subtitle),
         stamp=f"; printed {escape(view.stamp)}" if view.stamp else "",
         finish=escape(view.finish),
+        long=' class="long"' if len(view.finish) > LONG_FINISH else "",
         verdict=escape(view.verdict),
         summary=_pairs((line.label, line.text) for line in view.summary),
         about=_pairs(view.about),
         chart_label=escape(f"Gantt chart. Ends {view.finish}, {view.verdict}."),
+        left_out=f'<p class="left-out">{isolate(view.left_out)}</p>\n' if view.left_out else "",
         care=care_notice(),
         data=json_element("plan-data", page_data(view)),
     )
@@ -94,102 +95,6 @@ def plotly_js() -> str:
     if spec is None or spec.origin is None:
         raise FileNotFoundError("plotly is not installed")
     return (Path(spec.origin).parent / "package_data" / "plotly.min.js").read_text(encoding="utf-8")
-
-
-# ---- the data inside the page --------------------------------------------------------------------
-
-
-def page_data(view: GanttView) -> dict[str, Any]:
-    """Return what the page's script reads: every field of the view that is not text, by its name."""
-    return {
-        "start": view.start,
-        "clock_changes": view.clock_changes,
-        "horizon_s": view.horizon_s,
-        "window_s": view.window_s,
-        "rows": [
-            {"machine": row.machine, "unit": row.unit, "name": row.name, "binds": row.binds}
-            for row in view.rows
-        ],
-        "orders": {
-            "ids": view.orders.ids,
-            "release_s": pack(view.orders.release_s),
-            "due_s": pack(view.orders.due_s + 1),
-            "binds": view.orders.binds,
-        },
-        "bars": _bars_data(view),
-        "groups": [
-            {"name": group.name, "fill": group.fill, "ink": group.ink, "pattern": group.pattern}
-            for group in view.groups
-        ],
-        "lines": [
-            {"kind": line.kind, "at_s": line.at_s, "text": line.text, "short": line.short}
-            for line in view.lines
-        ],
-        "shift_end_s": view.shift_end_s,
-        "rounds_s": view.rounds_s,
-        "closures": [
-            {"row": shut.row, "start_s": shut.start_s, "end_s": shut.end_s, "reason": shut.reason}
-            for shut in view.closures
-        ],
-        "changeovers": [
-            {"row": change.row, "start_s": change.start_s, "end_s": change.end_s, "text": change.text}
-            for change in view.changeovers
-        ],
-        "now_s": view.now_s,
-    }
-
-
-def _bars_data(view: GanttView) -> dict[str, Any]:
-    """Columns, times as steps in the longest unit that fits them all, notes by a list of distinct texts."""
-    bars = view.bars
-    tick = int(np.gcd.reduce(np.r_[bars.start_s, bars.end_s])) if len(bars) else 1
-    noted = np.fromiter(bars.notes, dtype=np.int64, count=len(bars.notes))
-    texts = {text: index for index, text in enumerate(dict.fromkeys(bars.notes.values()))}
-    which = np.array([texts[text] for text in bars.notes.values()], dtype=np.int64)
-    return {
-        "size": len(bars),
-        "tick_s": tick or 1,
-        "start_steps": pack(np.diff(bars.start_s, prepend=0) // (tick or 1)),
-        "lengths": pack((bars.end_s - bars.start_s) // (tick or 1)),
-        "row": pack(bars.row),
-        "order": pack(bars.order),
-        "group": pack(bars.group),
-        "round": pack(bars.round),
-        "part": pack(bars.part),
-        "parts": pack(bars.parts),
-        "notes": {
-            "size": len(bars.notes),
-            "bar_steps": pack(np.diff(noted, prepend=0)),
-            "text": pack(which),
-            "texts": list(texts),
-        },
-    }
-
-
-def pack(values: Ints) -> str | int:
-    """Write a column of whole numbers, none negative, as text; a column of equal numbers as that number.
-
-    Each number is written in base 32, least digit first, with 32 added to every digit that is not its
-    last; so numbers below 32 take one letter and no commas are needed. Returns 0 for an empty column.
-
-    Raises
-    ------
-    ValueError
-        If a number is negative.
-    """
-    if not len(values):
-        return 0
-    least, most = int(values.min()), int(values.max())
-    if least < 0:
-        raise ValueError(f"only numbers from 0 can be packed, not {least}")
-    if least == most:
-        return least
-    shifts = np.arange(0, max(1, most.bit_length()), _BITS)
-    rest = values[:, None] >> shifts
-    digits = (rest & 31) + 32 * (rest >> _BITS > 0)
-    used = rest > 0
-    used[:, 0] = True
-    return _DIGITS[digits[used]].tobytes().decode("ascii")
 
 
 # ---- the same as a figure -------------------------------------------------------------------------

@@ -13,7 +13,7 @@ from shopfloor.model.calendar import HOUR, elapsed
 from shopfloor.render.gantt_view import GanttView
 from shopfloor.render.html import clean
 
-_PATTERNS = {"plain": "", "dots": ".", "stripes": "/", "back-stripes": "\\", "grid": "+"}
+_PATTERNS = {"plain": "", "dots": ".", "stripes": "/", "back-stripes": "\\", "grid": "+", "upright": "|"}
 _PATTERN = {"fgopacity": 0.35, "size": 6, "solidity": 0.2}
 _DASHES = {"proved": "solid", "finish": "solid", "bound": "dash", "shift": "dot"}
 _TICK_S = (300, 900, 1800, HOUR, 2 * HOUR, 6 * HOUR, 24 * HOUR, 168 * HOUR)
@@ -51,6 +51,8 @@ def figure_of(view: GanttView) -> go.Figure:
             customdata=np.column_stack([axis.said(bars.start_s[mine]), axis.said(bars.end_s[mine])]),
             hovertemplate="<b>%{text}</b><br>%{y}<br>%{customdata[0]} – %{customdata[1]}<extra></extra>",
         )
+    _add_changeovers(figure, view, axis, labels)
+    _add_closures(figure, view, axis, labels)
     for level, line in enumerate(view.lines):
         at = axis.place(line.at_s)
         figure.add_shape(
@@ -73,6 +75,61 @@ def figure_of(view: GanttView) -> go.Figure:
             yanchor="top",
         )
     return figure
+
+
+def _add_changeovers(figure: go.Figure, view: GanttView, axis: _Axis, labels: Any) -> None:
+    """Lower than runs and hollow."""
+    changes = view.changeovers
+    if not len(changes):
+        return
+    names = np.array([_text(family.name) or "no family" for family in view.families], dtype=object)
+    figure.add_bar(
+        name="changeover",
+        orientation="h",
+        y=labels[view.bars.row[changes.bar]],
+        base=axis.places(changes.start_s),
+        x=axis.lengths(changes.end_s - changes.start_s),
+        width=0.4,
+        marker={"color": "#ffffff", "line": {"color": "#10202f", "width": 1}}
+        | {"pattern": {"shape": "\\", "fgcolor": "#5a6672", "size": 6, "solidity": 0.3}},
+        customdata=np.column_stack(
+            [
+                axis.said(changes.start_s),
+                axis.said(changes.end_s),
+                names[changes.before],
+                names[view.bars.family[changes.bar]],
+            ]
+        ),
+        hovertemplate="<b>%{customdata[2]} to %{customdata[3]}</b><br>%{y}<br>"
+        "%{customdata[0]} – %{customdata[1]}<extra></extra>",
+    )
+
+
+def _add_closures(figure: go.Figure, view: GanttView, axis: _Axis, labels: Any) -> None:
+    """Over the bars, on the rows that are shut: a bar that shows through is work that pauses."""
+    shuts = [
+        (row, shut)
+        for shut in view.closures
+        for row in (range(len(view.rows)) if shut.row is None else [shut.row])
+    ]
+    if not shuts:
+        return
+    start = np.array([shut.start_s for _, shut in shuts])
+    end = np.array([min(shut.end_s, view.horizon_s) for _, shut in shuts])
+    figure.add_bar(
+        name="closed",
+        orientation="h",
+        y=labels[[row for row, _ in shuts]],
+        base=axis.places(start),
+        x=axis.lengths(np.maximum(end - start, 0)),
+        opacity=0.75,
+        marker={"color": "#ffffff", "line": {"color": "#bcc5cd", "width": 1}}
+        | {"pattern": {"shape": "x", "fgcolor": "#9aa5af", "size": 8, "solidity": 0.2}},
+        text=[_text(shut.reason) for _, shut in shuts],
+        textposition="none",
+        customdata=np.column_stack([axis.said(start), axis.said(end)]),
+        hovertemplate="<b>%{text}</b><br>%{y}<br>%{customdata[0]} – %{customdata[1]}<extra></extra>",
+    )
 
 
 class _Axis:

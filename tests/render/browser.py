@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import shutil
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -84,3 +85,51 @@ def opened(
         yield page, seen
     finally:
         context.close()
+
+
+# ---- the Gantt page ---------------------------------------------------------------------------------
+
+
+def axis(page: Any) -> tuple[str, list]:
+    """Kind and range of the time axis."""
+    return tuple(
+        page.evaluate(
+            "(({xaxis}) => [xaxis.type, xaxis.range])(document.getElementById('frame')._fullLayout)"
+        )
+    )
+
+
+def answer(page: Any) -> str:
+    """What the page says under the chart."""
+    return re.sub("[\u2068\u2069]", "", page.text_content("#answer"))
+
+
+def pressed(page: Any, selector: str) -> str:
+    """Whether a button is pressed, as the page says it."""
+    return page.get_attribute(selector, "aria-pressed")
+
+
+def pixels(page: Any, canvas: str = "bars") -> int:
+    """A number for what the canvas shows, to tell whether it changed."""
+    return hash(page.evaluate("(id) => document.getElementById(id).toDataURL()", canvas))
+
+
+def find_bar(page: Any) -> tuple[float, float]:
+    """Move the pointer until the details of a bar show, and return where."""
+    box = page.locator("#chart").bounding_box()
+    for down in (0.35, 0.45, 0.55, 0.65, 0.75):
+        for across in (0.3, 0.4, 0.5, 0.6):
+            x, y = box["x"] + box["width"] * across, box["y"] + box["height"] * down
+            page.mouse.move(x, y)
+            if page.is_visible("#tip"):
+                return x, y
+    raise AssertionError("no bar under the pointer anywhere")
+
+
+def table_rows(page: Any) -> list[list[str]]:
+    """Open the table and return its cells."""
+    page.click("#table > summary")
+    page.wait_for_selector("#table tbody tr")
+    return page.evaluate(
+        "[...document.querySelectorAll('#table tbody tr')].map((r) => [...r.cells].map((c) => c.textContent))"
+    )

@@ -17,11 +17,15 @@ from hypothesis import strategies as st
 
 from shopfloor.model.calendar import Clock
 from shopfloor.render import gantt_view as views
-from shopfloor.render.gantt import AS_TEXT, SCRIPTS, gantt_figure, gantt_page, pack, page_data, page_of
-from shopfloor.render.gantt_view import Changeover, GanttView, ShutTime, gantt_view
+from shopfloor.render.gantt import SCRIPTS, gantt_figure, gantt_page, page_of
+from shopfloor.render.gantt_colours import BY_LATENESS
+from shopfloor.render.gantt_data import AS_TEXT, pack, page_data
+from shopfloor.render.gantt_facts import gantt_view
+from shopfloor.render.gantt_view import GanttView
 from shopfloor.render.html import CARE_NOTICE, page_file
 from tests.render.expected import assert_golden, page_text, small_plan
-from tests.render.plans import HOSTILE, hall_plan
+from tests.render.floor import floor_plan
+from tests.render.plans import HOSTILE, hall_plan, many_plan
 from tests.render.test_gantt_view import empty_plan
 
 DIGITS = "0123456789ABCDEFGHIJKLMNOPQRSTUVWXYZabcdefghijklmnopqrstuvwxyz-_"
@@ -61,12 +65,7 @@ def test_small_numbers_take_one_letter_and_none_may_be_negative():
 
 def full_view() -> GanttView:
     """A view in which every list has an entry."""
-    return replace(
-        gantt_view(hall_plan(60), stamp="05:40"),
-        closures=(ShutTime(None, 3600, 5400, "tea"), ShutTime(3, 7200, 9000, "calibration")),
-        changeovers=(Changeover(2, 0, 600, "to brass"),),
-        now_s=4000,
-    )
+    return replace(gantt_view(floor_plan(), stamp="05:40"), now_s=4000)
 
 
 def test_every_field_of_the_view_is_on_the_page_once():
@@ -80,9 +79,11 @@ def test_every_field_of_the_view_is_on_the_page_once():
     [
         ("rows", views.MachineRow),
         ("groups", views.ColourGroup),
+        ("families", views.Family),
+        ("family_groups", views.ColourGroup),
+        ("gaps", views.IdleGap),
         ("lines", views.MarkedTime),
         ("closures", views.ShutTime),
-        ("changeovers", views.Changeover),
     ],
 )
 def test_every_entry_of_a_list_has_the_fields_of_its_kind(key, kind):
@@ -95,9 +96,16 @@ def test_every_entry_of_a_list_has_the_fields_of_its_kind(key, kind):
 def test_columns_have_the_fields_of_their_kind():
     data = page_data(full_view())
     assert list(data["orders"]) == [field.name for field in fields(views.OrderColumns)]
-    renamed = {"start_s": "start_steps", "end_s": "lengths"}  # times travel as steps
+    renamed = {"start_s": "start_steps", "end_s": "lengths", "set_up_end_s": "set_ups"}  # times are steps
     names = [renamed.get(field.name, field.name) for field in fields(views.BarColumns)]
     assert list(data["bars"]) == ["size", "tick_s", *names]
+    renamed = {"bar": "bar_steps", "start_s": "ahead_s", "end_s": "done_ahead_s"}
+    names = [renamed.get(field.name, field.name) for field in fields(views.ChangeColumns)]
+    assert list(data["changeovers"]) == ["size", *names]
+    names = [field.name.replace("at_s", "at_steps") for field in fields(views.CrewRow)]
+    assert [name for name in data["crews"][0] if name != "size"] == names
+    load = page_data(gantt_view(many_plan(60_000)))["load"]
+    assert [name for name in load if name != "size"] == [field.name for field in fields(views.Load)]
 
 
 def test_the_script_reads_exactly_the_fields_that_are_sent():
@@ -214,10 +222,11 @@ def test_a_figure_holds_every_bar_once(clock, kind):
 def test_a_figure_on_dates_puts_bars_where_they_start():
     plan = small_plan()
     figure = gantt_figure(plan)
-    starts = np.sort(np.concatenate([trace.base for trace in figure.data]))
+    bars = [trace for trace in figure.data if trace.name in {group.name for group in BY_LATENESS}]
+    starts = np.sort(np.concatenate([trace.base for trace in bars]))
     expected = np.datetime64("2026-03-02T06:00:00") + plan.schedule.start_s.astype("timedelta64[s]")
     assert (starts == np.sort(expected)).all()
-    lengths = sum(int(trace.x.sum()) for trace in figure.data)
+    lengths = sum(int(trace.x.sum()) for trace in bars)
     assert lengths == 1000 * int((plan.schedule.end_s - plan.schedule.start_s).sum())
 
 
@@ -227,3 +236,21 @@ def test_a_figure_escapes_what_plotly_would_read_as_markup():
     texts += [text for trace in figure.data for text in (*trace.text, *trace.y)]
     assert any("&lt;img" in text for text in texts)
     assert not [text for text in texts if "<" in text]
+
+
+def test_a_figure_shows_changeovers_and_closures_apart_from_bars():
+    plan = floor_plan()
+    figure = gantt_figure(plan)
+    traces = {trace.name: trace for trace in figure.data}
+    assert list(traces)[-2:] == ["changeover", "closed"]
+    assert set(traces["changeover"].y) == {"COAT"}
+    assert traces["changeover"].width == 0.4
+    assert list(traces["changeover"].customdata[0]) == [
+        *("2026-03-02 06:00", "2026-03-02 06:15", "grey primer", "black"),
+    ]
+    shut = sorted(zip(traces["closed"].y, traces["closed"].text, strict=True))
+    assert [row for row in shut if row[1] not in ("tea", "lunch")] == [
+        ("CMM", "calibration"),
+        ("ENGRAVE", "not open"),
+    ]
+    assert len(shut) == 2 + 2 * 8

@@ -15,11 +15,17 @@ from hypothesis import strategies as st
 from shopfloor.model.calendar import HOUR, Clock
 from shopfloor.model.results import Bound, Choice, Plan
 from shopfloor.model.schedule import Schedule
-from shopfloor.model.shop import Operations, Orders, Shop
+from shopfloor.model.shop import Closure, Crew, Operations, Orders, Shop
+from shopfloor.render import gantt_facts
 from shopfloor.render import gantt_view as views
-from shopfloor.render.gantt_view import BY_LATENESS, MachineRow, MarkedTime, gantt_view, what_binds
+from shopfloor.render.gantt_colours import BY_LATENESS, by_family
+from shopfloor.render.gantt_facts import gantt_view
+from shopfloor.render.gantt_view import MachineRow, MarkedTime
+from shopfloor.render.gantt_words import what_binds
 from shopfloor.render.html import CARE_NOTICE
+from shopfloor.render.runs import Runs
 from tests.render.expected import round_plan, small_plan
+from tests.render.floor import crew_bound, floor_plan
 from tests.render.plans import HOSTILE, SHIFT, hall_plan
 
 SIZES = [hall_plan(200), hall_plan(200, rounds=True), hall_plan(2000, clock=Clock(), shift_end_s=None)]
@@ -35,7 +41,11 @@ def lines_of(plan: Plan) -> dict[str, str]:
 
 
 @pytest.mark.parametrize(
-    "kind", [views.GanttView, views.OrderColumns, views.BarColumns, views.MachineRow, views.ColourGroup]
+    "kind",
+    [
+        *(views.GanttView, views.OrderColumns, views.BarColumns, views.ChangeColumns, views.CrewRow),
+        *(views.MachineRow, views.ColourGroup, views.Family, views.IdleGap, views.Load),
+    ],
 )
 def test_every_field_is_explained(kind):
     for field in fields(kind):
@@ -94,14 +104,42 @@ def contrast(first: str, second: str) -> float:
     return (high + 0.05) / (low + 0.05)
 
 
-def test_groups_stay_apart_without_colour():
+FIVE = ("brass", "steel", "bronze", "cast iron", "nickel")
+
+
+@pytest.mark.parametrize(
+    "groups", [BY_LATENESS, by_family((*FIVE, ""), np.arange(6), np.arange(6, 0, -1))[1]], ids=len
+)
+def test_groups_stay_apart_without_colour(groups):
     """Text on a fill reaches contrast 7, fills differ in brightness by a third, no pattern serves twice."""
-    assert len({group.pattern for group in BY_LATENESS}) == len(BY_LATENESS)
-    for group in BY_LATENESS:
+    assert len({group.pattern for group in groups}) == len(groups)
+    for group in groups:
         assert contrast(group.fill, group.ink) >= 7
-    for first in BY_LATENESS:
-        for second in BY_LATENESS:
+    for first in groups:
+        for second in groups:
             assert first is second or contrast(first.fill, second.fill) >= 1.33
+
+
+def test_families_with_most_work_have_fills_of_their_own():
+    names = (*(f"family {k}" for k in range(7)), "")
+    families, groups = by_family(names, np.arange(7), np.array([1, 9, 2, 8, 3, 7, 6]))
+    assert [group.name for group in groups] == [
+        *("family 1", "family 3", "family 5", "family 6"),
+        "3 other families",
+    ]
+    assert [groups[family.group].name for family in families[:7]] == [
+        *("3 other families", "family 1", "3 other families", "family 3", "3 other families"),
+        *("family 5", "family 6"),
+    ]
+
+
+def test_no_family_has_a_fill_of_its_own_only_where_it_occurs():
+    named, groups = by_family(("red", "black", ""), np.array([0, 1, 0]), np.array([5, 9, 1]))
+    assert [group.name for group in groups] == ["black", "red"]
+    mixed, groups = by_family(("red", "black", ""), np.array([0, 2, 0]), np.array([5, 9, 1]))
+    assert [group.name for group in groups] == ["red", "no family"]
+    assert [groups[family.group].name for family in mixed] == ["red", "no family", "no family"]
+    assert [family.name for family in named] == ["red", "black", ""]
 
 
 # ---- words ---------------------------------------------------------------------------------------
@@ -175,7 +213,7 @@ def test_what_binds_names_ties():
         ({"machine": "CMM", "from_s": 0}, ("machine", "CMM")),
         ({"node": "order", "id": "TQ-1", "operations": 3}, ("order", "TQ-1")),
         ({"node": "machine", "id": "CMM"}, ("machine", "CMM")),
-        ({"crew": "day", "from_s": 0}, ("", "")),
+        ({"crew": "day", "from_s": 0}, ("crew", "day")),
         ({"solver": "CP-SAT"}, ("", "")),
     ],
 )
@@ -252,7 +290,7 @@ def test_breaks_are_closures_of_the_whole_hall():
 def test_clock_changes_give_back_the_wall_clock(zone, start, hours):
     """At every hour, and on both sides of every change, elapsed time plus offset is what the clock says."""
     clock = Clock(start.replace(second=0, microsecond=0), ZoneInfo(zone))
-    changes = views._clock_changes(clock, hours * HOUR)
+    changes = gantt_facts._clock_changes(clock, hours * HOUR)
     edges = [moment for at, _ in changes[1:] for moment in (at - 1, at)]
     for seconds in [*range(0, hours * HOUR, HOUR), *edges]:
         ahead = [offset for at, offset in changes if at <= seconds][-1]
@@ -262,10 +300,100 @@ def test_clock_changes_give_back_the_wall_clock(zone, start, hours):
 def test_the_clock_change_of_a_night_shift_is_found_to_the_second():
     """Europe/Berlin goes from 02:00 to 03:00 on 29 March 2026."""
     clock = Clock(datetime(2026, 3, 28, 22, 0), ZoneInfo("Europe/Berlin"))
-    assert views._clock_changes(clock, 8 * HOUR) == ((0, 0), (4 * HOUR, HOUR))
-    assert views._clock_changes(SHIFT, 8 * HOUR) == ((0, 0),)
+    assert gantt_facts._clock_changes(clock, 8 * HOUR) == ((0, 0), (4 * HOUR, HOUR))
+    assert gantt_facts._clock_changes(SHIFT, 8 * HOUR) == ((0, 0),)
 
 
 def test_hostile_names_pass_through_unchanged():
     view = gantt_view(hall_plan(60, names=HOSTILE))
     assert view.orders.ids[: len(HOSTILE)] == HOSTILE
+
+
+# ---- the floor -----------------------------------------------------------------------------------
+
+
+def test_closures_stand_on_the_rows_of_their_machine():
+    view = gantt_view(floor_plan())
+    rows = [row.label for row in view.rows]
+    assert rows == ["WASH", "BLAST", "CMM", "PRESS unit 1", "PRESS unit 2", "BALANCE", "COAT", "ENGRAVE"]
+    found = [
+        (None if shut.row is None else rows[shut.row], shut.start_s // 60, shut.end_s // 60, shut.reason)
+        for shut in view.closures
+    ]
+    assert found == [
+        (None, 180, 195, "tea"),
+        (None, 345, 375, "lunch"),
+        ("CMM", 70, 120, "calibration"),
+        ("ENGRAVE", 300, 600, "not open"),
+    ]
+
+
+def test_a_group_that_is_shut_is_shut_on_every_row_and_no_longer_than_the_chart():
+    plan = floor_plan()
+    machines = [
+        replace(machine, closed=(Closure(0, 10**8),))
+        if machine.id == "PRESS"
+        else replace(machine, closed=())
+        for machine in plan.shop.machines
+    ]
+    view = gantt_view(replace(plan, shop=replace(plan.shop, machines=tuple(machines), breaks=())))
+    edge = view.horizon_s * 11 // 10
+    assert [(shut.row, shut.start_s, shut.end_s, shut.reason) for shut in view.closures] == [
+        (3, 0, edge, "closed"),
+        (4, 0, edge, "closed"),
+    ]
+
+
+def test_bars_tell_of_set_up_heads_ways_and_breaks():
+    plan, view = floor_plan(), gantt_view(floor_plan())
+    runs = Runs(plan)
+    assert view.bars.set_up_end_s.tolist() == runs.set_up_end_s.tolist()
+    assert view.bars.heads.tolist() == runs.heads.tolist()
+    assert view.bars.way_s.tolist() == runs.way_s.tolist()
+    lengths = view.bars.end_s - view.bars.start_s
+    assert (lengths - view.bars.paused_s).tolist() == runs.worked_s.tolist()
+    assert [(row.crew, row.set_up_only) for row in view.rows[3:7]] == [
+        *[("fitters", True)] * 2, ("fitters", False), ("painters", False),
+    ]  # fmt: skip
+
+
+def test_families_play_a_part_only_where_changing_them_takes_time():
+    view = gantt_view(floor_plan())
+    assert [(family.name, view.family_groups[family.group].name) for family in view.families] == [
+        ("grey primer", "grey primer"),
+        ("signal red", "signal red"),
+        ("black", "black"),
+        ("", "no family"),
+    ]
+    assert not view.by_family
+    assert gantt_view(floor_plan(due=False)).by_family
+    plan = floor_plan()
+    free = gantt_view(replace(plan, shop=replace(plan.shop, changeovers={})))
+    assert (free.families, free.family_groups, free.by_family, len(free.changeovers)) == ((), (), False, 0)
+
+
+def test_idle_time_is_shown_of_the_machine_that_binds():
+    plan = floor_plan()
+    view = gantt_view(plan)
+    assert {view.rows[gap.row].label for gap in view.gaps} == {"COAT"}
+    assert all(gap.start_s < gap.end_s and gap.seconds > 0 for gap in view.gaps)
+    by_crew = replace(plan, bounds=(crew_bound(plan.shop, "fitters", 1),))
+    assert gantt_view(by_crew).gaps == ()
+
+
+def test_a_binding_crew_is_named_and_marked():
+    plan = floor_plan()
+    view = gantt_view(replace(plan, bounds=(crew_bound(plan.shop, "fitters", plan.makespan_s),)))
+    assert [(crew.crew, crew.binds) for crew in view.crews] == [("fitters", True), ("painters", False)]
+    assert not any(row.binds for row in view.rows)
+    assert ("Binds", "crew fitters") in [(line.label, line.text) for line in view.summary]
+
+
+def test_of_very_many_crews_those_with_least_to_spare_are_shown():
+    plan = floor_plan()
+    shop = plan.shop
+    spare = tuple(Crew(f"crew {k}", 50) for k in range(9))
+    more = replace(plan, shop=replace(shop, crews=(*spare[:5], *shop.crews, *spare[5:])))
+    view = gantt_view(more)
+    assert [crew.crew for crew in view.crews] == ["crew 0", "crew 1", "crew 2", "fitters", "painters"]
+    assert view.left_out == "This page leaves out 6 of 11 crews; plan.csv has every operation and every note."

@@ -16,6 +16,7 @@ const state = {
   lit: -1, // an order
   matches: null, // orders found by the search, or null without a search
   lateOnly: false,
+  byFamily: given.by_family, // the colours
   hover: -1, // a bar
   focus: -1, // a bar
   now: given.now_s, // seconds, or null when the line is off
@@ -43,6 +44,7 @@ const gutterWish = (() => {
   const wish = (name, binds) => ctx.measureText(oneLine(name)).width + (binds ? 58 : 18);
   let widest = 60;
   for (const machine of machines) widest = Math.max(widest, wish(machine.label, machine.binds));
+  for (const crew of crews) widest = Math.max(widest, wish(crew.crew, crew.binds));
   for (let order = 0; order < Math.min(orders.size, 400); order++) {
     widest = Math.max(widest, wish(orders.ids[order], order === orders.binds));
   }
@@ -51,7 +53,7 @@ const gutterWish = (() => {
 
 function geometry(width, height, rows, scale) {
   const head = lines().length * HEAD_ROW + 4;
-  const room = Math.max(LOWEST_ROW, height - AXIS - head - FOOT), size = Math.max(1, rows.lists.size);
+  const room = Math.max(LOWEST_ROW, height - AXIS - head - crewRoom() - FOOT), size = Math.max(1, rows.lists.size);
   const fits = size * LOWEST_ROW <= room;
   const shownRows = fits ? size : Math.floor(room / LOWEST_ROW);
   const rowHeight = fits ? Math.min(HIGHEST_ROW, room / size) : room / shownRows;
@@ -60,7 +62,8 @@ function geometry(width, height, rows, scale) {
     left: Math.min(gutterWish, 230, Math.round(width * 0.3)),
     right: width - 18, // room for the scroll bar, needed or not, so that turning the rows moves nothing
     top: AXIS,
-    bottom: AXIS + head + shownRows * rowHeight,
+    rowsBottom: AXIS + head + shownRows * rowHeight,
+    bottom: AXIS + head + shownRows * rowHeight + crewRoom(),
   };
 }
 
@@ -133,14 +136,27 @@ function moveFrame(more = {}) {
 
 // ---- painting -----------------------------------------------------------------------------------
 
+function lookOf(bar) {
+  return state.byFamily ? familyGroups[families[bars.family[bar]].group] : groups[bars.group[bar]];
+}
+
 function paintLower(s) {
   paintGround(s);
-  paintBars(s, (each) => inSight(s, () => true, each), (bar) => groups[bars.group[bar]], () => {
-    paintChangeovers(s);
+  if (loadShown(s)) {
+    paintLoad(s, s.from);
     paintClosures(s);
-    paintDues(s);
-  });
+  } else {
+    if (load && s.rows.kind === "machines" && s.to > given.detail_s) paintLoad(s, given.detail_s);
+    paintBars(s, (each) => inSight(s, () => true, each), lookOf, () => {
+      paintGaps(s);
+      paintChangeovers(s);
+      paintWays(s, (each) => inSight(s, () => true, each));
+      paintClosures(s);
+      paintDues(s);
+    });
+  }
   paintNames(s);
+  paintCrews(s);
   paintCorner(s);
   paintTrack(s);
 }
@@ -151,23 +167,25 @@ function paintCorner(s) {
   s.ctx.textAlign = "left";
   s.ctx.textBaseline = "middle";
   s.ctx.fillStyle = QUIET;
-  const text = onTheWall ? dayName(wall(Math.max(0, s.from))) : "h:mm elapsed";
-  s.ctx.fillText(fitted(s.ctx, text, s.left - 36), 8, s.top - 14);
+  const day = onTheWall ? dayName(wall(Math.max(0, s.from))) : "h:mm elapsed";
+  s.ctx.fillText(fitted(s.ctx, day, s.left - 36), 8, s.top - 14);
   const size = s.rows.lists.size;
   if (s.shownRows >= size) return;
-  const rows = `rows ${s.firstRow + 1} – ${lastRow(s)} of ${size.toLocaleString("en-GB")}`;
-  s.ctx.fillText(fitted(s.ctx, rows, s.left - 16), 8, s.top + s.head - 12);
+  const rows = `${s.firstRow + 1} – ${lastRow(s)} of ${size.toLocaleString("en-GB")}`, room = s.left - 16;
+  const text = textWidth(s.ctx, `rows ${rows}`) <= room ? `rows ${rows}` : rows;
+  s.ctx.fillText(fitted(s.ctx, text, room), 8, s.top + s.head - 12);
 }
 
 function paintUpper(s) {
   const keep = standOut();
   if (keep || state.lit >= 0) {
     s.ctx.fillStyle = "rgba(255,255,255,0.7)";
-    s.ctx.fillRect(s.left, s.top + s.head, s.right - s.left, s.bottom - s.top - s.head);
+    s.ctx.fillRect(s.left, s.top + s.head, s.right - s.left, s.rowsBottom - s.top - s.head);
   }
-  if (keep) paintBars(s, (each) => inSight(s, keep, each), (bar) => groups[bars.group[bar]]);
+  if (keep) paintBars(s, (each) => inSight(s, keep, each), lookOf);
   if (state.lit >= 0) {
     paintBars(s, (each) => ofOrderInSight(s, state.lit, each), () => LIT);
+    paintWays(s, (each) => ofOrderInSight(s, state.lit, each));
     s.ctx.fillStyle = "#000000";
     ofOrderInSight(s, state.lit, (bar, row) => s.ctx.fillRect(0, yOf(s, row) + 1, 5, s.rowHeight - 1));
   }
@@ -197,6 +215,16 @@ const repaintMarks = () => paintUpper(surface(upper));
 function repaint() {
   paintLower(surface(lower));
   repaintMarks();
+  byId("drawn").textContent = loadText();
+}
+
+function toMinute(seconds) {
+  return Math.round(seconds / 60) * 60;
+}
+
+// From when to when the window shows the plan, to the minute.
+function shownMinutes() {
+  return [toMinute(Math.max(0, state.from)), toMinute(Math.min(given.horizon_s, state.to))];
 }
 
 // ---- moving about -------------------------------------------------------------------------------
@@ -247,6 +275,13 @@ function bringIntoSight(bar) {
   }
 }
 
+// Where fewer rows fit than before, the row that the reader looks at stays.
+function keepInSight() {
+  const bar = state.focus >= 0 ? state.focus : state.lit >= 0 ? barsOfOrder.of(state.lit)[0] : -1;
+  const row = bar >= 0 ? state.rows.rowOf(bar) : -1;
+  if (row >= state.firstRow + box.shownRows) state.firstRow = row - box.shownRows + 1;
+}
+
 // Rows may have changed in number or height: measure, set up canvases and scroll bar, draw everything.
 function relay() {
   const scale = Math.min(window.devicePixelRatio || 1, 3);
@@ -264,6 +299,7 @@ function relay() {
   scroller.firstElementChild.style.height = `${size * box.rowHeight}px`;
   scroller.style.top = `${box.top + box.head}px`;
   scroller.style.height = `${box.shownRows * box.rowHeight}px`;
+  if (before && before.shownRows > box.shownRows) keepInSight();
   state.firstRow = Math.max(0, Math.min(state.firstRow, size - box.shownRows));
   scroller.scrollTop = state.firstRow * box.rowHeight;
   const framed = before && ["right", "bottom", "left", "top"].every((key) => before[key] === box[key]);
@@ -274,7 +310,8 @@ function relay() {
 
 // What the pointer is on, from the plot's rectangle and a binary search in one row.
 function barUnder(x, y) {
-  if (x < box.left || x > box.right || y < box.top + box.head || y > box.bottom) return -1;
+  if (x < box.left || x > box.right || y < box.top + box.head || y >= box.rowsBottom) return -1;
+  if (loadShown({ ...box, from: state.from, to: state.to, firstRow: state.firstRow })) return -1;
   const row = state.firstRow + Math.floor((y - box.top - box.head) / box.rowHeight);
   if (row >= state.rows.lists.size) return -1;
   const perPixel = (state.to - state.from) / (box.right - box.left);

@@ -32,6 +32,11 @@ function scaled(values, factor) {
   return values;
 }
 
+function added(values, others) {
+  for (let i = 0; i < values.length; i++) values[i] += others[i];
+  return values;
+}
+
 function summed(steps) {
   for (let i = 1; i < steps.length; i++) steps[i] += steps[i - 1];
   return steps;
@@ -39,43 +44,68 @@ function summed(steps) {
 
 const bars = (() => {
   const packed = given.bars, size = packed.size, tick = packed.tick_s;
-  const start = scaled(summed(unpack(packed.start_steps, size)), tick);
-  const end = scaled(unpack(packed.lengths, size), tick);
-  for (let i = 0; i < size; i++) end[i] += start[i];
+  const column = (name) => unpack(packed[name], size);
+  const start = scaled(summed(column("start_steps")), tick);
+  const end = added(scaled(column("lengths"), tick), start);
+  const setUpEnd = added(scaled(column("set_ups"), tick), start);
   const notes = new Map();
   const at = summed(unpack(packed.notes.bar_steps, packed.notes.size));
   const text = unpack(packed.notes.text, packed.notes.size);
   for (let i = 0; i < at.length; i++) notes.set(at[i], packed.notes.texts[text[i]]);
   return {
-    size, start, end, notes,
-    row: unpack(packed.row, size),
-    order: unpack(packed.order, size),
-    group: unpack(packed.group, size),
-    round: unpack(packed.round, size),
-    part: unpack(packed.part, size),
-    parts: unpack(packed.parts, size),
+    size, start, end, setUpEnd, notes,
+    row: column("row"),
+    order: column("order"),
+    group: column("group"),
+    family: column("family"),
+    paused: column("paused_s"),
+    heads: column("heads"),
+    way: column("way_s"),
+    round: column("round"),
+    part: column("part"),
+    parts: column("parts"),
   };
 })();
 
 const orders = (() => {
   const size = given.orders.ids.length;
   const due = unpack(given.orders.due_s, size); // sent one higher: 0 is no due time
-  const release = unpack(given.orders.release_s, size);
-  const first = new Float64Array(size).fill(Infinity), finish = new Float64Array(size);
+  const release = unpack(given.orders.release_s, size), finish = unpack(given.orders.finish_s, size);
+  const first = new Float64Array(size).fill(Infinity);
   for (let bar = 0; bar < bars.size; bar++) {
-    const order = bars.order[bar];
-    first[order] = Math.min(first[order], bars.start[bar]);
-    finish[order] = Math.max(finish[order], bars.end[bar]);
+    first[bars.order[bar]] = Math.min(first[bars.order[bar]], bars.start[bar]);
   }
   for (let order = 0; order < size; order++) due[order] -= 1;
   return { size, ids: given.orders.ids, due, release, first, finish, binds: given.orders.binds };
 })();
 
-const groups = given.groups;
+const changes = (() => {
+  const packed = given.changeovers, size = packed.size, column = (name) => unpack(packed[name], size);
+  const bar = summed(column("bar_steps")), start = column("ahead_s"), end = column("done_ahead_s");
+  const of = new Map();
+  for (let i = 0; i < size; i++) {
+    start[i] = bars.start[bar[i]] - start[i];
+    end[i] = bars.start[bar[i]] - end[i];
+    of.set(bar[i], i);
+  }
+  return { size, bar, start, end, of, seconds: column("seconds"), before: column("before") };
+})();
+
+const crews = given.crews.map((crew) => ({
+  ...crew,
+  at: summed(unpack(crew.at_steps, crew.size)),
+  used: unpack(crew.used, crew.size),
+  there: unpack(crew.there, crew.size),
+}));
+
+const load = given.load && { ...given.load, share: unpack(given.load.share, given.load.size) };
+
+const groups = given.groups, families = given.families, familyGroups = given.family_groups;
 const machines = given.rows.map((row) => ({
   ...row,
   label: row.unit ? `${row.machine} unit ${row.unit}` : row.machine,
 }));
+const closures = given.closures;
 
 function isLate(order) {
   return orders.due[order] >= 0 && orders.finish[order] > orders.due[order];

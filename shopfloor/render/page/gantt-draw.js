@@ -1,6 +1,7 @@
 // Drawing on a canvas, the same for the screen and for paper. A "surface" says where and what:
-// { ctx, scale, width, height, left, right, top, bottom, head, small, from, to, rows, firstRow, shownRows,
-//   rowHeight }; `head` is the part of the frame above the rows, `small` the least size of text in a bar.
+// { ctx, scale, width, height, left, right, top, bottom, rowsBottom, head, small, from, to, rows, firstRow,
+//   shownRows, rowHeight }; `head` is the part of the frame above the rows, crews lie between `rowsBottom` and
+//   `bottom`, `small` is the least size of text in a bar.
 
 const FONT = '"Segoe UI", "Helvetica Neue", Arial, "Liberation Sans", sans-serif';
 const INK = "#10202f", QUIET = "#5a6672", HAIR = "#d5dbe1", PAPER = "#ffffff", SHUT = "#bcc5cd";
@@ -69,6 +70,8 @@ function drawTile(ctx, kind) {
   if (kind === "grid") {
     ctx.moveTo(0, 4);
     ctx.lineTo(TILE, 4);
+  }
+  if (kind === "grid" || kind === "upright") {
     ctx.moveTo(4, 0);
     ctx.lineTo(4, TILE);
   }
@@ -161,10 +164,39 @@ function paintBars(s, source, style, between = () => {}) {
     ctx.lineWidth = 1;
     ctx.strokeStyle = "rgba(16,32,47,0.5)";
     ctx.strokeRect(box.x + 0.5, box.y + 0.5, box.width - 1, box.height - 1);
-    if (box.width > 18 && roomy.length < LABELS) roomy.push([bar, box, group]);
+    const ready = paintSetUp(s, bar, box, group);
+    if (state.byFamily && isLate(bars.order[bar])) paintLate(s, box);
+    if (box.width > 18 && roomy.length < LABELS) roomy.push([bar, box, group, ready]);
   });
   between();
   paintTexts(s, roomy);
+}
+
+// The set-up of an operation is the first part of its bar: cross-hatched, up to a line. Returns its width.
+function paintSetUp(s, bar, box, group) {
+  if (bars.setUpEnd[bar] === bars.start[bar]) return 0;
+  const width = Math.min(xOf(s, bars.setUpEnd[bar]) - box.x, box.width - 1);
+  if (width < 5) return 0;
+  const { ctx } = s;
+  ctx.fillStyle = group.fill;
+  ctx.fillRect(box.x + 1, box.y + 1, width, box.height - 2);
+  ctx.save();
+  ctx.globalAlpha = 0.55;
+  ctx.fillStyle = pattern(s, "cross", group.ink);
+  ctx.fillRect(box.x + 1, box.y + 1, width, box.height - 2);
+  ctx.restore();
+  ctx.fillStyle = group.ink;
+  ctx.fillRect(Math.round(box.x + width), box.y, 1, box.height);
+  return width;
+}
+
+// In the colours of families a line along the foot marks the bars of late orders.
+function paintLate(s, box) {
+  const { ctx } = s, y = box.y + box.height - 5;
+  ctx.fillStyle = PAPER;
+  ctx.fillRect(box.x, y, box.width, 5);
+  ctx.fillStyle = "#9c3412";
+  ctx.fillRect(box.x, y + 1, box.width, 4);
 }
 
 // Names in bars. One size serves the whole chart, the largest at which most of them fit; the others are
@@ -174,13 +206,27 @@ function paintTexts(s, roomy) {
   ctx.textBaseline = "middle";
   ctx.textAlign = "center";
   const size = commonSize(s, roomy);
-  for (const [bar, box, group] of roomy) {
-    const way = s.rows
-      .inside(bar)
-      .flatMap((text) => [[text, size, 600], [text, s.small, 400]])
-      .find(([text, pixels, weight]) => nameWidth(ctx, text, weight) * pixels <= box.width - 6);
-    if (way) paintText(s, way, box, group);
+  for (const [bar, box, group, ready] of roomy) {
+    const ways = s.rows.inside(bar).flatMap((text) => [[text, size, 600], [text, s.small, 400]]);
+    const fits = (room) => ([text, pixels, weight]) => nameWidth(ctx, text, weight) * pixels <= room - 6;
+    const run = openPart(s, bar, { ...box, x: box.x + ready, width: box.width - ready });
+    const way = ways.find(fits(run.width)), wide = ways.find(fits(box.width));
+    if (way === ways[0] || (way && (bars.paused[bar] || wide !== ways[0]))) paintText(s, way, run, group);
+    else if (wide && !bars.paused[bar]) paintText(s, wide, box, group, ready > 0);
   }
+}
+
+// The longest part of a box in which its bar is worked: closures have texts of their own.
+function openPart(s, bar, box) {
+  if (!bars.paused[bar]) return box;
+  let parts = [[box.x, box.x + box.width]];
+  for (const shut of closures) {
+    if (shut.row !== null && shut.row !== bars.row[bar]) continue;
+    const from = xOf(s, shut.start_s), to = xOf(s, shut.end_s);
+    parts = parts.flatMap(([start, end]) => [[start, Math.min(end, from)], [Math.max(start, to), end]]);
+  }
+  const [start, end] = parts.reduce((a, b) => (b[1] - b[0] > a[1] - a[0] ? b : a));
+  return { ...box, x: start, width: Math.max(0, end - start) };
 }
 
 function commonSize(s, roomy) {
@@ -198,9 +244,9 @@ function nameWidth(ctx, text, weight) {
   return textWidth(ctx, text) / 100;
 }
 
-function paintText(s, [text, size, weight], box, group) {
+function paintText(s, [text, size, weight], box, group, overSetUp = false) {
   const { ctx } = s, x = box.x + box.width / 2, y = box.y + box.height / 2 + 0.5;
-  if (group.pattern !== "plain") { // a quiet ground, so that the pattern does not run through letters
+  if (group.pattern !== "plain" || overSetUp) { // a quiet ground, so that the pattern does not run through letters
     const width = nameWidth(ctx, text, weight) * size;
     ctx.fillStyle = group.fill;
     ctx.fillRect(x - width / 2 - 3, y - size * 0.68, width + 6, size * 1.3);

@@ -29,7 +29,12 @@ function hoverOn(bar, x, y) {
     repaintMarks();
     chart.style.cursor = bar >= 0 ? "pointer" : "";
   }
-  showTip(bar, x, y);
+  showTip(bar, x, y, bar < 0 && x !== undefined ? thingUnder(x, y) : null);
+}
+
+function thingUnder(x, y) {
+  const rect = chart.getBoundingClientRect(), { from, to, firstRow } = state;
+  return thingAt({ ...box, from, to, firstRow }, x - rect.left, y - rect.top);
 }
 
 function dragTo(event) {
@@ -192,6 +197,7 @@ function toggled(button) {
 
 onClick("as-orders", (event) => setRows(toggled(event.currentTarget) ? "orders" : "machines"));
 onClick("late-only", (event) => setLateOnly(toggled(event.currentTarget)));
+onClick("by-family", (event) => setByFamily(toggled(event.currentTarget)));
 onClick("zoom-in", () => zoom(0.5));
 onClick("zoom-out", () => zoom(2));
 onClick("opening", () => setWindow(...openingWindow()));

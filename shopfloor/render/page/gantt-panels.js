@@ -1,4 +1,4 @@
-// Words beside the chart: details of a bar, the route of an order, search, legend, the table.
+// Words beside the chart: the route of an order, search, legend, the table.
 // Every name is written with textContent; nothing here reads markup.
 
 const tip = byId("tip"), answer = byId("answer"), said = byId("said"), route = byId("route");
@@ -16,54 +16,6 @@ function standing(order) {
   if (due < 0) return "no due time";
   if (finish > due) return `due ${say(due)}, late by ${duration(finish - due)}`;
   return finish === due ? `due ${say(due)}, to the minute` : `due ${say(due)}, ${duration(due - finish)} to spare`;
-}
-
-// ---- details of one bar -------------------------------------------------------------------------
-
-// How long a bar is worked on: closures that it spans are no work.
-function workText(bar) {
-  const start = bars.start[bar], end = bars.end[bar];
-  let shut = 0;
-  for (const closed of given.closures) {
-    const here = closed.row === null || closed.row === bars.row[bar];
-    if (here) shut += Math.max(0, Math.min(end, closed.end_s) - Math.max(start, closed.start_s));
-  }
-  return shut ? `${duration(end - start - shut)} of work, ${duration(shut)} closed` : duration(end - start);
-}
-
-function detailLines(bar) {
-  const order = bars.order[bar], machine = machines[bars.row[bar]];
-  const name = machine.name && machine.name !== machine.machine ? ` (${oneLine(machine.name)})` : "";
-  const found = [
-    `${oneLine(machine.label)}${name}`,
-    `${span(bars.start[bar], bars.end[bar])}, ${workText(bar)}`,
-    `order ends ${say(orders.finish[order])}, ${standing(order)}`,
-  ];
-  if (orders.release[order] > 0) found.push(`not before ${say(orders.release[order])}`);
-  const pieces = [];
-  if (bars.round[bar]) pieces.push(`round ${bars.round[bar]}`);
-  if (bars.parts[bar] > 1) pieces.push(`part ${bars.part[bar]} of ${bars.parts[bar]}`);
-  if (pieces.length) found.push(pieces.join(", "));
-  const note = bars.notes.get(bar);
-  if (note) found.push(`note: ${oneLine(note)}`);
-  return found;
-}
-
-function showTip(bar, x, y) {
-  if (bar < 0) {
-    tip.hidden = true;
-    return;
-  }
-  const shown = detailLines(bar);
-  while (tip.children.length < shown.length + 1) tip.append(element("p"));
-  while (tip.children.length > shown.length + 1) tip.lastElementChild.remove();
-  tip.children[0].textContent = oneLine(orders.ids[bars.order[bar]]);
-  shown.forEach((line, i) => (tip.children[i + 1].textContent = line));
-  tip.hidden = false;
-  const { offsetWidth: width, offsetHeight: height } = tip, edge = 8;
-  const left = x + 16 + width + edge > innerWidth ? x - 16 - width : x + 16;
-  const top = y + 18 + height + edge > innerHeight ? y - 12 - height : y + 18;
-  tip.style.transform = `translate(${Math.max(edge, left)}px, ${Math.max(edge, top)}px)`;
 }
 
 // ---- one order lit in every row -----------------------------------------------------------------
@@ -85,19 +37,19 @@ function light(order) {
   for (const bar of visits) {
     const item = element("li"), machine = machines[bars.row[bar]];
     item.append(element("time", span(bars.start[bar], bars.end[bar])), element("b", oneLine(machine.label)));
-    const part = bars.parts[bar] > 1 ? `part ${bars.part[bar]} of ${bars.parts[bar]}` : "";
-    const extra = [part, bars.notes.get(bar) ? oneLine(bars.notes.get(bar)) : ""].filter(Boolean).join(", ");
+    const note = bars.notes.get(bar) ? oneLine(bars.notes.get(bar)) : "";
+    const extra = [partText(bar), setUpText(bar), note].filter(Boolean).join(", ");
     if (extra) item.append(element("small", extra));
     route.append(item);
+    if (bars.way[bar]) route.append(element("li", wayText(bar), "way"));
   }
-}
-
-function sayBar(bar) {
-  said.textContent = `${named(orders.ids[bars.order[bar]])}: ${detailLines(bar).join("; ")}`;
+  if (route.scrollHeight > route.clientHeight) route.tabIndex = 0; // so that keys can scroll it
+  else route.removeAttribute("tabindex");
 }
 
 // ---- search and filter --------------------------------------------------------------------------
 
+const onThisPage = given.detail_s < given.horizon_s ? " on this page" : "";
 let foundOrders = [];
 
 function search() {
@@ -122,7 +74,7 @@ function search() {
   if (wanted && !one) {
     answer.textContent = foundOrders.length
       ? `${count(foundOrders.length, "order")} found. Enter lights them one after the other.`
-      : "No order or note holds this text.";
+      : `No order or note${onThisPage} holds this text.`;
   }
 }
 
@@ -146,7 +98,7 @@ function setRows(kind) {
   state.hover = -1;
   showTip(-1);
   byId("as-orders").setAttribute("aria-pressed", String(kind === "orders"));
-  byId("due-key").hidden = kind !== "orders" || byId("late-only").hidden;
+  showDueKey();
   relay();
   const anchor = state.focus >= 0 ? state.focus : state.lit >= 0 ? barsOfOrder.of(state.lit)[0] : -1;
   if (anchor >= 0 && state.rows.rowOf(anchor) >= 0) {
@@ -175,7 +127,7 @@ function setLateOnly(on) {
   if (!on) return;
   let late = 0;
   for (let order = 0; order < orders.size; order++) if (isLate(order)) late++;
-  answer.textContent = late ? `${count(late, "order")} late.` : "No order is late.";
+  answer.textContent = late ? `${count(late, "order")} late${onThisPage}.` : `No order is late${onThisPage}.`;
 }
 
 // ---- legend -------------------------------------------------------------------------------------
@@ -192,25 +144,73 @@ function legendKey(draw) {
   return canvas;
 }
 
+function striped(kind, colour) {
+  return (s) => {
+    s.ctx.fillStyle = pattern(s, kind, colour);
+    s.ctx.fillRect(0, 0, 34, 18);
+  };
+}
+
+function setUpKey(s) {
+  s.ctx.fillStyle = PAPER;
+  s.ctx.fillRect(0, 0, 34, 18);
+  striped("cross", QUIET)(s);
+  s.ctx.fillStyle = PAPER;
+  s.ctx.fillRect(18, 0, 16, 18);
+  s.ctx.fillStyle = INK;
+  s.ctx.fillRect(17, 0, 1, 18);
+}
+
+function idleKey({ ctx }) {
+  ctx.strokeStyle = QUIET;
+  ctx.setLineDash([3, 3]);
+  ctx.strokeRect(4.5, 4.5, 25, 9);
+  ctx.setLineDash([]);
+}
+
+function crewKey({ ctx }) {
+  ctx.fillStyle = USED;
+  ctx.fillRect(0, 9, 17, 9);
+  ctx.fillStyle = ALL_USED;
+  ctx.fillRect(17, 5, 17, 13);
+  ctx.fillStyle = "#000000";
+  ctx.fillRect(0, 4, 34, 2);
+}
+
 function buildLegend() {
-  const used = new Set(bars.group), legend = byId("legend");
+  const legend = byId("legend"), shown = state.byFamily ? familyGroups : groups;
+  const used = new Set(state.byFamily ? bars.family.map((family) => families[family].group) : bars.group);
+  legend.replaceChildren();
   const add = (text, draw) => {
     const item = element("li");
     item.append(legendKey(draw), element("span", text));
     legend.append(item);
   };
-  groups.forEach((group, index) => {
-    if (used.has(index)) add(group.name, (s) => fillAs(s, group, 0, 0, 34, 18));
+  shown.forEach((group, index) => {
+    if (used.has(index)) add(oneLine(group.name), (s) => fillAs(s, group, 0, 0, 34, 18));
   });
-  const striped = (kind, colour) => (s) => {
-    s.ctx.fillStyle = pattern(s, kind, colour);
-    s.ctx.fillRect(0, 0, 34, 18);
-  };
-  if (given.closures.length) add("closed", striped("cross", SHUT));
-  if (given.changeovers.length) add("changeover", striped("back-stripes", QUIET));
+  if (state.byFamily && orders.due.some((due, order) => isLate(order))) {
+    add("late", (s) => paintLate(s, { x: 0, y: 0, width: 34, height: 18 }));
+  }
+  if (bars.setUpEnd.some((end, bar) => end > bars.start[bar])) add("set-up", setUpKey);
+  if (changes.size) add("changeover", striped("back-stripes", QUIET));
+  if (closures.length) add("closed", striped("cross", SHUT));
+  if (given.gaps.length) add("idle where it binds", idleKey);
+  if (crews.length) add("heads at work; dark: all", crewKey);
   add("due", (s) => paintFlag(s.ctx, 13, 2, 14));
   legend.lastElementChild.id = "due-key";
-  legend.lastElementChild.hidden = true;
+  showDueKey();
+}
+
+function showDueKey() {
+  byId("due-key").hidden = state.rows.kind !== "orders" || byId("late-only").hidden;
+}
+
+function setByFamily(on) {
+  state.byFamily = on;
+  byId("by-family").setAttribute("aria-pressed", String(on));
+  buildLegend();
+  relay();
 }
 
 // ---- the table ----------------------------------------------------------------------------------
@@ -218,22 +218,47 @@ function buildLegend() {
 const PAGE = 500;
 let tablePage = 0;
 
-function tableRow(bar) {
-  const machine = machines[bars.row[bar]], order = bars.order[bar], due = orders.due[order];
-  return [
-    say(bars.start[bar]), say(bars.end[bar]), machine.machine, machine.unit || "",
-    orders.ids[order], bars.round[bar] || "",
-    bars.parts[bar] > 1 ? `${bars.part[bar]} of ${bars.parts[bar]}` : "",
-    due < 0 ? "" : say(due), groups[bars.group[bar]].name, bars.notes.get(bar) ?? "",
-  ];
+// A title and what stands under it; the floor's own columns only where the plan has what they tell.
+const COLUMNS = [
+  ["Start", (bar) => say(bars.start[bar])],
+  ["End", (bar) => say(bars.end[bar])],
+  ["Machine", (bar) => machines[bars.row[bar]].machine],
+  ["Unit", (bar) => machines[bars.row[bar]].unit || ""],
+  ["Order", (bar) => orders.ids[bars.order[bar]]],
+  ["Round", (bar) => bars.round[bar] || ""],
+  ["Part", (bar) => (bars.parts[bar] > 1 ? `${bars.part[bar]} of ${bars.parts[bar]}` : "")],
+  ["Set-up to", (bar) => (bars.setUpEnd[bar] > bars.start[bar] ? say(bars.setUpEnd[bar]) : ""), "optional"],
+  ["Closed", (bar) => (bars.paused[bar] ? duration(bars.paused[bar]) : ""), "optional"],
+  ["Family", (bar) => (families.length ? families[bars.family[bar]].name : ""), "optional"],
+  ["Changeover before", (bar) => (changes.of.has(bar) ? changeText(changes.of.get(bar)) : ""), "optional"],
+  ["Heads", (bar) => bars.heads[bar] || "", "optional"],
+  ["On the way after", (bar) => (bars.way[bar] ? duration(bars.way[bar]) : ""), "optional"],
+  ["Due", (bar) => (orders.due[bars.order[bar]] < 0 ? "" : say(orders.due[bars.order[bar]]))],
+  ["Standing", (bar) => groups[bars.group[bar]].name],
+  ["Note", (bar) => bars.notes.get(bar) ?? ""],
+];
+
+function anyBar(cell) {
+  for (let bar = 0; bar < bars.size; bar++) if (cell(bar)) return true;
+  return false;
+}
+
+let columns = null;
+
+function buildTableHead() {
+  columns = COLUMNS.filter(([, cell, optional]) => !optional || anyBar(cell));
+  const row = byId("table").querySelector("thead tr");
+  for (const [title] of columns) row.append(element("th", title));
+  for (const head of row.children) head.scope = "col";
 }
 
 function fillTable() {
+  if (!columns) buildTableHead();
   const first = tablePage * PAGE, last = Math.min(first + PAGE, bars.size);
   const body = element("tbody");
   for (let bar = first; bar < last; bar++) {
     const row = element("tr");
-    for (const cell of tableRow(bar)) row.append(element("td", cell));
+    for (const [, cell] of columns) row.append(element("td", cell(bar)));
     body.append(row);
   }
   byId("table").querySelector("tbody").replaceWith(body);

@@ -43,14 +43,16 @@ function paintSheet(firstRow, height) {
 }
 
 function sheetGeometry(firstRow, height) {
-  const size = state.rows.lists.size, head = lines().length * HEAD_ROW + 4, room = height - AXIS - head - FOOT;
+  const size = state.rows.lists.size, head = lines().length * HEAD_ROW + 4;
+  const room = height - AXIS - head - crewRoom() - FOOT;
   const shownRows = Math.max(1, Math.min(size - firstRow, Math.floor(room / PRINT_ROW)));
   const rowHeight = Math.min(HIGHEST_ROW, room / shownRows);
   return {
     scale: SHEET.scale, width: SHEET.width, height, small: PRINT_TEXT,
     rows: state.rows, head, shownRows, rowHeight, firstRow, from: state.from, to: state.to,
     left: box.left, right: SHEET.width - 8,
-    top: AXIS, bottom: AXIS + head + shownRows * rowHeight,
+    top: AXIS, rowsBottom: AXIS + head + shownRows * rowHeight,
+    bottom: AXIS + head + shownRows * rowHeight + crewRoom(),
   };
 }
 
@@ -74,9 +76,7 @@ function buildSheets() {
 }
 
 function windowText() {
-  const minute = (seconds) => Math.round(seconds / 60) * 60;
-  const from = minute(Math.max(0, state.from)), to = minute(Math.min(given.horizon_s, state.to));
-  const whole = from === 0 && to === minute(given.horizon_s);
+  const [from, to] = shownMinutes(), whole = from === 0 && to === toMinute(given.horizon_s);
   return whole ? "" : `${span(from, to)} of a plan to ${say(given.horizon_s)}`;
 }
 

@@ -1,4 +1,4 @@
-// Which bars stand in which row: machines as rows, or orders as rows.
+// Which bars stand in which row: machines as rows, or orders as rows. `placeOf` is where a machine stands, or -1.
 
 function machineRows() {
   return {
@@ -7,9 +7,12 @@ function machineRows() {
     rowOf: (bar) => bars.row[bar],
     label: (row) => oneLine(machines[row].label),
     binds: (row) => machines[row].binds,
-    inside: (bar) => [oneLine(orders.ids[bars.order[bar]])],
+    inside: (bar) => {
+      const id = oneLine(orders.ids[bars.order[bar]]);
+      return bars.parts[bar] > 1 ? [`${id} (${bars.part[bar]}/${bars.parts[bar]})`, id] : [id];
+    },
     due: () => -1,
-    machine: (row) => row,
+    placeOf: (row) => row,
   };
 }
 
@@ -33,7 +36,7 @@ function orderRows(keep) {
       return machine.unit ? [oneLine(machine.label), oneLine(machine.machine)] : [oneLine(machine.label)];
     },
     due: (row) => orders.due[shown[row]],
-    machine: () => -1,
+    placeOf: () => -1,
   };
 }
 

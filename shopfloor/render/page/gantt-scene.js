@@ -1,4 +1,4 @@
-// What stands around the bars: ground, closures and changeovers, names of rows, lines with their labels.
+// What stands around the bars: ground, names of rows, lines with their labels.
 
 function paintGround(s) {
   const { ctx } = s, last = lastRow(s);
@@ -30,73 +30,10 @@ function paintRounds(s) {
     if (at <= s.from || at >= s.to) continue;
     const x = Math.round(xOf(s, at)) + 0.5;
     ctx.moveTo(x, s.top + s.head);
-    ctx.lineTo(x, s.bottom);
+    ctx.lineTo(x, s.rowsBottom);
   }
   ctx.stroke();
   ctx.restore();
-}
-
-// Closures lie over the bars: a bar that shows through is work that pauses.
-function paintClosures(s) {
-  const { ctx } = s;
-  for (const shut of given.closures) {
-    if (shut.end_s <= s.from || shut.start_s >= s.to) continue;
-    const [y, height] = closedRows(s, shut.row);
-    if (height <= 0) continue;
-    const x = Math.max(s.left, xOf(s, shut.start_s)), width = Math.min(s.right, xOf(s, shut.end_s)) - x;
-    ctx.fillStyle = "rgba(255,255,255,0.66)";
-    ctx.fillRect(x, y, width, height);
-    ctx.fillStyle = pattern(s, "cross", SHUT);
-    ctx.fillRect(x, y, width, height);
-    paintReason(s, oneLine(shut.reason), x, y, width, height);
-  }
-}
-
-function closedRows(s, row) {
-  const first = yOf(s, s.firstRow), bottom = s.bottom;
-  if (row === null) return [first, bottom - first];
-  for (let place = s.firstRow; place < lastRow(s); place++) {
-    if (s.rows.machine(place) === row) return [yOf(s, place) + 1, s.rowHeight - 1];
-  }
-  return [0, 0];
-}
-
-function paintReason(s, text, x, y, width, height) {
-  const { ctx } = s;
-  ctx.save();
-  ctx.font = `600 12px ${FONT}`;
-  ctx.textAlign = "center";
-  ctx.textBaseline = "middle";
-  const upright = width < textWidth(ctx, text) + 10;
-  const shown = fitted(ctx, text, (upright ? height : width) - 8), room = textWidth(ctx, shown) + 8;
-  if (shown.length > 1 && Math.min(width, height) >= 14) {
-    ctx.translate(x + width / 2, y + (upright ? Math.min(height / 2, room / 2 + 6) : Math.min(height / 2, 16)));
-    if (upright) ctx.rotate(-Math.PI / 2);
-    ctx.fillStyle = PAPER;
-    ctx.fillRect(-room / 2, -8, room, 16);
-    ctx.fillStyle = INK;
-    ctx.fillText(shown, 0, 0.5);
-  }
-  ctx.restore();
-}
-
-// Changeovers are lower than runs, hollow and striped: setup is not work on an order.
-function paintChangeovers(s) {
-  const { ctx } = s;
-  for (const change of given.changeovers) {
-    if (change.end_s <= s.from || change.start_s >= s.to) continue;
-    const [y, height] = closedRows(s, change.row);
-    if (height <= 0) continue;
-    const x = Math.max(s.left, xOf(s, change.start_s)), width = Math.min(s.right, xOf(s, change.end_s)) - x;
-    const low = height * 0.45, top = y + height - low - 3;
-    ctx.fillStyle = PAPER;
-    ctx.fillRect(x, top, width, low);
-    ctx.fillStyle = pattern(s, "back-stripes", QUIET);
-    ctx.fillRect(x, top, width, low);
-    ctx.strokeStyle = INK;
-    ctx.lineWidth = 1;
-    ctx.strokeRect(x + 0.5, top + 0.5, Math.max(0, width - 1), low - 1);
-  }
 }
 
 // ---- names of the rows --------------------------------------------------------------------------
@@ -104,26 +41,30 @@ function paintChangeovers(s) {
 function paintNames(s) {
   const { ctx } = s, last = lastRow(s);
   const size = Math.max(13, Math.min(17, Math.floor(s.rowHeight * 0.42)));
-  ctx.textBaseline = "middle";
   for (let row = s.firstRow; row < last; row++) {
-    const y = yOf(s, row), middle = y + s.rowHeight / 2 + 0.5, binds = s.rows.binds(row);
-    let room = s.left - 16;
-    if (binds) {
-      ctx.fillStyle = INK;
-      ctx.fillRect(0, y + 1, s.left - 1, s.rowHeight - 1);
-      ctx.fillStyle = PAPER;
-      ctx.font = `12px ${FONT}`;
-      ctx.textAlign = "right";
-      ctx.fillText("binds", s.left - 8, middle);
-      room -= textWidth(ctx, "binds") + 8;
-    }
-    ctx.font = `600 ${size}px ${FONT}`;
-    ctx.textAlign = "left";
-    ctx.fillStyle = binds ? PAPER : INK;
-    ctx.fillText(fitted(ctx, s.rows.label(row), room), 8, middle);
+    paintName(s, s.rows.label(row), s.rows.binds(row), yOf(s, row) + 1, s.rowHeight - 1, size);
   }
   ctx.fillStyle = INK;
-  ctx.fillRect(s.left - 1, s.top, 1, s.bottom - s.top);
+  ctx.fillRect(s.left - 1, s.top, 1, s.rowsBottom - s.top);
+}
+
+function paintName(s, name, binds, y, height, size) {
+  const { ctx } = s, middle = y + height / 2;
+  let room = s.left - 16;
+  ctx.textBaseline = "middle";
+  if (binds) {
+    ctx.fillStyle = INK;
+    ctx.fillRect(0, y, s.left - 1, height);
+    ctx.fillStyle = PAPER;
+    ctx.font = `12px ${FONT}`;
+    ctx.textAlign = "right";
+    ctx.fillText("binds", s.left - 8, middle);
+    room -= textWidth(ctx, "binds") + 8;
+  }
+  ctx.font = `600 ${size}px ${FONT}`;
+  ctx.textAlign = "left";
+  ctx.fillStyle = binds ? PAPER : INK;
+  ctx.fillText(fitted(ctx, oneLine(name), room), 8, middle);
 }
 
 // In rows of orders: a flag at the due time.

@@ -1,6 +1,8 @@
 // Last: put everything up.
 
 buildLegend();
+byId("by-family").hidden = !families.length;
+byId("by-family").setAttribute("aria-pressed", String(state.byFamily));
 [state.from, state.to] = openingWindow();
 byId("late-only").hidden = !orders.due.some((due) => due >= 0);
 byId("now").hidden = !onTheWall;
