@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING
 from shopfloor.render.codes import code
 from shopfloor.render.dispatch_sheets import dispatch_view
 from shopfloor.render.dispatch_view import (
+    Aside,
     DispatchView,
     MachineList,
     Move,
@@ -29,7 +30,6 @@ if TYPE_CHECKING:
 
 LONG_NAME = 24  # characters
 
-_RUN_TITLES = ("No", "Unit", "Order", "Start", "End", "Began", "Ended", "Done")
 _TICK = '<span class="tick"></span>'
 
 
@@ -117,11 +117,7 @@ def _index(view: DispatchView) -> str:
 
 
 def _machine_sheet(view: DispatchView, number: int, sheet: MachineList, codes: str | None) -> str:
-    grouped = sheet.units > 1
-    runs = f"{len(sheet.runs)} run{'s' if len(sheet.runs) > 1 else ''}"
-    units = f"{sheet.units} units, " if grouped else ""
-    facts = f"{units}{runs}, {sheet.work} of work, {sheet.first} to {sheet.last}"
-    titles = [title for title in _RUN_TITLES if grouped or title != "Unit"]
+    titles = _titles(sheet)
     heads = "".join(f'<th scope="col">{title}</th>' for title in titles)
     widths = "".join(f'<col class="{title.lower()}">' for title in titles)
     title = f"<h2{_long(sheet.machine + sheet.name)}>{isolate(sheet.machine)}"
@@ -129,14 +125,33 @@ def _machine_sheet(view: DispatchView, number: int, sheet: MachineList, codes: s
     return "\n".join(
         [
             f'<section class="sheet machine" id="m{number}"><table><colgroup>{widths}</colgroup>',
-            f"<thead>{_head(view, len(titles), title, facts, _code(sheet.machine, codes))}",
+            f"<thead>{_head(view, len(titles), title, _facts(sheet), _code(sheet.machine, codes))}",
             f"<tr>{heads}</tr></thead>",
             f"<tfoot>{_foot(len(titles))}</tfoot>",
             "<tbody>",
-            *(_run(run, grouped) for run in sheet.runs),
+            *(_run(run, titles) for run in sheet.runs),
             "</tbody></table></section>",
         ]
     )
+
+
+def _facts(sheet: MachineList) -> str:
+    facts = [f"{sheet.units} units"] if sheet.units > 1 else []
+    facts += [f"{len(sheet.runs)} run{'s' if len(sheet.runs) > 1 else ''}", f"{sheet.work} of work"]
+    facts += [f"{sheet.changes} of changeovers"] if sheet.changes else []
+    facts += [f"{sheet.first} to {sheet.last}"]
+    return ", ".join([*facts, sheet.crew] if sheet.crew else facts)
+
+
+def _titles(sheet: MachineList) -> list[str]:
+    """The columns of a list: those that all have, and those for what this machine's runs have."""
+    used = {
+        "Unit": sheet.units > 1,
+        "Family": any(run.family for run in sheet.runs),
+        "Heads": any(run.heads for run in sheet.runs),
+    }
+    titles = ("No", "Unit", "Order", "Family", "Heads", "Start", "End", "Began", "Ended", "Done")
+    return [title for title in titles if used.get(title, True)]
 
 
 def _long(name: str) -> str:
@@ -163,24 +178,40 @@ def _foot(columns: int) -> str:
     return f'<tr><td colspan="{columns}">{care_notice()}</td></tr>'
 
 
-def _run(run: Run, grouped: bool) -> str:
-    unit = f'<td class="unit">{run.unit}</td>' if grouped else ""
+def _run(run: Run, titles: Sequence[str]) -> str:
     came = f"from {_move(run.before)}" if run.before else "first stop"
     goes = _move(run.after) if run.after else "last stop"
     way = f"{came} → {goes}" if run.before or run.after else "only stop"
     extra = "".join(f' <span class="mark">{escape(remark)}</span>' for remark in run.remarks)
     extra += f' <span class="note">{isolate(run.note)}</span>' if run.note else ""
-    return (
-        f'<tr><td class="no">{run.number}</td>{unit}'
-        f'<td class="order"><b>{isolate(run.order)}</b>{extra}<div class="way">{way}</div></td>'
-        f'<td class="time">{escape(run.start)}</td>'
-        f'<td class="time">{escape(run.end)} <small>{run.minutes} min</small></td>'
-        f'<td></td><td></td><td class="done">{_TICK}</td></tr>'
-    )
+    set_up = f" <small>set-up {run.set_up}</small>" if run.set_up else ""
+    cells = {
+        "No": f'<td class="no">{run.number}</td>',
+        "Unit": f'<td class="unit">{run.unit}</td>',
+        "Order": f'<td class="order"><b>{isolate(run.order)}</b>{extra}<div class="way">{way}</div></td>',
+        "Family": f'<td class="family">{isolate(run.family)}</td>',
+        "Heads": f'<td class="unit">{run.heads}</td>',
+        "Start": f'<td class="time">{escape(run.start)}{set_up}</td>',
+        "End": f'<td class="time">{escape(run.end)} <small>{run.minutes} min</small></td>',
+        "Began": "<td></td>",
+        "Ended": "<td></td>",
+        "Done": f'<td class="done">{_TICK}</td>',
+    }
+    asides = "".join(_aside(aside, len(titles)) for aside in run.asides)
+    return f"{asides}<tr>{''.join(cells[title] for title in titles)}</tr>"
+
+
+def _aside(aside: Aside, columns: int) -> str:
+    unit = f"unit {aside.unit}: " if aside.unit else ""
+    kind = "change" if aside.changeover else "shut"
+    what = f"{unit}{isolate(aside.what)}" if aside.changeover else f"closed: {isolate(aside.what)}"
+    times = f"{escape(aside.start)} – {escape(aside.end)}, {aside.minutes} min"
+    return f'<tr class="aside {kind}"><td colspan="{columns}">{times} <b>{what}</b></td></tr>'
 
 
 def _move(move: Move) -> str:
-    return f"{isolate(move.machine)} {escape(move.time)}"
+    way = f" ({escape(move.way)} on the way)" if move.way else ""
+    return f"{isolate(move.machine)} {escape(move.time)}{way}"
 
 
 # ---- travellers ----------------------------------------------------------------------------------
@@ -215,7 +246,9 @@ def _stop(stop: Stop) -> str:
     extras = [f"{stop.minutes} min"]
     extras += [f"unit {stop.unit}"] if stop.unit else []
     extras += map(escape, stop.remarks)
+    extras = [extra.replace(" min", "\N{NO-BREAK SPACE}min") for extra in extras]
     extras += [f"<i>{isolate(stop.note)}</i>"] if stop.note else []
+    extras += [f"then {escape(stop.way)} on the way"] if stop.way else []
     return (
         f"<li><div>{stop.number}. <b>{isolate(stop.machine)}</b></div><div>{_TICK}"
         f"{escape(stop.start)} – {escape(stop.end)}<br><small>{', '.join(extras)}</small></div></li>"

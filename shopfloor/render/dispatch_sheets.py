@@ -2,24 +2,26 @@
 
 from __future__ import annotations
 
-import re
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cache
 from typing import TYPE_CHECKING
 
+import numpy as np
+
 from shopfloor.model.calendar import duration, minutes_text
-from shopfloor.model.schedule import NO_ROUND
+from shopfloor.render.dispatch_rounds import round_sheets
 from shopfloor.render.dispatch_view import (
+    Aside,
     DispatchView,
     MachineList,
     Move,
-    RoundRow,
-    RoundSheet,
     Run,
     Stop,
     Strip,
 )
+from shopfloor.render.runs import Runs
+from shopfloor.render.shut import closures_of
 from shopfloor.render.tables import plan_id, plan_json
 
 if TYPE_CHECKING:
@@ -29,18 +31,14 @@ if TYPE_CHECKING:
 STOPS_A_STRIP = 25  # five lines of five boxes: a strip of that length still stands whole on a page
 NOTE_ON_STRIP = 120  # characters; the machine's own list has the whole note
 
-# Millimetres, safe on A4 and on Letter: a round sheet without its first column, the least and greatest width
-# of a column, its padding, and a letter of an order and of a machine as the style sheet sets them.
-_SHEET_MM, _COLUMN_MM, _PADDING_MM = 152.0, (16.0, 50.0), 3.5
-_ORDER_LETTER_MM, _MACHINE_LETTER_MM = 2.75, 2.3
-
 _WEEKDAYS = ("Mon", "Tue", "Wed", "Thu", "Fri", "Sat", "Sun")
 
 
 def dispatch_view(plan: Plan, *, stamp: str | None = None) -> DispatchView:
     """Return what the sheets of `plan` show; linear in the number of assignments."""
-    routes = _routes(plan)
-    lists = _machine_lists(plan, routes)
+    runs = Runs(plan)
+    routes = _routes(plan, runs)
+    lists = _machine_lists(plan, runs, routes)
     busy = {sheet.machine for sheet in lists}
     return DispatchView(
         plan=plan_id(plan_json(plan)),
@@ -50,8 +48,8 @@ def dispatch_view(plan: Plan, *, stamp: str | None = None) -> DispatchView:
         stamp=stamp or "",
         machines=lists,
         idle=tuple(machine.id for machine in plan.shop.machines if machine.id not in busy),
-        strips=_strips(plan, routes),
-        round_sheets=_round_sheets(plan),
+        strips=_strips(plan, runs, routes),
+        round_sheets=round_sheets(plan),
     )
 
 
@@ -97,10 +95,14 @@ def _cut(text: str, size: int) -> str:
 
 @dataclass(frozen=True, slots=True)
 class _Row:
-    """One assignment, with the words for its times beside the numbers to sort by."""
+    """One assignment, with the words for its times beside the numbers to sort by.
+
+    `change` is its place in the plan's changeovers, -1 for none.
+    """
 
     start: str
     end: str
+    run: int
     operation: int
     job: int
     machine: int
@@ -109,113 +111,221 @@ class _Row:
     end_s: int
     part: int
     parts: int
+    worked_s: int
+    set_up_s: int
+    family: int
+    heads: int
+    way_s: int
+    change: int
 
 
-def _routes(plan: Plan) -> list[list[_Row]]:
+def _routes(plan: Plan, runs: Runs) -> list[list[_Row]]:
     """Return each order's assignments in the sequence in which they run."""
     shop, schedule = plan.shop, plan.schedule
     say = cache(shop.clock.say)
+    change = np.full(len(schedule), -1)
+    change[runs.changes.run] = np.arange(len(runs.changes))
     routes: list[list[_Row]] = [[] for _ in shop.orders.ids]
     columns = (
+        np.arange(len(schedule)),
         schedule.operation,
-        shop.operations.job[schedule.operation],
-        shop.operations.machine[schedule.operation],
+        runs.job,
+        runs.machine,
         schedule.unit,
         schedule.start_s,
         schedule.end_s,
         schedule.part,
         schedule.parts,
+        runs.worked_s,
+        runs.set_up_s,
+        runs.family,
+        runs.heads,
+        runs.way_s,
+        change,
     )
     for numbers in zip(*(column.tolist() for column in columns), strict=True):
-        row = _Row(say(numbers[4]), say(numbers[5]), *numbers)
+        row = _Row(say(numbers[5]), say(numbers[6]), *numbers)
         routes[row.job].append(row)
     return routes
 
 
-def _inside(shop: Shop, row: _Row) -> list[Closure]:
-    """Return the breaks for which this run pauses."""
-    if not shop.machines[row.machine].pauses:
-        return []
-    return [pause for pause in shop.breaks if row.start_s < pause.end_s and pause.start_s < row.end_s]
+class _Writer:
+    """Rows to words, for one plan."""
+
+    def __init__(self, plan: Plan, runs: Runs) -> None:
+        self.shop, self.runs = plan.shop, runs
+        self.say = cache(plan.shop.clock.say)
+        self.shuts = [closures_of(plan.shop, machine) for machine in plan.shop.machines]
+        self.changing = frozenset(runs.changing)
+
+    def note(self, row: _Row) -> str:
+        return _one_line(self.shop.operations.notes.get(row.operation, ""))
+
+    def inside(self, row: _Row) -> list[Closure]:
+        """Return the closures for which a run pauses."""
+        if row.worked_s == row.end_s - row.start_s:
+            return []
+        shuts = self.shuts[row.machine]
+        return [shut for shut in shuts if row.start_s < shut.end_s and shut.start_s < row.end_s]
+
+    def remarks(self, row: _Row) -> list[str]:
+        remarks = [f"part {row.part} of {row.parts}"] if row.parts > 1 else []
+        remarks += [
+            f"pauses {self.say(shut.start_s)} – {self.say(shut.end_s)}: {_one_line(shut.reason)}"
+            for shut in self.inside(row)
+        ]
+        end = self.shop.shift_end_s
+        return [*remarks, "past shift end"] if end is not None and row.end_s > end else remarks
+
+    def family(self, row: _Row) -> str:
+        """The family where a changeover may hang on it, else nothing."""
+        return _family(self.runs.families[row.family]) if row.machine in self.changing else ""
+
+    def changeover(self, row: _Row) -> Aside:
+        """Return the changeover before a run that has one."""
+        changes, families = self.runs.changes, self.runs.families
+        before = _family(families[int(changes.before[row.change])])
+        return Aside(
+            what=f"changeover from {before} to {_family(families[row.family])}",
+            unit=_unit(self.shop.machines[row.machine], row),
+            start=self.say(int(changes.start_s[row.change])),
+            end=self.say(int(changes.end_s[row.change])),
+            minutes=minutes_text(int(changes.seconds[row.change])),
+            changeover=True,
+        )
+
+    def closed(self, shut: Closure) -> Aside:
+        return Aside(
+            what=_one_line(shut.reason),
+            unit=0,
+            start=self.say(shut.start_s),
+            end=self.say(shut.end_s),
+            minutes=minutes_text(shut.end_s - shut.start_s),
+            changeover=False,
+        )
+
+    def move(self, row: _Row, time: str, way_s: int) -> Move:
+        way = duration(way_s) if way_s else ""
+        return Move(self.shop.machines[row.machine].id, time, way)
 
 
-def _minutes(shop: Shop, row: _Row) -> str:
-    pauses = _inside(shop, row)
-    shut = sum(min(pause.end_s, row.end_s) - max(pause.start_s, row.start_s) for pause in pauses)
-    return minutes_text(row.end_s - row.start_s - shut)
+def _family(name: str) -> str:
+    return _one_line(name) or "no family"
 
 
-def _remarks(shop: Shop, row: _Row) -> tuple[str, ...]:
-    remarks = [f"part {row.part} of {row.parts}"] if row.parts > 1 else []
-    remarks += [f"break {_span(shop, pause)}" for pause in _inside(shop, row)]
-    if shop.shift_end_s is not None and row.end_s > shop.shift_end_s:
-        remarks.append("past shift end")
-    return tuple(remarks)
+# ---- machine lists -------------------------------------------------------------------------------
 
 
-def _machine_lists(plan: Plan, routes: Sequence[Sequence[_Row]]) -> tuple[MachineList, ...]:
-    shop = plan.shop
-    queues: list[list[tuple[_Row, _Row | None, _Row | None]]] = [[] for _ in shop.machines]
+def _machine_lists(plan: Plan, runs: Runs, routes: Sequence[Sequence[_Row]]) -> tuple[MachineList, ...]:
+    shop, writer = plan.shop, _Writer(plan, runs)
+    queues: list[list[_Visit]] = [[] for _ in shop.machines]
     for route in routes:
         for before, row, after in zip([None, *route], route, [*route[1:], None], strict=False):
-            queues[row.machine].append((row, before, after))
+            queues[row.machine].append(_Visit(row, before, after))
+    changes = np.bincount(runs.machine, weights=runs.change_s, minlength=len(shop.machines))
     lists = []
-    for machine, queue, work in zip(shop.machines, queues, shop.machine_load_s.tolist(), strict=True):
+    for place, queue in enumerate(queues):
         if not queue:
             continue
-        queue.sort(key=lambda entry: (entry[0].start_s, entry[0].unit, entry[0].operation))
-        runs = tuple(
-            Run(
-                number=number,
-                order=shop.orders.ids[row.job],
-                unit=_unit(machine, row),
-                start=row.start,
-                end=row.end,
-                minutes=_minutes(shop, row),
-                remarks=_remarks(shop, row),
-                note=_one_line(shop.operations.notes.get(row.operation, "")),
-                before=Move(shop.machines[before.machine].id, before.end) if before else None,
-                after=Move(shop.machines[after.machine].id, after.start) if after else None,
+        queue.sort(key=lambda visit: (visit.row.start_s, visit.row.unit, visit.row.operation))
+        machine = shop.machines[place]
+        rows = [visit.row for visit in queue]
+        alike = len({row.heads for row in rows}) == 1
+        lists.append(
+            MachineList(
+                machine=machine.id,
+                name="" if machine.name == machine.id else machine.name,
+                units=machine.count,
+                work=duration(int(shop.machine_load_s[place])),
+                changes=duration(int(changes[place])) if changes[place] else "",
+                crew=_crew(machine, rows[0].heads if alike else None),
+                first=rows[0].start,
+                last=max(rows, key=lambda row: row.end_s).end,
+                runs=_runs(writer, queue, alike),
             )
-            for number, (row, before, after) in enumerate(queue, 1)
         )
-        ends = max((row for row, _, _ in queue), key=lambda row: row.end_s).end
-        name = "" if machine.name == machine.id else machine.name
-        lists.append(MachineList(machine.id, name, machine.count, duration(work), runs[0].start, ends, runs))
     return tuple(lists)
 
 
-def _strips(plan: Plan, routes: Sequence[Sequence[_Row]]) -> tuple[Strip, ...]:
-    shop, say = plan.shop, plan.shop.clock.say
+@dataclass(frozen=True, slots=True)
+class _Visit:
+    """A row with the rows before and after it in its order."""
+
+    row: _Row
+    before: _Row | None
+    after: _Row | None
+
+
+def _crew(machine: Machine, heads: int | None) -> str:
+    """Say who attends a machine; `heads` where every run takes so many."""
+    if machine.crew is None:
+        return ""
+    each = "" if heads is None else f", {heads} head{'s' if heads != 1 else ''}"
+    return f"crew {_one_line(machine.crew)}{each}{' for the set-up only' if machine.set_up_only else ''}"
+
+
+def _runs(writer: _Writer, queue: Sequence[_Visit], alike: bool) -> tuple[Run, ...]:
+    """Return the lines of a list, each with the closures and the changeover before it in sequence.
+
+    A closure inside a run of a machine of one unit is told by that run and nowhere else.
+    """
+    first = queue[0].row
+    machine = writer.shop.machines[first.machine]
+    shuts = list(writer.shuts[first.machine])
+    if machine.count == 1:
+        told = {shut.start_s for visit in queue for shut in writer.inside(visit.row)}
+        shuts = [shut for shut in shuts if shut.start_s not in told]
+    lines = []
+    for number, visit in enumerate(queue, 1):
+        row, before, after = visit.row, visit.before, visit.after
+        asides: list[tuple[int, Aside]] = []
+        while shuts and shuts[0].start_s <= row.start_s:
+            asides.append((shuts[0].start_s, writer.closed(shuts.pop(0))))
+        if row.change >= 0:
+            asides.append((int(writer.runs.changes.start_s[row.change]), writer.changeover(row)))
+        lines.append(
+            Run(
+                number=number,
+                order=writer.shop.orders.ids[row.job],
+                unit=_unit(machine, row),
+                start=row.start,
+                end=row.end,
+                minutes=minutes_text(row.worked_s),
+                set_up=minutes_text(row.set_up_s) if row.set_up_s else "",
+                family=writer.family(row),
+                heads="" if alike else str(row.heads),
+                remarks=tuple(writer.remarks(row)),
+                note=writer.note(row),
+                before=writer.move(before, before.end, 0) if before else None,
+                after=writer.move(after, after.start, row.way_s) if after else None,
+                asides=tuple(aside for _, aside in sorted(asides, key=lambda pair: pair[0])),
+            )
+        )
+    return tuple(lines)
+
+
+# ---- travellers ----------------------------------------------------------------------------------
+
+
+def _strips(plan: Plan, runs: Runs, routes: Sequence[Sequence[_Row]]) -> tuple[Strip, ...]:
+    shop, writer = plan.shop, _Writer(plan, runs)
     strips = []
     for job, route in enumerate(routes):
         if not route:
             continue
         order, finish_s = shop.orders[job], max(row.end_s for row in route)
         due = order.due_s
-        stops = [
-            Stop(
-                number=number,
-                machine=shop.machines[row.machine].id,
-                unit=_unit(shop.machines[row.machine], row),
-                start=row.start,
-                end=row.end,
-                minutes=_minutes(shop, row),
-                remarks=_remarks(shop, row),
-                note=_cut(_one_line(shop.operations.notes.get(row.operation, "")), NOTE_ON_STRIP),
-            )
-            for number, row in enumerate(route, 1)
-        ]
+        stops = [_stop(writer, number, row) for number, row in enumerate(route, 1)]
         pieces = [stops[first : first + STOPS_A_STRIP] for first in range(0, len(stops), STOPS_A_STRIP)]
         strips += [
             Strip(
                 order=order.id,
                 strip=number,
                 strips=len(pieces),
-                release=say(order.release_s) if order.release_s else "",
-                due="" if due is None else say(due),
+                release=writer.say(order.release_s) if order.release_s else "",
+                due="" if due is None else writer.say(due),
                 late=duration(finish_s - due) if due is not None and finish_s > due else "",
-                finish=say(finish_s),
+                finish=writer.say(finish_s),
                 stops=tuple(piece),
             )
             for number, piece in enumerate(pieces, 1)
@@ -223,72 +333,25 @@ def _strips(plan: Plan, routes: Sequence[Sequence[_Row]]) -> tuple[Strip, ...]:
     return tuple(strips)
 
 
-def _unit(machine: Machine, row: _Row) -> int:
-    return row.unit if machine.count > 1 else 0
-
-
-def _round_sheets(plan: Plan) -> tuple[RoundSheet, ...]:
-    """Return the grids of a plan in unit rounds; none for any other plan."""
-    shop, schedule = plan.shop, plan.schedule
-    if not len(schedule) or bool((schedule.round == NO_ROUND).any()):
-        return ()
-    say = cache(shop.clock.say)
-    job = shop.operations.job[schedule.operation].tolist()
-    machine = shop.operations.machine[schedule.operation].tolist()
-    cells: dict[int, dict[tuple[int, int], str]] = {}
-    times: dict[int, tuple[int, int]] = {}
-    for rank, order, place, unit, start, end in zip(
-        schedule.round.tolist(),
-        job,
-        machine,
-        schedule.unit.tolist(),
-        schedule.start_s.tolist(),
-        schedule.end_s.tolist(),
-        strict=True,
-    ):
-        cells.setdefault(rank, {})[place, unit] = shop.orders.ids[order]
-        first, last = times.get(rank, (start, end))
-        times[rank] = min(first, start), max(last, end)
-    used = sorted({place for row in cells.values() for place in row})
-    heads = {
-        (place, unit): shop.machines[place].id + (f" unit {unit}" if shop.machines[place].count > 1 else "")
-        for place, unit in used
-    }
-    blocks = _blocks(used, _column_mm(shop.orders.ids, heads.values()))
-    return tuple(
-        RoundSheet(
-            sheet=number,
-            sheets=len(blocks),
-            machines=tuple(heads[column] for column in block),
-            rows=tuple(
-                RoundRow(
-                    number=rank,
-                    start=say(times[rank][0]),
-                    end=say(times[rank][1]),
-                    orders=tuple(cells[rank].get(column, "") for column in block),
-                )
-                for rank in sorted(cells)
-            ),
-        )
-        for number, block in enumerate(blocks, 1)
+def _stop(writer: _Writer, number: int, row: _Row) -> Stop:
+    machine = writer.shop.machines[row.machine]
+    remarks = [f"set-up {minutes_text(row.set_up_s)} min"] if row.set_up_s else []
+    remarks += [family] if (family := writer.family(row)) else []
+    if row.change >= 0:
+        remarks.append(f"changeover before {writer.changeover(row).minutes} min")
+    remarks += [f"{row.heads} heads"] if row.heads > 1 else []
+    return Stop(
+        number=number,
+        machine=machine.id,
+        unit=_unit(machine, row),
+        start=row.start,
+        end=row.end,
+        minutes=minutes_text(row.worked_s),
+        remarks=(*remarks, *writer.remarks(row)),
+        note=_cut(writer.note(row), NOTE_ON_STRIP),
+        way=duration(row.way_s) if row.way_s else "",
     )
 
 
-def _column_mm(orders: Iterable[str], machines: Iterable[str]) -> float:
-    """Return the width that the longest order, and the longest word of a machine, ask for."""
-    order = max((len(name) for name in orders), default=0)
-    machine = max((len(word) for name in machines for word in re.split(r"[\s-]", name)), default=0)
-    needed = max(order * _ORDER_LETTER_MM, machine * _MACHINE_LETTER_MM) + _PADDING_MM
-    return min(max(needed, _COLUMN_MM[0]), _COLUMN_MM[1])
-
-
-def _blocks(columns: Sequence[tuple[int, int]], width_mm: float) -> list[Sequence[tuple[int, int]]]:
-    """Cut the columns into as few sheets as their width allows, evenly filled."""
-    sheets = -(-len(columns) // int(_SHEET_MM // width_mm))
-    size, larger = divmod(len(columns), sheets)
-    blocks, first = [], 0
-    for sheet in range(sheets):
-        last = first + size + (sheet < larger)
-        blocks.append(columns[first:last])
-        first = last
-    return blocks
+def _unit(machine: Machine, row: _Row) -> int:
+    return row.unit if machine.count > 1 else 0

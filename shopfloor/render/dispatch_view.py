@@ -11,19 +11,40 @@ from dataclasses import dataclass
 
 @dataclass(frozen=True, slots=True)
 class Move:
-    """Where an order is before or after a run, and when that stop ends or starts."""
+    """Where an order is before or after a run, when that stop ends or starts, and how far it is.
+
+    `way` is how long the order is on its way there; empty for the stop before, and where it needs no time.
+    """
 
     machine: str
     time: str
+    way: str
+
+
+@dataclass(frozen=True, slots=True)
+class Aside:
+    """What stands in sequence between runs: a closure with its reason, or a changeover.
+
+    `what` names it, `unit` is as in :class:`Run`, 0 for the whole machine.
+    """
+
+    what: str
+    unit: int
+    start: str
+    end: str
+    minutes: str
+    changeover: bool
 
 
 @dataclass(frozen=True, slots=True)
 class Run:
     """One line of a machine's list.
 
-    `unit` is 0 on a machine of one unit. `minutes` count work, not the breaks in it. `remarks` tell of parts,
-    breaks inside the run and a finish past the shift's end. `before` and `after` are None at the order's
-    first and last stop.
+    `unit` is 0 on a machine of one unit. `minutes` count work, not the breaks in it; `set_up` of them are
+    set-up, empty where none are. `family` is empty on machines that need no changeover, `heads` where no
+    crew attends or all runs of the machine take alike. `remarks` tell of parts, breaks inside the run and a
+    finish past the shift's end. `before` and `after` are None at the order's first and last stop. `asides`
+    come before the run.
     """
 
     number: int
@@ -32,20 +53,29 @@ class Run:
     start: str
     end: str
     minutes: str
+    set_up: str
+    family: str
+    heads: str
     remarks: tuple[str, ...]
     note: str
     before: Move | None
     after: Move | None
+    asides: tuple[Aside, ...]
 
 
 @dataclass(frozen=True, slots=True)
 class MachineList:
-    """What one machine, or one group of units, runs in sequence; never empty."""
+    """What one machine, or one group of units, runs in sequence; never empty.
+
+    `changes` is the open time of all its changeovers and `crew` who attends it; both may be empty.
+    """
 
     machine: str
     name: str
     units: int
     work: str
+    changes: str
+    crew: str
     first: str
     last: str
     runs: tuple[Run, ...]
@@ -53,7 +83,11 @@ class MachineList:
 
 @dataclass(frozen=True, slots=True)
 class Stop:
-    """One stop of an order; the words as in :class:`Run`."""
+    """One stop of an order; the words as in :class:`Run`.
+
+    `remarks` tell here of set-up, family, changeover and heads too; `way` is how long the order is then on
+    its way to the next machine, empty where it needs no time.
+    """
 
     number: int
     machine: str
@@ -63,6 +97,7 @@ class Stop:
     minutes: str
     remarks: tuple[str, ...]
     note: str
+    way: str
 
 
 @dataclass(frozen=True, slots=True)
