@@ -1,22 +1,20 @@
 """plan.xlsx: the plan as a workbook with real dates and numbers, ready to filter, edit and print.
 
-The sheet Plan has the columns of plan.csv, so that an edited workbook can be audited like an edited CSV.
+The sheet Plan begins with the columns of plan.csv, so that an edited workbook can be audited like an edited
+CSV.
 The only module besides the reader that knows openpyxl; import it only when a workbook is wanted.
 """
 
 from __future__ import annotations
 
 import io
-import json
 import re
 import zipfile
 from collections.abc import Iterable, Sequence
-from dataclasses import dataclass
 from datetime import datetime, timedelta
 from functools import cache
 from typing import TYPE_CHECKING, Any
 
-import numpy as np
 from openpyxl import Workbook
 from openpyxl.cell import WriteOnlyCell
 from openpyxl.cell.cell import ILLEGAL_CHARACTERS_RE
@@ -26,10 +24,9 @@ from openpyxl.worksheet.properties import PageSetupProperties
 
 from shopfloor.errors import SaveError
 from shopfloor.model.calendar import MINUTE
-from shopfloor.model.schedule import NO_ROUND
-from shopfloor.model.shop import NO_DUE
 from shopfloor.render.html import CARE_NOTICE
-from shopfloor.render.tables import CSV_COLUMNS, harmless, plan_id, plan_json, summary
+from shopfloor.render.tables import harmless
+from shopfloor.render.workbook_columns import Column, sheets
 
 if TYPE_CHECKING:
     from shopfloor.model.calendar import Clock
@@ -43,15 +40,6 @@ _HEAD_FONT = Font(name="Calibri", size=11, bold=True)
 _HEAD_BORDER = Border(bottom=Side(style="medium"))
 _LEFT, _RIGHT = Alignment(horizontal="left"), Alignment(horizontal="right")
 _WRAPPED = Alignment(wrap_text=True)
-
-
-@dataclass(frozen=True, slots=True)
-class _Column:
-    """One column: its title, what its values are (text, number, moment, minutes, share), and they."""
-
-    title: str
-    kind: str
-    values: Sequence[Any]
 
 
 def plan_xlsx(plan: Plan, *, stamp: str | None = None) -> bytes:
@@ -81,132 +69,17 @@ def plan_xlsx(plan: Plan, *, stamp: str | None = None) -> bytes:
         )
     book = Workbook(write_only=True)
     clock = plan.shop.clock
-    for title, columns in (
-        ("Plan", _plan_columns(plan)),
-        ("Machines", _machine_columns(plan)),
-        ("Orders", _order_columns(plan)),
-        ("Bounds", _bound_columns(plan)),
-        ("Notes", _note_columns(plan, stamp)),
-    ):
+    for title, columns in sheets(plan, stamp).items():
         _add_sheet(book, title, columns, clock)
     raw = io.BytesIO()
     book.save(raw)
     return _timeless(raw.getvalue(), clock.start or _LONG_AGO)
 
 
-# ---- what stands on each sheet ---------------------------------------------------------------------
-
-
-def _plan_columns(plan: Plan) -> list[_Column]:
-    shop, schedule = plan.shop, plan.schedule
-    orders, machines, notes = shop.orders.ids, shop.machines, shop.operations.notes
-    operation = schedule.operation
-    values: tuple[tuple[str, Sequence[Any]], ...] = (
-        ("text", [orders[index] for index in shop.operations.job[operation].tolist()]),
-        ("text", [machines[index].id for index in shop.operations.machine[operation].tolist()]),
-        ("number", schedule.unit.tolist()),
-        ("moment", schedule.start_s.tolist()),
-        ("moment", schedule.end_s.tolist()),
-        ("number", [None if rank == NO_ROUND else rank for rank in schedule.round.tolist()]),
-        ("number", schedule.part.tolist()),
-        ("number", schedule.parts.tolist()),
-        ("text", [notes.get(index) for index in operation.tolist()]),
-    )
-    return [_Column(title, *column) for title, column in zip(CSV_COLUMNS, values, strict=True)]
-
-
-def _machine_columns(plan: Plan) -> list[_Column]:
-    shop, schedule = plan.shop, plan.schedule
-    place = shop.operations.machine[schedule.operation]
-    first = np.full(len(shop.machines), np.iinfo(np.int64).max)
-    last = np.zeros(len(shop.machines), np.int64)
-    np.minimum.at(first, place, schedule.start_s)
-    np.maximum.at(last, place, schedule.end_s)
-    runs = np.bincount(place, minlength=len(shop.machines)).tolist()
-    units = [machine.count for machine in shop.machines]
-    work = shop.machine_load_s.tolist()
-    span = plan.makespan_s or 1
-    return [
-        _Column("machine", "text", [machine.id for machine in shop.machines]),
-        _Column("name", "text", [machine.name or None for machine in shop.machines]),
-        _Column("units", "number", units),
-        _Column("runs", "number", runs),
-        _Column("work_min", "minutes", work),
-        _Column("busy", "share", [load / (span * count) for load, count in zip(work, units, strict=True)]),
-        _Column("first_start", "moment", _where(runs, first.tolist())),
-        _Column("last_end", "moment", _where(runs, last.tolist())),
-    ]
-
-
-def _order_columns(plan: Plan) -> list[_Column]:
-    shop, schedule = plan.shop, plan.schedule
-    job = shop.operations.job
-    begin = np.full(len(shop.orders), np.iinfo(np.int64).max)
-    np.minimum.at(begin, job[schedule.operation], schedule.start_s)
-    finish = schedule.completion_s(job, len(shop.orders))
-    visits = np.bincount(job, minlength=len(shop.orders)).tolist()
-    release, due = shop.orders.release_s.tolist(), shop.orders.due_s
-    late = np.maximum(finish - np.minimum(due, finish), 0).tolist()
-    return [
-        _Column("order", "text", shop.orders.ids),
-        _Column("release", "moment", _where(release, release)),
-        _Column("due", "moment", _where((due != NO_DUE).tolist(), due.tolist())),
-        _Column("priority", "number", shop.orders.priority.tolist()),
-        _Column("operations", "number", visits),
-        _Column("work_min", "minutes", shop.job_load_s.tolist()),
-        _Column("start", "moment", _where(visits, begin.tolist())),
-        _Column("finish", "moment", _where(visits, finish.tolist())),
-        _Column("late_min", "minutes", _where(late, late)),
-    ]
-
-
-def _bound_columns(plan: Plan) -> list[_Column]:
-    bounds = summary(plan)["bounds"]
-    return [
-        _Column("kind", "text", [bound["kind"] for bound in bounds]),
-        _Column("not_before", "moment", [bound["value_s"] for bound in bounds]),
-        _Column("minutes", "minutes", [bound["value_s"] for bound in bounds]),
-        _Column("sentence", "text", [bound["sentence"] for bound in bounds]),
-        _Column("witness", "text", [json.dumps(bound["witness"], ensure_ascii=False) for bound in bounds]),
-    ]
-
-
-def _note_columns(plan: Plan, stamp: str | None) -> list[_Column]:
-    data, clock = summary(plan), plan.shop.clock
-    rows: list[tuple[str, Any]] = [
-        ("care", CARE_NOTICE),
-        ("plan", plan_id(plan_json(plan))),
-        ("printed", stamp),
-        ("shift_start", data["shift_start"] or "time counts from 0:00"),
-        ("shift_end", data["shift_end"]),
-        ("everything ends", clock.write(plan.makespan_s)),
-        ("nothing can end before", clock.write(plan.lower_bound_s)),
-        ("proved optimal", "yes" if plan.proved_optimal else "no"),
-        ("fits the shift", None if plan.fits_shift is None else "yes" if plan.fits_shift else "no"),
-        ("method", f"{plan.choice.name}: {plan.choice.why}"),
-        *((f"not {name}", reason) for name, reason in plan.choice.others.items()),
-        *(("remark", remark) for remark in plan.remarks),
-        *(("would help", sentence) for sentence in plan.would_help),
-        ("repeatable", "yes" if plan.repeatable else "no"),
-        ("options", json.dumps(data["options"], ensure_ascii=False)),
-        *((f"SHA-256 of {name}", digest) for name, digest in plan.inputs),
-        ("tool", f"shopfloor {data['tool_version']}"),
-    ]
-    kept = [(name, value) for name, value in rows if value]
-    return [
-        _Column("what", "text", [name for name, _ in kept]),
-        _Column("value", "text", [value for _, value in kept]),
-    ]
-
-
-def _where(wanted: Iterable[Any], values: Iterable[Any]) -> list[Any]:
-    return [value if keep else None for keep, value in zip(wanted, values, strict=True)]
-
-
 # ---- cells and sheets ------------------------------------------------------------------------------
 
 
-def _add_sheet(book: Any, title: str, columns: Sequence[_Column], clock: Clock) -> None:
+def _add_sheet(book: Any, title: str, columns: Sequence[Column], clock: Clock) -> None:
     sheet = book.create_sheet(title)
     sheet.freeze_panes = "A2"
     sheet.print_title_rows = "1:1"
@@ -236,21 +109,21 @@ def _lines(text: str | None) -> int:
     return sum(1 + len(line) // _WIDTHS[1] for line in text.split("\n")) if text else 1
 
 
-def _width(column: _Column) -> int:
+def _width(column: Column) -> int:
     if column.kind == "moment":
         return 20
     longest = max((len(value) for value in column.values if column.kind == "text" and value), default=0)
     return min(max(longest + 2, len(column.title) + 4, _WIDTHS[0]), _WIDTHS[1])
 
 
-def _head(sheet: Any, column: _Column) -> Any:
+def _head(sheet: Any, column: Column) -> Any:
     cell = WriteOnlyCell(sheet, column.title)
     cell.font, cell.border = _HEAD_FONT, _HEAD_BORDER
     cell.alignment = _LEFT if column.kind == "text" else _RIGHT
     return cell
 
 
-def _cells(sheet: Any, column: _Column, clock: Clock) -> Iterable[Any]:
+def _cells(sheet: Any, column: Column, clock: Clock) -> Iterable[Any]:
     if column.kind == "text":
         return (_text(sheet, value) for value in column.values)
     if column.kind == "number":

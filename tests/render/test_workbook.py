@@ -14,15 +14,18 @@ import numpy as np
 import openpyxl
 import pytest
 
+from shopfloor.audit.schedule import audit
 from shopfloor.errors import SaveError
 from shopfloor.model.calendar import Clock
 from shopfloor.model.schedule import Schedule
 from shopfloor.model.shop import Operations, Orders, Shop
+from shopfloor.read.plan import load_plan
 from shopfloor.render import workbook
 from shopfloor.render.html import CARE_NOTICE
 from shopfloor.render.tables import CSV_COLUMNS, plan_csv, plan_id, plan_json
 from shopfloor.render.workbook import plan_xlsx
 from tests.render.expected import START, round_plan, small_plan
+from tests.render.floor import floor_plan
 from tests.render.plans import HOSTILE, hall_plan
 
 
@@ -39,26 +42,28 @@ def test_sheets_and_plan_rows():
     assert book.sheetnames == ["Plan", "Machines", "Orders", "Bounds", "Notes"]
     at = lambda minutes: START + timedelta(minutes=minutes)  # noqa: E731
     assert rows(book["Plan"]) == [
-        list(CSV_COLUMNS),
-        ["TQ-01", "Wash", 1, at(0), at(30), None, 1, 1, "seal kit on cart 4"],
-        ["TQ-02", "Wash", 2, at(0), at(20), None, 1, 1, None],
-        ["TQ-02", "Coat", 1, at(20), at(40), None, 1, 2, None],
-        ["TQ-04 Ø12", "Wash", 2, at(20), at(30), None, 1, 1, "@ night; see Å 7"],
-        ["TQ-01", "CMM", 1, at(30), at(90), None, 1, 1, None],
-        ["TQ-02", "Coat", 1, at(75), at(95), None, 2, 2, None],
-        ["=3", "CMM", 1, at(90), at(115), None, 1, 1, None],
-        ["=3", "Coat", 1, at(115), at(145), None, 1, 1, '+ "mask" the bore,\ntwo coats'],
+        [*CSV_COLUMNS, "paused_min"],
+        ["TQ-01", "Wash", 1, at(0), at(30), None, 1, 1, "seal kit on cart 4", None],
+        ["TQ-02", "Wash", 2, at(0), at(20), None, 1, 1, None, None],
+        ["TQ-02", "Coat", 1, at(20), at(40), None, 1, 2, None, None],
+        ["TQ-04 Ø12", "Wash", 2, at(20), at(30), None, 1, 1, "@ night; see Å 7", None],
+        ["TQ-01", "CMM", 1, at(30), at(90), None, 1, 1, None, 15],
+        ["TQ-02", "Coat", 1, at(75), at(95), None, 2, 2, None, None],
+        ["=3", "CMM", 1, at(90), at(115), None, 1, 1, None, None],
+        ["=3", "Coat", 1, at(115), at(145), None, 1, 1, '+ "mask" the bore,\ntwo coats', None],
     ]
 
 
 def test_machines_and_orders_add_up():
     book = opened(small_plan())
     machines = rows(book["Machines"])
-    assert machines[0] == ["machine", "name", "units", "runs", "work_min", "busy", "first_start", "last_end"]
+    titles = ["machine", "name", "units", "runs", "work_min", "busy", "first_start", "last_end", "closed"]
+    assert machines[0] == titles
     assert machines[1][:5] == ["Wash", "Washing bay", 2, 3, 60]
     assert machines[1][5] == pytest.approx(60 / (2 * 145))
-    assert machines[2][6:] == [START + timedelta(minutes=30), START + timedelta(minutes=115)]
-    assert machines[4] == ["Engrave", None, 1, 0, 0, 0, None, None]
+    assert machines[2][6:8] == [START + timedelta(minutes=30), START + timedelta(minutes=115)]
+    assert machines[2][8] == "07:00 – 07:15 tea"
+    assert machines[4][:8] == ["Engrave", None, 1, 0, 0, 0, None, None]
     orders = rows(book["Orders"])
     assert orders[0][-1] == "late_min"
     assert orders[1] == [
@@ -198,4 +203,41 @@ def test_libreoffice_shows_the_same_plan(plan, tmp_path):
             wanted[name] = wanted[name].replace("T", " ").removesuffix(":00")
         for name in ("order", "note"):
             wanted[name] = wanted[name].removeprefix("'")
-        assert row == wanted
+        assert {name: row[name] for name in wanted} == wanted
+
+
+def test_the_floor_has_columns_where_it_is_used():
+    book = opened(floor_plan())
+    plan = rows(book["Plan"])
+    extra = ["family", "changeover_min", "set_up_min", "paused_min", "heads", "way_min"]
+    assert plan[0] == [*CSV_COLUMNS, *extra]
+    coat = [dict(zip(plan[0], row, strict=True)) for row in plan[1:] if row[1] == "COAT"]
+    assert [(row["family"], row["changeover_min"], row["set_up_min"]) for row in coat[:3]] == [
+        ("black", 15, 5), ("grey primer", 25, 5), ("grey primer", None, 5),
+    ]  # fmt: skip
+    assert {row["heads"] for row in coat} == {1}
+    washed = [dict(zip(plan[0], row, strict=True)) for row in plan[1:] if row[1] == "WASH"]
+    assert {(row["family"], row["set_up_min"], row["heads"]) for row in washed} == {(None, None, None)}
+    assert 10 in {row["way_min"] for row in washed}
+    machines = {
+        row[0]: dict(zip(rows(book["Machines"])[0], row, strict=True)) for row in rows(book["Machines"])
+    }
+    assert machines["CMM"]["closed"] == ("07:10 – 08:00 calibration; 09:00 – 09:15 tea; 11:45 – 12:15 lunch")
+    assert [machines["PRESS"][name] for name in ("crew", "attended", "crew_heads", "crew_at_most")] == [
+        "fitters", "set-up", "3; 2 from 12:00 to 14:00", 3,
+    ]  # fmt: skip
+    assert machines["COAT"]["changeover_min"] == 130
+    assert machines["WASH"]["crew"] is None
+
+
+def test_a_plain_hall_has_no_column_of_the_floor():
+    book = opened(hall_plan(60))
+    assert rows(book["Plan"])[0] == list(CSV_COLUMNS)
+    assert rows(book["Machines"])[0][-1] == "last_end"
+
+
+def test_a_workbook_with_the_floor_in_it_is_read_and_audited_like_plan_csv(tmp_path):
+    plan = floor_plan()
+    stated = load_plan(plan_xlsx(plan), plan.shop, name="plan.xlsx")
+    assert (stated.start_s == plan.schedule.start_s).all()
+    assert audit(plan.shop, stated) == []
