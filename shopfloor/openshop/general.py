@@ -33,6 +33,7 @@ MODEL_MOST = 5_000  # operations up to which the whole shop is put into one mode
 WINDOWS_FROM = 110  # operations from which windows are smaller than the shop
 BRIEF_MOST = 300  # operations up to which one thread may settle a goal in a moment, and repeatably
 FIRST_SHARE = 0.6  # of the time left goes to a goal that another one follows
+TELL_EVERY_S = 0.4
 TRIED_SHARE = 0.5  # of a goal's time goes to windows before the whole model
 
 
@@ -87,6 +88,7 @@ class _Search:
         self.least = _least_tardiness(shop)
         self.proved: set[str] = set()
         self.complete = self.repeatable = True
+        self.told = time.monotonic()
 
     def run(self) -> Outcome:
         stages: dict[str, Callable[[tuple[str, ...], float | None], None]] = {
@@ -201,7 +203,7 @@ class _Search:
 
     def _lists(self, goal: str, target: int) -> None:
         complete = list_schedules(
-            self.shop, self.incumbent, goal, target, seed=self.effort.seed, over=lambda: self.effort.over
+            self.shop, self.incumbent, goal, target, seed=self.effort.seed, over=self._tell_and_ask
         )
         self._note(complete, complete)
 
@@ -253,7 +255,14 @@ class _Search:
             return True
         return False
 
+    def _tell_and_ask(self) -> bool:
+        """Tell of a list schedule, unless one was told of just now; return whether to stop."""
+        if time.monotonic() - self.told >= TELL_EVERY_S:
+            self._tell("lists")
+        return self.effort.over
+
     def _tell(self, stage: str) -> None:
+        self.told = time.monotonic()
         self.effort.report(Progress(stage, self.incumbent.makespan_s, self.bound_s, self.effort.left_s))
 
     def _remarks(self) -> tuple[str, ...]:

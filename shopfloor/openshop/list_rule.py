@@ -75,9 +75,10 @@ def makespan_runs(shop: Shop, target: int, seed: int) -> Iterator[Run]:
     """Yield runs for the least makespan without end, the most promising first."""
     floor = Floor.of(shop)
     near = near_bound_orders(shop, target)
+    reserved = bool(near) and may_reserve(shop, near)
     yield partial(_heavy, floor, None, 0.0, 0.0, target, 0)
     yield partial(_heavy, floor, None, 0.0, 0.0, target, 1)
-    if near and may_reserve(shop, near):
+    if reserved:
         for number in range(RESERVATIONS):
             yield partial(reserved_starts, shop, floor, near, target, (seed, number) if number else None)
     for tight in (2, 4, 8):
@@ -85,6 +86,8 @@ def makespan_runs(shop: Shop, target: int, seed: int) -> Iterator[Run]:
     blurs = cycle(product((0.02, 0.1, 0.3), (0.0, 1.0), (0, 1, 2, 4)))
     for number, (noise, longest, tight) in enumerate(blurs):
         yield partial(_heavy, floor, (seed, number), noise, longest, target, tight)
+        if reserved:
+            yield partial(reserved_starts, shop, floor, near, target, (seed, RESERVATIONS + number))
 
 
 def _heavy(floor: Floor, chance: Chance, noise: float, longest: float, target: int, tight: int) -> Ints:

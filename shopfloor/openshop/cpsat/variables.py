@@ -91,9 +91,9 @@ def declare(
         The operations to be placed, all unless said, in the order in which their variables are made:
         another order leads the solver another way.
     at_s
-        Starts of a legal schedule, an entry an operation of the shop, when `rows` are not all: the
-        others stay. Those that start before all of `rows` stay before them on their orders and
-        machines of one unit, those that start later stay behind them.
+        Starts of a legal schedule, an entry an operation of the shop, when `rows` are not all but
+        some that follow each other by start and number: the others stay. Those before `rows` stay before
+        them on their orders and machines of one unit, those after stay behind them.
 
     Returns
     -------
@@ -144,7 +144,9 @@ class Surroundings:
         self._staying = np.flatnonzero(stays)
         if not len(self._staying):
             return
-        before = self._at[self._staying] < self._at[rows].min()
+        place = np.empty(len(shop), np.int64)
+        place[np.lexsort((np.arange(len(shop)), self._at))] = np.arange(len(shop))
+        before = place[self._staying] < place[rows].min()
         for column, usable in (
             (columns.job, np.ones(len(shop.orders), bool)),
             (columns.machine, single),
