@@ -7,8 +7,8 @@ from typing import Any
 
 import numpy as np
 
-from shopfloor.model.shop import Ints
-from shopfloor.render.gantt_view import ChangeColumns, CrewRow, GanttView, Load
+from shopfloor.model.shop import NO_DUE, Ints
+from shopfloor.render.gantt_view import ChangeColumns, CrewRow, GanttView, Load, OrderColumns
 
 # Fields of the view that stand on the page as text; all others travel as data, under their own names.
 AS_TEXT = frozenset(
@@ -27,13 +27,7 @@ def page_data(view: GanttView) -> dict[str, Any]:
         "horizon_s": view.horizon_s,
         "window_s": view.window_s,
         "rows": _records(view.rows),
-        "orders": {
-            "ids": view.orders.ids,
-            "release_s": pack(view.orders.release_s),
-            "due_s": pack(view.orders.due_s + 1),
-            "finish_s": pack(view.orders.finish_s),
-            "binds": view.orders.binds,
-        },
+        "orders": _orders_data(view.orders),
         "bars": _bars_data(view),
         "groups": _records(view.groups),
         "families": _records(view.families),
@@ -54,6 +48,20 @@ def page_data(view: GanttView) -> dict[str, Any]:
 
 def _records(values: Any) -> list[dict[str, Any]]:
     return [{field.name: getattr(value, field.name) for field in fields(value)} for value in values]
+
+
+def _orders_data(orders: OrderColumns) -> dict[str, Any]:
+    """Due times as how long after `due_from_s` they lie, one more than that: 0 is no due time."""
+    has_due = orders.due_s != NO_DUE
+    first = min(0, int(orders.due_s.min(initial=0)))
+    return {
+        "ids": orders.ids,
+        "release_s": pack(orders.release_s),
+        "due_s": pack(np.where(has_due, np.where(has_due, orders.due_s, 0) - first + 1, 0)),
+        "due_from_s": first,
+        "finish_s": pack(orders.finish_s),
+        "binds": orders.binds,
+    }
 
 
 def _bars_data(view: GanttView) -> dict[str, Any]:

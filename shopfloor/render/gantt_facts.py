@@ -99,11 +99,10 @@ def _machine_rows(runs: Runs, binding: str | None) -> tuple[MachineRow, ...]:
 def _orders(plan: Plan, shown: Detail, binding: str | None) -> OrderColumns:
     orders, kept = plan.shop.orders, shown.orders
     ids = orders.ids if len(kept) == len(orders) else tuple(orders.ids[job] for job in kept.tolist())
-    due = orders.due_s[kept]
     return OrderColumns(
         ids=ids,
         release_s=orders.release_s[kept],
-        due_s=np.where(due == NO_DUE, -1, due),
+        due_s=orders.due_s[kept],
         finish_s=plan.schedule.completion_s(plan.shop.operations.job, len(orders))[kept],
         binds=ids.index(binding) if binding in ids else -1,
     )

@@ -180,7 +180,7 @@ class OrderColumns:
     ids
         As written in the file, also inside bars.
     release_s, due_s
-        Earliest start and wanted finish; -1 where there is no due time.
+        Earliest start and wanted finish, which may lie before the shift; ``NO_DUE`` where there is none.
     finish_s
         When its last operation ends, also where that has no bar on the page.
     binds

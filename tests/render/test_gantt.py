@@ -95,7 +95,8 @@ def test_every_entry_of_a_list_has_the_fields_of_its_kind(key, kind):
 
 def test_columns_have_the_fields_of_their_kind():
     data = page_data(full_view())
-    assert list(data["orders"]) == [field.name for field in fields(views.OrderColumns)]
+    names = [field.name for field in fields(views.OrderColumns)]
+    assert [name for name in data["orders"] if name != "due_from_s"] == names
     renamed = {"start_s": "start_steps", "end_s": "lengths", "set_up_end_s": "set_ups"}  # times are steps
     names = [renamed.get(field.name, field.name) for field in fields(views.BarColumns)]
     assert list(data["bars"]) == ["size", "tick_s", *names]

@@ -29,6 +29,21 @@ ELAPSED = {"clock": Clock(), "shift_end_s": None}
 
 @needs_browser
 class TestWhatItShows:
+    def test_an_order_due_before_the_shift_is_late_by_the_whole_of_it(self, show):
+        plan = small_plan()
+        due = plan.shop.orders.due_s.copy()
+        due[:2] = -1, -12 * HOUR
+        page = show(replace(plan, shop=replace(plan.shop, orders=replace(plan.shop.orders, due_s=due))))
+        for order, ends in (
+            ("TQ-01", "05:59:59, late by 1 h 30 min 1 s"),
+            ("TQ-02", "Sun 18:00, late by 13 h 35"),
+        ):
+            page.fill("#find", order)
+            page.wait_for_function(
+                "(id) => document.getElementById('answer').textContent.includes(id)", arg=order
+            )
+            assert f"due {ends}." in answer(page)
+
     @pytest.mark.parametrize(
         "plan",
         [

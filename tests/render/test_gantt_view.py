@@ -15,7 +15,7 @@ from hypothesis import strategies as st
 from shopfloor.model.calendar import HOUR, Clock
 from shopfloor.model.results import Bound, Choice, Plan
 from shopfloor.model.schedule import Schedule
-from shopfloor.model.shop import Closure, Crew, Operations, Orders, Shop
+from shopfloor.model.shop import NO_DUE, Closure, Crew, Operations, Orders, Shop
 from shopfloor.render import gantt_facts
 from shopfloor.render import gantt_view as views
 from shopfloor.render.gantt_colours import BY_LATENESS, by_family
@@ -80,7 +80,7 @@ def test_colour_tells_lateness(plan):
     for bar in range(len(view.bars)):
         order = int(view.bars.order[bar])
         name = view.groups[view.bars.group[bar]].name
-        if view.orders.due_s[order] < 0:
+        if view.orders.due_s[order] == NO_DUE:
             assert name == "no due time"
         else:
             assert name == ("late" if view.orders.ids[order] in late else "on time")

@@ -69,13 +69,13 @@ const bars = (() => {
 
 const orders = (() => {
   const size = given.orders.ids.length;
-  const due = unpack(given.orders.due_s, size); // sent one higher: 0 is no due time
+  const due = unpack(given.orders.due_s, size), dueFrom = given.orders.due_from_s; // 0 is no due time
   const release = unpack(given.orders.release_s, size), finish = unpack(given.orders.finish_s, size);
   const first = new Float64Array(size).fill(Infinity);
   for (let bar = 0; bar < bars.size; bar++) {
     first[bars.order[bar]] = Math.min(first[bars.order[bar]], bars.start[bar]);
   }
-  for (let order = 0; order < size; order++) due[order] -= 1;
+  for (let order = 0; order < size; order++) due[order] = due[order] ? due[order] - 1 + dueFrom : Infinity;
   return { size, ids: given.orders.ids, due, release, first, finish, binds: given.orders.binds };
 })();
 
@@ -108,7 +108,7 @@ const machines = given.rows.map((row) => ({
 const closures = given.closures;
 
 function isLate(order) {
-  return orders.due[order] >= 0 && orders.finish[order] > orders.due[order];
+  return orders.finish[order] > orders.due[order];
 }
 
 // Lists of bars by some key, kept as one array with the place where each list begins. Bars come

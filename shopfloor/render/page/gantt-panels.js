@@ -13,7 +13,7 @@ function element(tag, text, className) {
 
 function standing(order) {
   const due = orders.due[order], finish = orders.finish[order];
-  if (due < 0) return "no due time";
+  if (due === Infinity) return "no due time";
   if (finish > due) return `due ${say(due)}, late by ${duration(finish - due)}`;
   return finish === due ? `due ${say(due)}, to the minute` : `due ${say(due)}, ${duration(due - finish)} to spare`;
 }
@@ -233,7 +233,7 @@ const COLUMNS = [
   ["Changeover before", (bar) => (changes.of.has(bar) ? changeText(changes.of.get(bar)) : ""), "optional"],
   ["Heads", (bar) => bars.heads[bar] || "", "optional"],
   ["On the way after", (bar) => (bars.way[bar] ? duration(bars.way[bar]) : ""), "optional"],
-  ["Due", (bar) => (orders.due[bars.order[bar]] < 0 ? "" : say(orders.due[bars.order[bar]]))],
+  ["Due", (bar) => (orders.due[bars.order[bar]] === Infinity ? "" : say(orders.due[bars.order[bar]]))],
   ["Standing", (bar) => groups[bars.group[bar]].name],
   ["Note", (bar) => bars.notes.get(bar) ?? ""],
 ];

@@ -11,7 +11,7 @@ function machineRows() {
       const id = oneLine(orders.ids[bars.order[bar]]);
       return bars.parts[bar] > 1 ? [`${id} (${bars.part[bar]}/${bars.parts[bar]})`, id] : [id];
     },
-    due: () => -1,
+    due: () => Infinity,
     placeOf: (row) => row,
   };
 }
