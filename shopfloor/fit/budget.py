@@ -13,7 +13,7 @@ import numpy as np
 
 from shopfloor.errors import NoPlanError
 from shopfloor.model.calendar import duration
-from shopfloor.model.shop import Ints, Shop
+from shopfloor.model.shop import Crew, Ints, Shop
 from shopfloor.openshop.choose import choose
 
 
@@ -105,19 +105,36 @@ def _seconds(shop: Shop, end: int, enough: bool, why: str) -> Budget:
     total = int(clock.worked(end))
     limits = []
     for index, machine in enumerate(shop.machines):
+        its_clock = shop.machine_clocks[index]
         mine = np.flatnonzero(shop.operations.machine == index)
         for head in np.unique(shop.head_s[mine]).tolist():
             late = mine[shop.head_s[mine] >= head]
-            room = max(0, total - int(clock.worked(head))) * machine.count
+            room = max(0, int(its_clock.worked(end)) - int(its_clock.worked(head))) * machine.count
             limits.append(Limit(machine.id, late, seconds, room))
     for crew in shop.crews:
         attended = _attended(shop, crew.id)
         if len(attended):
-            limits.append(
-                Limit(f"crew {crew.id}", attended, seconds * shop.operations.heads, total * crew.heads)
-            )
+            need = _attended_s(shop) * shop.operations.heads
+            limits.append(Limit(f"crew {crew.id}", attended, need, _head_seconds(shop, crew, end)))
     room = np.maximum(0, total - clock.worked(shop.orders.release_s))
     return Budget(tuple(limits), room, seconds, "seconds", total, enough, why)
+
+
+def _attended_s(shop: Shop) -> Ints:
+    """Return how long each operation takes heads: all the time, or only during its set-up."""
+    only_setup = np.array([machine.set_up_only for machine in shop.machines], bool)[shop.operations.machine]
+    attended: Ints = np.where(only_setup, shop.operations.setup_s, shop.operations.seconds)
+    return attended
+
+
+def _head_seconds(shop: Shop, crew: Crew, end: int) -> int:
+    """Return the head-seconds that a crew has before `end`, outside the hall's breaks."""
+    worked = shop.work_clock.worked
+    total = crew.heads * int(worked(end))
+    for start, until, heads in crew.levels:
+        span = int(worked(min(max(until, 0), end))) - int(worked(min(max(start, 0), end)))
+        total += (heads - crew.heads) * span
+    return total
 
 
 def _attended(shop: Shop, crew: str) -> Ints:
