@@ -1,4 +1,4 @@
-"""The pictures of the README: the Gantt page on a screen, and printed in grey.
+"""The pictures of the README: the Gantt page on a screen, in the colours of families, and printed in grey.
 
     python -m tests.pictures [gantt.html] [--to reports/pictures]
 
@@ -18,7 +18,7 @@ from typing import Any
 
 from shopfloor.render.gantt import gantt_page
 from tests.render.browser import chromium, opened, why_not
-from tests.render.plans import hall_plan
+from tests.render.floor import floor_plan
 
 PICTURES = Path(__file__).parents[1] / "reports" / "pictures"
 GREY_DPI = 110
@@ -39,7 +39,19 @@ def screen(page: Any, folder: Path) -> list[Path]:
     page.screenshot(path=str(folder / "gantt-lit.png"))
     page.focus("#chart")
     page.keyboard.press("Escape")
-    return [folder / "gantt.png", folder / "gantt-lit.png"]
+    return [folder / "gantt.png", folder / "gantt-lit.png", *families(page, folder)]
+
+
+def families(page: Any, folder: Path) -> list[Path]:
+    """Take the page in the colours of families, where they play a part."""
+    button = page.locator("#by-family")
+    if not button.is_visible():
+        return []
+    button.click()
+    page.evaluate("document.activeElement.blur()")
+    page.screenshot(path=str(folder / "gantt-family.png"))
+    button.click()
+    return [folder / "gantt-family.png"]
 
 
 def grey_print(page: Any, folder: Path) -> list[Path]:
@@ -66,7 +78,7 @@ def main(arguments: list[str]) -> None:
         file = chosen.page
         if file is None:
             file = Path(name) / "gantt.html"
-            file.write_text(gantt_page(hall_plan(160)), encoding="utf-8")
+            file.write_text(gantt_page(floor_plan()), encoding="utf-8")
         with opened(browser, file) as (page, _):
             for picture in [*screen(page, chosen.to), *grey_print(page, chosen.to)]:
                 print(picture)

@@ -249,7 +249,8 @@ function paintText(s, [text, size, weight], box, group, overSetUp = false) {
   if (group.pattern !== "plain" || overSetUp) { // a quiet ground, so that the pattern does not run through letters
     const width = nameWidth(ctx, text, weight) * size;
     ctx.fillStyle = group.fill;
-    ctx.fillRect(x - width / 2 - 3, y - size * 0.68, width + 6, size * 1.3);
+    const [top, tall] = overSetUp ? [box.y + 1, box.height - 2] : [y - size * 0.68, size * 1.3];
+    ctx.fillRect(x - width / 2 - 3, top, width + 6, tall);
   }
   ctx.font = `${weight} ${size}px ${FONT}`;
   ctx.fillStyle = group.ink;
