@@ -28,6 +28,7 @@ class Options:
     seed: int = 0
     even: bool = False
     shortest_piece_s: int = 0
+    objective: tuple[str, ...] = ("makespan", "tardiness")
 
 
 @dataclass(frozen=True, slots=True)
@@ -109,7 +110,7 @@ def plan(
     """
     options = options or Options()
     bounds = lower_bounds(shop)
-    method, choice = choose(shop)
+    method, choice = choose(shop, options.objective)
     effort = Effort(
         bound_s=bounds[0].value_s if bounds else 0,
         time_limit_s=options.time_limit_s,

@@ -28,6 +28,12 @@ SETTINGS: dict[str, Setting] = {
         Setting("crew", None, "heads", "One crew of so many heads attends every machine."),
         Setting("even", False, "", "Rounds hold as equally many operations as they can: a steady crew."),
         Setting("split", False, "", "Every operation may be cut into parts."),
+        Setting(
+            "objective",
+            "makespan,tardiness",
+            "",
+            "What counts first, and what then; changeovers may be named too.",
+        ),
         Setting("shortest-piece", 0, "minutes", "No operation is cut into pieces shorter than this."),
         Setting("time-limit", 30.0, "seconds", "Longest search for a better plan."),
         Setting("workers", 0, "threads", "Solver threads; 0 takes one for each core."),

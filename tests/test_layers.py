@@ -13,7 +13,7 @@ PACKAGE = Path(__file__).parents[1] / "shopfloor"
 LAYER = {
     "errors": 0, "settings": 0, "model": 1, "kernel": 1,
     "bounds": 2, "openshop": 2, "audit": 2, "read": 2, "render": 2, "journal": 2, "replan": 2,
-    "pipeline": 3, "fit": 4, "sweep": 5, "cli": 6, "board": 6,
+    "pipeline": 3, "fit": 4, "rolling": 4, "sweep": 5, "cli": 6, "board": 6,
 }  # fmt: skip
 ONLY_MODEL = {"read", "render", "journal", "audit"}  # never the kernel
 TOP = {"", "__main__"}  # the package's front door may name anything

@@ -20,6 +20,7 @@ WORKBOOK_UP_TO, SHEETS_UP_TO = 50_000, 100_000
 
 TIME_LIMIT: Any = SETTINGS["time-limit"].default
 WORKERS: Any = SETTINGS["workers"].default
+OBJECTIVE: Any = SETTINGS["objective"].default
 SEED: Any = SETTINGS["seed"].default
 
 
@@ -36,6 +37,7 @@ def plan(
     crew: common.CrewOption = None,
     split: common.SplitOption = False,
     shortest_piece: Annotated[float, common.setting("shortest-piece", metavar="MINUTES")] = 0,
+    objective: Annotated[str, common.setting("objective", metavar="GOALS")] = OBJECTIVE,
     even: common.EvenOption = False,
     time_limit: Annotated[float, common.setting("time-limit", metavar="SECONDS")] = TIME_LIMIT,
     workers: Annotated[int, common.setting("workers", metavar="N")] = WORKERS,
@@ -59,6 +61,11 @@ def plan(
 
     common.one_of("--codes", codes, ("qr", "code128"))
     common.one_of("--ics", ics, ("plan", "machine"))
+    goals = tuple(goal.strip() for goal in objective.split(","))
+    for goal in goals:
+        common.one_of("--objective", goal, ("makespan", "tardiness", "changeovers"))
+    if len(set(goals)) < len(goals):
+        raise typer.BadParameter("names a goal twice", param_hint="--objective")
     try:
         reading = common.read(orders, shop, start, end, round_minutes, crew=crew, split=split)
     except InputError as error:
@@ -77,6 +84,7 @@ def plan(
                 workers=workers,
                 seed=seed,
                 even=even,
+                objective=goals,
                 shortest_piece_s=round(shortest_piece * 60),
             ),
             inputs=reading.inputs,

@@ -6,23 +6,36 @@ from shopfloor.model.results import Choice
 from shopfloor.model.shop import Shop
 from shopfloor.openshop.crew_rounds import CrewRounds
 from shopfloor.openshop.general import General
+from shopfloor.openshop.incumbent import GOALS, MAKESPAN
 from shopfloor.openshop.lot_split import LotSplit
 from shopfloor.openshop.method import Method
 from shopfloor.openshop.over_breaks import OverBreaks, all_pause
 from shopfloor.openshop.two_machine import TwoMachine
 from shopfloor.openshop.unit_rounds import UnitRounds
-
-# Exact methods first, in the order of the README's table; the last accepts everything.
-METHODS: tuple[Method, ...] = (UnitRounds(), CrewRounds(), TwoMachine(), LotSplit(), General())
+from shopfloor.openshop.whole_floor import WholeFloor
 
 
-def choose(shop: Shop) -> tuple[Method, Choice]:
-    """Return the first method that accepts `shop`, with the reasons for and against."""
+def methods(goals: tuple[str, ...] = GOALS) -> tuple[Method, ...]:
+    """Return every method: exact ones first, in the order of the README's table; the last accepts all."""
+    simple = tuple(goal for goal in goals if goal in GOALS)  # without changeovers there are none to shorten
+    return UnitRounds(), CrewRounds(), TwoMachine(), LotSplit(), General(simple), WholeFloor(goals)
+
+
+def choose(shop: Shop, goals: tuple[str, ...] = GOALS) -> tuple[Method, Choice]:
+    """Return the first method that accepts `shop`, with the reasons for and against.
+
+    Parameters
+    ----------
+    goals
+        What counts first, and what then. The exact methods serve the makespan first.
+    """
     refused: dict[str, str] = {}
-    methods = [OverBreaks(method) for method in METHODS] if all_pause(shop) else METHODS
-    for method in methods:
-        reason = method.accepts(shop)
+    for method in methods(goals):
+        chosen = OverBreaks(method) if all_pause(shop) else method
+        reason = chosen.accepts(shop)
+        if reason is None and chosen.reaches_bound and goals[0] != MAKESPAN and shop.has_due:
+            reason = f"it serves the finish first, not {goals[0]}"
         if reason is None:
-            return method, Choice(method.name, method.promise(shop), refused)
-        refused[method.name] = reason
-    raise AssertionError("the general method accepts every shop")
+            return chosen, Choice(chosen.name, chosen.promise(shop), refused)
+        refused[chosen.name] = reason
+    raise AssertionError("the last method accepts every shop")
