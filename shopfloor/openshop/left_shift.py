@@ -10,10 +10,17 @@ from shopfloor.model.shop import NO_STEP, Ints, Shop
 
 
 def left_shift(shop: Shop, start: Ints) -> Ints:
-    """Return starts none of which is later than in `start`, a legal schedule of `shop`.
+    """Return a schedule with the sequences of `start`, every operation as early as they allow.
 
     Operations are taken by start, each as early as its order, the machine's units and the steps allow
-    after those before it. Nothing before it ends later than it did, so neither does it. O(n log n).
+    after those before it. O(n log n).
+
+    Parameters
+    ----------
+    start
+        Starts of a legal schedule: then none is later in the result, since nothing before it ends later
+        than it did. Or any numbers that put lower steps first (:func:`steps_in_sequence`): these only
+        say the sequence, and the result is legal all the same.
     """
     columns = shop.operations
     job, machine = columns.job.tolist(), columns.machine.tolist()
@@ -36,3 +43,12 @@ def left_shift(shop: Shop, start: Ints) -> Ints:
         ready[order] = begin + seconds[row]
         shifted[row] = begin
     return shifted
+
+
+def steps_in_sequence(shop: Shop, start: Ints) -> bool:
+    """Tell whether `start` puts the lower steps of each order before its higher ones."""
+    columns = shop.operations
+    rows = np.flatnonzero(columns.step != NO_STEP)
+    rows = rows[np.lexsort((rows, start[rows], columns.job[rows]))]
+    step, same = columns.step[rows], np.diff(columns.job[rows]) == 0
+    return bool((np.diff(step)[same] >= 0).all())

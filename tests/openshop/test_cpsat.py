@@ -24,6 +24,7 @@ from shopfloor.openshop.cpsat.variables import Grid, Model, declare
 from shopfloor.openshop.cpsat.windows import around_late_order, least_end_s
 from shopfloor.openshop.dense import Floor, MostWork, starts
 from shopfloor.openshop.incumbent import makespan_of, tardiness_of
+from shopfloor.openshop.left_shift import left_shift
 from shopfloor.openshop.units import assign_units
 from tests.oracle import optimum
 from tests.strategies import shops
@@ -57,7 +58,7 @@ def test_the_model_has_the_least_makespan_of_brute_force(shop):
     answer, solver = run(model)
     assert answer is Answer.PROVED
     assert aim.worth(round(solver.objective_value)) == optimum(shop).makespan_s
-    assert violations(shop, starts_of(model, solver.value)) == []
+    assert violations(shop, left_shift(shop, starts_of(model, solver.value))) == []
 
 
 @SOME
@@ -72,7 +73,7 @@ def test_the_model_has_the_least_lateness_of_brute_force(shop):
     best = optimum(shop).tardiness
     assert answer is Answer.PROVED
     assert aim.worth(round(solver.objective_value)) == best
-    assert tardiness_of(shop, starts_of(model, solver.value)) == best
+    assert tardiness_of(shop, left_shift(shop, starts_of(model, solver.value))) == best
 
 
 @SOME
@@ -88,7 +89,7 @@ def test_the_pairs_model_says_yes_from_the_least_makespan_on(shop, with_no_overl
         answer, solver = run(model)
         assert answer is expected
         if expected is Answer.PROVED:
-            assert violations(shop, starts_of(model, solver.value)) == []
+            assert violations(shop, left_shift(shop, starts_of(model, solver.value))) == []
 
 
 @SOME
@@ -181,7 +182,7 @@ def test_a_part_placed_again_leaves_a_legal_schedule_no_longer(shop, first, size
     model.cp.minimize(sum(model.end(row) for row in model.rows))
     answer, solver = run(model)
     assert answer is Answer.PROVED  # where they stand is one solution
-    placed = starts_of(model, solver.value, start)
+    placed = left_shift(shop, starts_of(model, solver.value, start))
     assert violations(shop, placed) == []
     assert makespan_of(shop, placed) <= makespan_of(shop, start)
 

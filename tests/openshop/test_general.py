@@ -195,7 +195,7 @@ def test_progress_is_told_while_it_searches():
     assert outcome.schedule.makespan_s <= seen[-1].best_s
 
 
-@pytest.mark.parametrize("name", ["j6-per0-0", "gp07-01"])
+@pytest.mark.parametrize("name", ["j6-per10-0", "gp07-01"])
 def test_one_worker_repeats(name):
     made = [solved(PUBLISHED[name].shop(), time_limit_s=120, workers=1, seed=5) for _ in range(2)]
     assert all(outcome.repeatable for outcome in made)

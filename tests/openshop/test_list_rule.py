@@ -11,12 +11,12 @@ from shopfloor.audit.schedule import audit
 from shopfloor.bounds.catalogue import lower_bounds
 from shopfloor.model.results import Choice, Plan
 from shopfloor.model.schedule import Schedule
-from shopfloor.model.shop import Machine, Operations, Orders, Shop, shop_of
+from shopfloor.model.shop import NO_STEP, Machine, Operations, Orders, Shop, shop_of
 from shopfloor.model.stated import state
 from shopfloor.openshop.dense import Dispatch, Floor, Holds, MostWork, starts
 from shopfloor.openshop.due_search import due_runs
 from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS, Incumbent
-from shopfloor.openshop.left_shift import left_shift
+from shopfloor.openshop.left_shift import left_shift, steps_in_sequence
 from shopfloor.openshop.list_rule import BUDGETS, list_schedules, makespan_runs
 from shopfloor.openshop.reserve import Filling, may_reserve, near_bound_orders, reserved_starts
 from shopfloor.openshop.units import assign_units
@@ -173,6 +173,17 @@ def test_pushing_left_starts_nothing_later_and_stays_legal(shop, stretch):
     assert (pushed <= start).all()
     assert violations(shop, pushed) == []
     assert left_shift(shop, pushed).tolist() == pushed.tolist()
+
+
+@SOME
+@given(shops(groups=True, max_operations=12), st.integers(0, 2**32 - 1))
+def test_any_sequence_with_lower_steps_first_becomes_a_legal_schedule(shop, seed):
+    order = np.random.default_rng(seed).permutation(len(shop))
+    if not steps_in_sequence(shop, order):
+        step = np.where(shop.operations.step == NO_STEP, 0, shop.operations.step)
+        order = order + step * len(shop)
+    assert steps_in_sequence(shop, order)
+    assert violations(shop, left_shift(shop, order)) == []
 
 
 def test_too_many_at_once_have_no_units():

@@ -29,6 +29,7 @@ from shopfloor.openshop.cpsat.pairs import cut_starts, mirrored, order_pairs, re
 from shopfloor.openshop.cpsat.solve import ROOM_S, Answer, Switchboard, threads, watch
 from shopfloor.openshop.cpsat.variables import Grid, declare
 from shopfloor.openshop.incumbent import MAKESPAN, Incumbent
+from shopfloor.openshop.left_shift import left_shift
 from shopfloor.openshop.method import Effort, Progress
 
 # The solver's own units of work, about two seconds each.
@@ -176,7 +177,7 @@ class Bracket:
             model.hint(mirrored(self.shop, start) if turned else start)
 
         def keep(value: Callable[[cp_model.IntVar], int]) -> None:
-            if self.incumbent.offer(starts_of(model, value)):
+            if self.incumbent.offer(left_shift(self.shop, starts_of(model, value))):
                 self._board.stop_pointless()
 
         def pointless() -> bool:

@@ -9,11 +9,10 @@ from ortools.sat.python import cp_model
 
 from shopfloor.model.shop import Ints
 from shopfloor.openshop.cpsat.variables import Model
-from shopfloor.openshop.left_shift import left_shift
 
 
 def starts_of(model: Model, value: Callable[[cp_model.IntVar], int], at_s: Ints | None = None) -> Ints:
-    """Return the start of each operation in seconds, pushed to the left.
+    """Return the start of each operation in seconds.
 
     Parameters
     ----------
@@ -25,4 +24,4 @@ def starts_of(model: Model, value: Callable[[cp_model.IntVar], int], at_s: Ints 
     starts = np.zeros(len(model.shop), np.int64) if at_s is None else at_s.copy()
     for operation in model.rows:
         starts[operation] = value(model.start[operation]) * model.grid.unit_s
-    return left_shift(model.shop, starts)
+    return starts

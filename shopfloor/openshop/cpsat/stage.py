@@ -15,6 +15,7 @@ from shopfloor.openshop.cpsat.objective import GOAL_BUILDERS, Goal
 from shopfloor.openshop.cpsat.solve import ROOM_S, Answer, Found, Switchboard, threads, watch
 from shopfloor.openshop.cpsat.variables import Model, declare
 from shopfloor.openshop.incumbent import MAKESPAN, Incumbent
+from shopfloor.openshop.left_shift import left_shift
 from shopfloor.openshop.method import Effort, Progress
 
 BRIEF_WORK = 0.3  # the solver's own units, about two seconds each
@@ -95,7 +96,7 @@ def _search(
     model, aim = _model(shop, incumbent, goal, kept, least)
 
     def keep(value: Callable[[cp_model.IntVar], int]) -> None:
-        incumbent.offer(starts_of(model, value))
+        incumbent.offer(left_shift(shop, starts_of(model, value)))
 
     found.append((aim, board.solve(model.cp, solver, keep)))
 

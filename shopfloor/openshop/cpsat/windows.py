@@ -23,6 +23,7 @@ from shopfloor.openshop.cpsat.objective import makespan, tardiness
 from shopfloor.openshop.cpsat.solve import ROOM_S, Answer, Switchboard, threads, watch
 from shopfloor.openshop.cpsat.variables import Grid, declare
 from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS, Incumbent, weights
+from shopfloor.openshop.left_shift import left_shift, steps_in_sequence
 from shopfloor.openshop.method import Effort, Progress
 
 WINDOW_SIZES = (40, 60, 80, 110)
@@ -76,7 +77,7 @@ def _shorten_tail(
     _set(solver, effort, threads(effort.workers), TAIL_WORK * max(1.0, size / 600))
 
     def keep(value: Callable[[cp_model.IntVar], int]) -> None:
-        incumbent.offer(starts_of(model, value, start))
+        incumbent.offer(left_shift(shop, starts_of(model, value, start)))
 
     return board.solve(model.cp, solver, keep).answer in (Answer.PROVED, Answer.FOUND)
 
@@ -156,7 +157,11 @@ def _window(
 
     def keep(value: Callable[[cp_model.IntVar], int]) -> None:
         nonlocal better
-        better = incumbent.offer(starts_of(model, value, start)) or better
+        current = incumbent.start  # another thread may have found a better one meanwhile
+        assert current is not None
+        placed = starts_of(model, value, current)
+        if current is start or steps_in_sequence(shop, placed):
+            better = incumbent.offer(left_shift(shop, placed)) or better
 
     board.solve(model.cp, solver, keep)
     return better
