@@ -90,15 +90,20 @@ def test_no_goal_spoils_the_ones_before(shop: Shop, goals: list[str], count: int
     assert measures(shop, shorter, chosen[:1]) == measures(shop, outcome.schedule, chosen[:1])
 
 
-@given(floors(max_operations=6), st.permutations(GOALS), st.integers(1, 3))
+@given(floors(max_operations=6), st.permutations(GOALS), st.integers(1, 3), st.integers(0, 3))
 @settings(max_examples=60, deadline=None)
-def test_parts_placed_again_fit_what_stays(shop: Shop, goals: list[str], count: int) -> None:
+def test_parts_placed_again_fit_what_stays(shop: Shop, goals: list[str], count: int, slide: int) -> None:
     chosen = tuple(goals[:count])
     start = one_after_the_other(shop)
     with pytest.MonkeyPatch.context() as patch:
         for name, value in (("MODEL_MOST", 0), ("BRIEF_MOST", 0), ("WINDOWS_FROM", 0)):
             patch.setattr(solve, name, value)
-        for name, sizes in (("WINDOW_SIZES", (1, 2, 3)), ("TAIL_SIZES", (1, 2, 4, 8)), ("FRUITLESS", 6)):
+        for name, sizes in (
+            ("WINDOW_SIZES", (1, 2, 3)),
+            ("TAIL_SIZES", (1, 2, 4, 8)),
+            ("FRUITLESS", 6),
+            ("SLIDING", slide),
+        ):
             patch.setattr(windows, name, sizes)
         outcome = improve_floor(shop, start, chosen, 0, Effort(workers=1))
     check(shop, outcome.schedule)
