@@ -14,12 +14,12 @@ import pytest
 
 from shopfloor.model.calendar import HOUR
 from shopfloor.model.shop import Machine
-from shopfloor.render.dispatch import dispatch_page
+from shopfloor.render.dispatch import dispatch_page, lay_out
 from shopfloor.render.dispatch_sheets import STOPS_A_STRIP, dispatch_view
 from shopfloor.render.html import CARE_NOTICE
 from tests.render.browser import Seen, chromium, needs_browser
 from tests.render.expected import round_plan
-from tests.render.plans import HOSTILE, hall_plan
+from tests.render.plans import HOSTILE, hall_plan, many_plan
 
 PAPERS = ("A4", "Letter")
 MIXED = hall_plan(200)
@@ -244,3 +244,21 @@ def _picture(file: Path) -> np.ndarray:
 def test_the_notice_is_printed_in_full(paper):
     text = paper.sheets(dispatch_page(hall_plan(60)), "Letter", "#only-machines")[0]
     assert squeezed(CARE_NOTICE) in squeezed(text)
+
+
+@needs_browser
+@pytest.mark.parametrize("size", PAPERS)
+def test_what_comes_before_a_run_stays_with_it(paper, size):
+    """Five machines with a changeover before most runs: no sheet ends with one, and every run is printed."""
+    plan = many_plan(4_800, floor=True)
+    families = np.arange(len(plan.shop)) % 8 % 7  # another one in every round
+    shop = replace(plan.shop, operations=replace(plan.shop.operations, family=families))
+    view = dispatch_view(replace(plan, shop=shop))
+    lists = view.machines[:5]
+    sheets = paper.sheets(lay_out(replace(view, machines=lists, strips=())), size)
+    changes = sum(len(run.asides) for sheet in lists for run in sheet.runs)
+    assert sum(text.count("changeover from") for text in sheets) == changes > 100
+    for text in sheets:
+        above = text.split("This is a plan, not a permit.")[0].rstrip().splitlines()
+        assert "changeover" not in above[-1]
+    assert len(sheets) > 2 * len(lists)
