@@ -81,8 +81,11 @@ class _Search:
     """One run of the method; gathers what was found, what was proved, and whether it repeats."""
 
     def __init__(self, shop: Shop, effort: Effort, goals: tuple[str, ...]) -> None:
-        self.shop, self.effort, self.goals = shop, effort, goals
-        self.incumbent = Incumbent(shop, goals)
+        self.shop, self.effort = shop, effort
+        self.stages = tuple(goal for goal in goals if goal != TARDINESS or shop.has_due) or (MAKESPAN,)
+        # a goal that was not asked for still decides between schedules that are equal otherwise
+        self.goals = (*self.stages, *(goal for goal in GOALS if goal not in self.stages))
+        self.incumbent = Incumbent(shop, self.goals)
         self.bound_s = effort.bound_s
         self.proven_s = 0  # the part of the bound that the solver proved
         self.least = _least_tardiness(shop)
@@ -95,11 +98,10 @@ class _Search:
             MAKESPAN: self._shorten,
             TARDINESS: self._serve,
         }
-        goals = [goal for goal in self.goals if goal != TARDINESS or self.shop.has_due]
-        for number, goal in enumerate(goals):
-            last = number == len(goals) - 1
+        for number, goal in enumerate(self.stages):
+            last = number == len(self.stages) - 1
             until = None if last else time.monotonic() + FIRST_SHARE * self.effort.left_s
-            stages[goal](tuple(goals[:number]), until)
+            stages[goal](self.stages[:number], until)
         stopped = "done"
         if not self.complete:
             stopped = "interrupted" if self.effort.stop.is_set() else "time limit"
@@ -279,10 +281,12 @@ class _Search:
         value = self._value(TARDINESS)
         if not value:
             return "Nothing is late."
-        kind = "plan of this makespan" if self.goals.index(MAKESPAN) == 0 else "plan"
+        kind = "plan of this makespan" if self.goals[0] == MAKESPAN else "plan"
         said = f"Weighted lateness is {duration(value // PRIORITY_UNIT)} (priority × time late, summed)"
         if TARDINESS in self.proved:
             return f"{said}; no {kind} has less."
+        if not self.least:
+            return f"{said}; whether a {kind} could have less is not known."
         least = duration(self.least // PRIORITY_UNIT)
         return f"{said}; all that is proved is that every {kind} has {least} or more."
 

@@ -138,6 +138,28 @@ def test_a_priority_with_too_many_decimals_is_told():
     )
 
 
+@pytest.mark.parametrize(("goals", "late_min"), [((MAKESPAN,), 30), ((TARDINESS,), 20), ((), 30)])
+def test_goals_may_be_left_out(goals, late_min):
+    """Without due times there is still a shortest plan; without asking for it lateness is only told."""
+    shop = shop_of([[60, 120], [120, 60]])
+    assert solved(shop, General(goals=goals)).schedule.makespan_s == 180
+    late = solved(late_shop(), General(goals=goals), time_limit_s=30)
+    assert late.schedule.makespan_s == 1800
+    assert late.remarks[0].startswith(f"Weighted lateness is {late_min} min")
+
+
+def test_lateness_that_may_be_more_than_need_be_is_told_as_open():
+    """Forty orders on one machine: in a second the search cannot prove how late they must be."""
+    rng = np.random.default_rng(0)
+    shop = Shop(
+        (Machine("M"),),
+        Orders(tuple(f"J{k}" for k in range(40)), due_s=rng.integers(3600, 9000, 40)),
+        Operations(range(40), [0] * 40, rng.integers(60, 600, 40)),
+    )
+    (remark,) = solved(shop, time_limit_s=1.0).remarks
+    assert remark.endswith("; whether a plan of this makespan could have less is not known.")
+
+
 def test_nothing_to_do_is_done():
     outcome = General().solve(Shop((), Orders(()), Operations([], [], [])), Effort())
     assert len(outcome.schedule) == 0
