@@ -203,6 +203,15 @@ def moment(text: str, clock: Clock, name: str) -> int:
     return seconds
 
 
+# What our writers put an apostrophe before, with the apostrophes that were there already.
+_NEUTRALISED = re.compile(r"'+[=+\-@\t\r\n＝＋－＠]")
+
+
+def plain(text: str) -> str:
+    """Return a text without the apostrophe that keeps a spreadsheet from running it as a formula."""
+    return text[1:] if _NEUTRALISED.match(text) else text
+
+
 def name_of(text: str) -> str:
     """Read the name of an order, a machine or a family: one visible line of bounded length.
 
@@ -218,8 +227,14 @@ def name_of(text: str) -> str:
     return text
 
 
+def name_in_sheet(text: str) -> str:
+    """Read a name that stands in a spreadsheet, where one that begins like a formula has an apostrophe."""
+    return name_of(plain(text))
+
+
 def note(text: str) -> str:
     """Read a remark: any text, line breaks and tabs included, but no other control characters."""
+    text = plain(text)
     for character in "" if text.isprintable() else text:
         if unicodedata.category(character) in {"Cc", "Cs"} and character not in "\n\r\t":
             raise CellFault("control-character", code=f"U+{ord(character):04X}")

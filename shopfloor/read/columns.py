@@ -75,8 +75,8 @@ class Column:
 COLUMNS: Mapping[str, Column] = {
     column.name: column
     for column in (
-        Column("order", "text", _text(cell.name_of), "Work order; leading zeros are kept.", needed=True),
-        Column("machine", "text", _text(cell.name_of), "Machine or group.", needed=True),
+        Column("order", "text", _text(cell.name_in_sheet), "Work order; leading zeros kept.", needed=True),
+        Column("machine", "text", _text(cell.name_in_sheet), "Machine or group.", needed=True),
         Column("minutes", "number", _number(cell.length), "Run time, decimal minutes or h:mm."),
         Column("quantity", "number", _number(cell.quantity), "Pieces; with minutes_each instead of minutes."),
         Column("minutes_each", "number", _number(cell.length), "Run time of one piece."),
@@ -84,7 +84,7 @@ COLUMNS: Mapping[str, Column] = {
         Column("release", "moment", _moment("release"), "Earliest start of the order."),
         Column("due", "moment", _moment("due"), "Wanted finish of the order."),
         Column("priority", "number", _number(cell.priority), "Weight of the order; 1 unless given."),
-        Column("family", "text", _text(cell.name_of), "Setup family.", idle_without="[changeover]"),
+        Column("family", "text", _text(cell.name_in_sheet), "Setup family.", idle_without="[changeover]"),
         Column("step", "text", _text(cell.step), "Rank inside the order; blank is any time."),
         Column("splittable", "text", _text(cell.splittable), "Whether the operation may be cut: yes or no."),
         Column(

@@ -32,8 +32,6 @@ OPTIONAL: Mapping[str, int] = {"unit": 1, "round": NO_ROUND, "part": 1, "parts":
 # plan.json takes about twice the bytes of the orders it was made from, and is as large as a plan gets.
 MAX_PLAN_BYTES = 3 * settings.MAX_FILE_BYTES
 
-# What our writer puts an apostrophe before; with the apostrophes that were there already.
-_NEUTRALISED = re.compile(r"'+[=+\-@\t\r\n＝＋－＠]")
 _COUNT = re.compile(r"\+?([0-9]{1,9})(?:[.,]0{0,2})?")
 
 
@@ -99,8 +97,8 @@ class _Rows:
         """Return the plan, or raise every fault."""
         moment = moment_reader(shop.clock)
         readers: dict[str, tuple[Callable[[str], Any], Any]] = {
-            "order": (_name, ""),
-            "machine": (_name, ""),
+            "order": (cell.name_in_sheet, ""),
+            "machine": (cell.name_in_sheet, ""),
             "start": (moment, (0, 0)),
             "end": (moment, (0, 0)),
             **{name: (_count, blank) for name, blank in OPTIONAL.items()},
@@ -160,11 +158,6 @@ class _Rows:
             plan_fault(self.findings, place, fault.rule, column.text(index), **fault.words)
 
         self.findings.each(rows, len(rows), add)
-
-
-def _name(text: str) -> str:
-    """Read a name, without the apostrophe that keeps a spreadsheet from running it as a formula."""
-    return cell.name_of(text[1:] if _NEUTRALISED.match(text) else text)
 
 
 def _count(text: str) -> int:
