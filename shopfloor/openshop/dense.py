@@ -1,8 +1,8 @@
 """The dispatching loop: time runs forward, and a free machine takes the most pressing operation that waits.
 
-The loop knows the rules of the floor (releases, steps, groups, one place at a time); a :class:`Queue`
-knows what is pressing; :class:`Holds` may keep a machine or an order back for a moment. A later rule
-joins in one place: what blocks a start in :meth:`Dispatch._begin`, what it does to urgency in a queue.
+The loop knows releases, steps, groups and that nothing is in two places at once; a :class:`Queue` knows
+what is pressing; :class:`~shopfloor.openshop.holds.Holds` may keep a machine or an order back for a
+moment. Closures, crews, changeovers and transport are beyond it: see ``floor``.
 """
 
 from __future__ import annotations
@@ -10,11 +10,14 @@ from __future__ import annotations
 import heapq
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
-from typing import Protocol
+from typing import TYPE_CHECKING, Protocol
 
 import numpy as np
 
 from shopfloor.model.shop import NO_STEP, Ints, Shop
+
+if TYPE_CHECKING:
+    from shopfloor.openshop.holds import Holds
 
 Chance = tuple[int, int] | None  # a seed and the number of the run; None for no random choice at all
 
@@ -22,7 +25,7 @@ NOTHING = -1  # no operation may start here now
 
 
 @dataclass(frozen=True, slots=True)
-class Floor:
+class ShopLists:
     """A shop as plain lists, which loops read several times faster than arrays.
 
     Attributes
@@ -52,7 +55,7 @@ class Floor:
     load: list[int]
 
     @classmethod
-    def of(cls, shop: Shop) -> Floor:
+    def of(cls, shop: Shop) -> ShopLists:
         """Return `shop` as lists; linear time but for one sort of the steps."""
         operations = shop.operations
         job, step = operations.job.tolist(), operations.step.tolist()
@@ -108,7 +111,7 @@ class Dispatch:
     end
         For each order, when it is next free, while it is running.
     idle
-        Whether each order is on the floor and on no machine.
+        Whether each order is released and on no machine.
     units
         Free units of each machine.
     work, load
@@ -119,45 +122,45 @@ class Dispatch:
         Kept back at this moment.
     """
 
-    def __init__(self, floor: Floor, queue: Queue, *, holds: Holds | None = None) -> None:
-        self.floor = floor
+    def __init__(self, lists: ShopLists, queue: Queue, *, holds: Holds | None = None) -> None:
+        self.lists = lists
         self.queue = queue
         self.holds = holds
         self.now = 0
-        self.start = [0] * len(floor.job)
-        self.end = list(floor.release)
-        self.idle = [False] * len(floor.release)
-        self.units = list(floor.count)
-        self.work = list(floor.work)
-        self.load = list(floor.load)
-        self.open_at: list[dict[int, int]] = [{} for _ in floor.release]
+        self.start = [0] * len(lists.job)
+        self.end = list(lists.release)
+        self.idle = [False] * len(lists.release)
+        self.units = list(lists.count)
+        self.work = list(lists.work)
+        self.load = list(lists.load)
+        self.open_at: list[dict[int, int]] = [{} for _ in lists.release]
         self.held_orders: set[int] = set()
         self.held_machines: set[int] = set()
         self.waiting_orders = 0  # how many orders are idle
         self.running: dict[int, int] = {}  # operation to its end
-        self._rank = [0] * len(floor.release)  # the step each order has reached
-        self._left = [0] * len(floor.release)  # operations of that step not finished
+        self._rank = [0] * len(lists.release)  # the step each order has reached
+        self._left = [0] * len(lists.release)  # operations of that step not finished
         self._events: list[tuple[int, int]] = []  # (end, operation); -1 - order is a release
-        self._blocks: list[tuple[int, int]] = []  # (start, operation) of reserved blocks
-        self.next_block: list[list[int]] = [[] for _ in floor.count]  # starts still to come, latest first
+        self.blocks: list[tuple[int, int]] = []  # (start, operation) reserved and still to come, latest first
+        self.next_block: list[list[int]] = [[] for _ in lists.count]  # starts still to come, latest first
 
     def reserve(self, blocks: Sequence[tuple[int, int]]) -> None:
         """Fix operations of whole orders in advance: `(start, operation)` each, on machines of one unit.
 
         The queue must then never hand out an operation that would run into a block.
         """
-        self._blocks = sorted(blocks, reverse=True)
-        for start, operation in self._blocks:
-            self.next_block[self.floor.machine[operation]].append(start)
+        self.blocks = sorted(blocks, reverse=True)
+        for start, operation in self.blocks:
+            self.next_block[self.lists.machine[operation]].append(start)
 
     def run(self) -> list[int]:
         """Return the start of each operation, in whole seconds."""
-        floor, events = self.floor, self._events
+        lists, events = self.lists, self._events
         self.queue.attach(self)
-        reserved = {floor.job[operation] for _, operation in self._blocks}
-        events.extend((time, -1 - job) for job, time in enumerate(floor.release) if job not in reserved)
+        reserved = {lists.job[operation] for _, operation in self.blocks}
+        events.extend((time, -1 - job) for job, time in enumerate(lists.release) if job not in reserved)
         heapq.heapify(events)
-        while events or self._blocks:
+        while events or self.blocks:
             self.now = self._next_moment()
             touched = self._settle()
             if self.holds is not None:
@@ -167,55 +170,55 @@ class Dispatch:
         return self.start
 
     def _next_moment(self) -> int:
-        moments = [line[-1][0] for line in (self._blocks,) if line]
+        moments = [line[-1][0] for line in (self.blocks,) if line]
         if self._events:
             moments.append(self._events[0][0])
         return min(moments)
 
     def _settle(self) -> set[int]:
         """Let everything happen that happens now; return the machines that may have something to start."""
-        floor, events, now = self.floor, self._events, self.now
+        lists, events, now = self.lists, self._events, self.now
         touched: set[int] = set()
         while events and events[0][0] == now:
             operation = heapq.heappop(events)[1]
             if operation < 0:
                 job = -1 - operation
-                self._open(job, floor.anytime[job])
+                self._open(job, lists.anytime[job])
                 self._next_rank(job)
             else:
-                job, machine = floor.job[operation], floor.machine[operation]
+                job, machine = lists.job[operation], lists.machine[operation]
                 del self.running[operation]
                 self.units[machine] += 1
                 touched.add(machine)
-                if floor.ranks[job]:
+                if lists.ranks[job]:
                     self._step_done(job, operation)
             self.idle[job] = True
             self.waiting_orders += 1
             self.queue.returned(job)
             touched.update(self.open_at[job])
-        while self._blocks and self._blocks[-1][0] == now:
-            operation = self._blocks.pop()[1]
-            self.next_block[floor.machine[operation]].pop()
+        while self.blocks and self.blocks[-1][0] == now:
+            operation = self.blocks.pop()[1]
+            self.next_block[lists.machine[operation]].pop()
             self._start(operation)
         return touched
 
     def _open(self, job: int, operations: Iterable[int]) -> None:
         machines = self.open_at[job]
         for operation in operations:
-            machine = self.floor.machine[operation]
+            machine = self.lists.machine[operation]
             machines[machine] = machines.get(machine, 0) + 1
             self.queue.add(operation)
 
     def _next_rank(self, job: int) -> None:
-        ranks = self.floor.ranks[job]
+        ranks = self.lists.ranks[job]
         if self._rank[job] < len(ranks):
             self._left[job] = len(ranks[self._rank[job]])
             self._open(job, ranks[self._rank[job]])
 
     def _step_done(self, job: int, operation: int) -> None:
         if (
-            self._rank[job] < len(self.floor.ranks[job])
-            and operation in self.floor.ranks[job][self._rank[job]]
+            self._rank[job] < len(self.lists.ranks[job])
+            and operation in self.lists.ranks[job][self._rank[job]]
         ):
             self._left[job] -= 1
             if not self._left[job]:
@@ -236,7 +239,7 @@ class Dispatch:
 
     def _begin(self, touched: set[int]) -> None:
         """Start what can start now, on the machines with most work left for each unit first."""
-        load, count, units = self.load, self.floor.count, self.units
+        load, count, units = self.load, self.lists.count, self.units
         ready = [m for m in touched if units[m] and load[m] and m not in self.held_machines]
         if len(ready) > 1:
             ready.sort(key=lambda m: (-load[m] / count[m], m))
@@ -245,7 +248,7 @@ class Dispatch:
                 operation = self.queue.take(machine)
                 if operation == NOTHING:
                     break
-                job = self.floor.job[operation]
+                job = self.lists.job[operation]
                 machines = self.open_at[job]
                 if machines[machine] == 1:
                     del machines[machine]
@@ -254,8 +257,8 @@ class Dispatch:
                 self._start(operation)
 
     def _start(self, operation: int) -> None:
-        floor, now = self.floor, self.now
-        job, machine, seconds = floor.job[operation], floor.machine[operation], floor.seconds[operation]
+        lists, now = self.lists, self.now
+        job, machine, seconds = lists.job[operation], lists.machine[operation], lists.seconds[operation]
         self.start[operation] = now
         if self.idle[job]:
             self.idle[job] = False
@@ -289,22 +292,22 @@ class MostWork:
     def attach(self, loop: Dispatch) -> None:
         """Learn the loop whose state the queue reads."""
         self._loop = loop
-        floor = loop.floor
-        size = len(floor.job)
+        lists = loop.lists
+        size = len(lists.job)
         self._share = [1.0] * size
         if self._chance is not None:
             self._share = (1.0 - self._noise * np.random.default_rng(self._chance).random(size)).tolist()
-        self._bonus = [self._longest * seconds for seconds in floor.seconds]
-        self._heaps: list[list[tuple[float, int]]] = [[] for _ in floor.count]
-        self._aside: list[list[int]] = [[] for _ in floor.release]
+        self._bonus = [self._longest * seconds for seconds in lists.seconds]
+        self._heaps: list[list[tuple[float, int]]] = [[] for _ in lists.count]
+        self._aside: list[list[int]] = [[] for _ in lists.release]
 
     def _key(self, operation: int) -> float:
         loop = self._loop
-        return -loop.work[loop.floor.job[operation]] * self._share[operation] - self._bonus[operation]
+        return -loop.work[loop.lists.job[operation]] * self._share[operation] - self._bonus[operation]
 
     def add(self, operation: int) -> None:
         """`operation` may run from now on, whenever its order is free."""
-        heapq.heappush(self._heaps[self._loop.floor.machine[operation]], (self._key(operation), operation))
+        heapq.heappush(self._heaps[self._loop.lists.machine[operation]], (self._key(operation), operation))
 
     def returned(self, job: int) -> None:
         """Order `job` is free again."""
@@ -316,7 +319,7 @@ class MostWork:
     def take(self, machine: int) -> int:
         """Remove and return the operation that `machine` should start now, or ``NOTHING``."""
         loop, heap = self._loop, self._heaps[machine]
-        job_of, idle, held = loop.floor.job, loop.idle, loop.held_orders
+        job_of, idle, held = loop.lists.job, loop.idle, loop.held_orders
         while heap:
             key, operation = heap[0]
             job = job_of[operation]
@@ -333,102 +336,6 @@ class MostWork:
         return NOTHING
 
 
-class Holds:
-    """Keeps a machine or an order back for a moment, so that a tight line need not wait.
-
-    A line (an order or a machine) is tight when hardly more time is left before `target` than its work
-    takes. A rule that never waits gives a machine away just before a tight order becomes free, and the
-    order then loses a little at each of its operations. So before a tight line ends what it does, one
-    free partner that can afford it is kept for it, unless another partner will be free in time anyway;
-    that is decided anew at every moment, and so as late as can be.
-
-    Parameters
-    ----------
-    target
-        The makespan aimed at, usually the lower bound.
-    tight
-        How many lines, those with the least slack, are waited for.
-    patience
-        The share of its own slack that a partner may lose at once.
-    """
-
-    def __init__(self, target: int, tight: int, patience: float = 1.0) -> None:
-        self._target, self._tight, self._patience = target, tight, patience
-        self._lines: list[tuple[bool, int]] = []
-        self._refresh_in = 0
-
-    def decide(self, loop: Dispatch) -> tuple[set[int], set[int]]:
-        """Return the orders and the machines to be kept back now."""
-        if self._refresh_in == 0:
-            self._refresh(loop)
-            self._refresh_in = max(1, len(loop.start) // 400)
-        self._refresh_in -= 1
-        orders: set[int] = set()
-        machines: set[int] = set()
-        ends: dict[int, int] | None = None
-        plenty = loop.waiting_orders > 2 * len(loop.load)  # then no machine need have an order kept for it
-        for is_order, line in self._lines:
-            if is_order:
-                if loop.work[line] and not loop.idle[line] and loop.end[line] > loop.now:
-                    ends = self._machine_ends(loop) if ends is None else ends
-                    self._keep_machine(loop, line, ends, machines)
-            elif not plenty and loop.load[line] and not loop.units[line]:
-                self._keep_order(loop, line, orders)
-        return orders, machines
-
-    def _refresh(self, loop: Dispatch) -> None:
-        now, target, floor = loop.now, self._target, loop.floor
-        slack = [
-            (target - max(now, loop.end[job]) - work, 0, job) for job, work in enumerate(loop.work) if work
-        ]
-        slack += [(target - now - load // floor.count[m], 1, m) for m, load in enumerate(loop.load) if load]
-        nearest = heapq.nsmallest(self._tight, slack)
-        self._lines = [(kind == 0, line) for _, kind, line in nearest]
-        self._tight_orders = {line for is_order, line in self._lines if is_order}
-        self._tight_machines = {line for is_order, line in self._lines if not is_order}
-
-    @staticmethod
-    def _machine_ends(loop: Dispatch) -> dict[int, int]:
-        """Return when each machine without a free unit next has one."""
-        ends: dict[int, int] = {}
-        for operation, end in loop.running.items():
-            machine = loop.floor.machine[operation]
-            if not loop.units[machine] and end < ends.get(machine, end + 1):
-                ends[machine] = end
-        return ends
-
-    def _keep_machine(self, loop: Dispatch, job: int, ends: dict[int, int], kept: set[int]) -> None:
-        """Keep one free machine for the running order `job`, unless one will be free in time."""
-        end, best = loop.end[job], None
-        for machine in loop.open_at[job]:
-            if machine in ends:
-                if ends[machine] <= end and machine not in self._tight_machines:
-                    return
-            elif machine not in kept and machine not in self._tight_machines and loop.units[machine]:
-                slack = self._target - loop.now - loop.load[machine] // loop.floor.count[machine]
-                if end - loop.now <= self._patience * slack and (best is None or (slack, machine) > best):
-                    best = (slack, machine)
-        if best is not None:
-            kept.add(best[1])
-
-    def _keep_order(self, loop: Dispatch, machine: int, kept: set[int]) -> None:
-        """Keep one free order for the running `machine`, unless one will be free in time."""
-        floor = loop.floor
-        end = min(end for operation, end in loop.running.items() if floor.machine[operation] == machine)
-        for operation, its_end in loop.running.items():
-            job = floor.job[operation]
-            if its_end <= end and job not in self._tight_orders and machine in loop.open_at[job]:
-                return
-        best = None
-        for job, idle in enumerate(loop.idle):
-            if idle and machine in loop.open_at[job] and job not in kept and job not in self._tight_orders:
-                slack = self._target - loop.now - loop.work[job]
-                if end - loop.now <= self._patience * slack and (best is None or (slack, job) > best):
-                    best = (slack, job)
-        if best is not None:
-            kept.add(best[1])
-
-
-def starts(floor: Floor, queue: Queue, holds: Holds | None = None) -> Ints:
-    """Return the start of each operation when `floor` is run by `queue`, in whole seconds."""
-    return np.array(Dispatch(floor, queue, holds=holds).run(), dtype=np.int64)
+def starts(lists: ShopLists, queue: Queue, holds: Holds | None = None) -> Ints:
+    """Return the start of each operation when the shop is run by `queue`, in whole seconds."""
+    return np.array(Dispatch(lists, queue, holds=holds).run(), dtype=np.int64)

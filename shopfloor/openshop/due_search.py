@@ -16,8 +16,9 @@ from itertools import product
 import numpy as np
 
 from shopfloor.model.shop import Floats, Ints, Shop
-from shopfloor.openshop.dense import Floor, Holds, starts
+from shopfloor.openshop.dense import ShopLists, starts
 from shopfloor.openshop.due_rules import Index, MostUrgent, apparent_cost, earliest_due, modified_due
+from shopfloor.openshop.holds import Holds
 from shopfloor.openshop.incumbent import Incumbent
 
 TIGHT = 2  # lines held for, where a rule holds at all
@@ -52,7 +53,7 @@ def due_runs(shop: Shop, incumbent: Incumbent, deadline: int, seed: int) -> Iter
     The best so far is read from `incumbent`, which is to be offered each run's result before the next
     is asked for.
     """
-    floor = Floor.of(shop)
+    lists = ShopLists.of(shop)
     heaviest = float(shop.orders.priority.max())
     level = np.zeros(len(shop.orders))
     best, value = Rule(1.0, 1.0, 1.0, 0, level), None
@@ -60,25 +61,29 @@ def due_runs(shop: Shop, incumbent: Incumbent, deadline: int, seed: int) -> Iter
         for pull, flow, look_ahead in product((1.0, 0.1, 10.0), (1.0, 0.0), (1.0, 3.0)):
             rule = Rule(pull, flow, look_ahead, tight, level)
             result: list[Ints] = []
-            yield partial(_run, shop, floor, rule, deadline, heaviest, result)
+            yield partial(_run, shop, lists, rule, deadline, heaviest, result)
             if value is None or incumbent.measure(result[0]) < value:
                 best, value = rule, incumbent.measure(result[0])
         for index in (modified_due(deadline), earliest_due(deadline)):
-            yield partial(_urgent, shop, floor, index, None, deadline, tight)
+            yield partial(_urgent, shop, lists, index, None, deadline, tight)
     rng = np.random.default_rng(seed)
     while True:
         rule, result = best.vary(rng), []
-        yield partial(_run, shop, floor, rule, deadline, heaviest, result)
+        yield partial(_run, shop, lists, rule, deadline, heaviest, result)
         if value is None or incumbent.measure(result[0]) <= value:
             best, value = rule, incumbent.measure(result[0])
 
 
-def _run(shop: Shop, floor: Floor, rule: Rule, deadline: int, heaviest: float, result: list[Ints]) -> Ints:
+def _run(
+    shop: Shop, lists: ShopLists, rule: Rule, deadline: int, heaviest: float, result: list[Ints]
+) -> Ints:
     index = apparent_cost(rule.look_ahead, rule.flow, deadline, rule.pull * heaviest)
     bias = rule.bias[shop.operations.job]
-    result.append(_urgent(shop, floor, index, bias, deadline, rule.tight))
+    result.append(_urgent(shop, lists, index, bias, deadline, rule.tight))
     return result[0]
 
 
-def _urgent(shop: Shop, floor: Floor, index: Index, bias: Floats | None, deadline: int, tight: int) -> Ints:
-    return starts(floor, MostUrgent(shop, index, bias), Holds(deadline, tight) if tight else None)
+def _urgent(
+    shop: Shop, lists: ShopLists, index: Index, bias: Floats | None, deadline: int, tight: int
+) -> Ints:
+    return starts(lists, MostUrgent(shop, index, bias), Holds(deadline, tight) if tight else None)

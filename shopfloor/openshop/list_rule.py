@@ -1,7 +1,7 @@
 """List schedules: legal in one pass, near-linear, and often at the bound already.
 
 For the makespan there is a fixed sequence of runs, the plain rule first; later runs hold machines for
-tight orders (:class:`~shopfloor.openshop.dense.Holds`), place near-bound orders in advance
+tight orders (:class:`~shopfloor.openshop.holds.Holds`), place near-bound orders in advance
 (:mod:`shopfloor.openshop.reserve`) or blur their keys at random from the seed. For due times a grid
 of rules is tried, and the best of them is then varied (:mod:`shopfloor.openshop.due_search`). How many
 runs are made depends on the size of the shop, never on the clock, so that they repeat.
@@ -14,8 +14,9 @@ from functools import partial
 from itertools import cycle, product
 
 from shopfloor.model.shop import Ints, Shop
-from shopfloor.openshop.dense import Chance, Floor, Holds, MostWork, starts
+from shopfloor.openshop.dense import Chance, MostWork, ShopLists, starts
 from shopfloor.openshop.due_search import due_runs
+from shopfloor.openshop.holds import Holds
 from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS, Incumbent
 from shopfloor.openshop.reserve import may_reserve, near_bound_orders, reserved_starts
 
@@ -73,23 +74,23 @@ def _met(incumbent: Incumbent, goal: str, target: int) -> bool:
 
 def makespan_runs(shop: Shop, target: int, seed: int) -> Iterator[Run]:
     """Yield runs for the least makespan without end, the most promising first."""
-    floor = Floor.of(shop)
+    lists = ShopLists.of(shop)
     near = near_bound_orders(shop, target)
     reserved = bool(near) and may_reserve(shop, near)
-    yield partial(_heavy, floor, None, 0.0, 0.0, target, 0)
-    yield partial(_heavy, floor, None, 0.0, 0.0, target, 1)
+    yield partial(_heavy, lists, None, 0.0, 0.0, target, 0)
+    yield partial(_heavy, lists, None, 0.0, 0.0, target, 1)
     if reserved:
         for number in range(RESERVATIONS):
-            yield partial(reserved_starts, shop, floor, near, target, (seed, number) if number else None)
+            yield partial(reserved_starts, shop, lists, near, target, (seed, number) if number else None)
     for tight in (2, 4, 8):
-        yield partial(_heavy, floor, None, 0.0, 0.0, target, tight)
+        yield partial(_heavy, lists, None, 0.0, 0.0, target, tight)
     blurs = cycle(product((0.02, 0.1, 0.3), (0.0, 1.0), (0, 1, 2, 4)))
     for number, (noise, longest, tight) in enumerate(blurs):
-        yield partial(_heavy, floor, (seed, number), noise, longest, target, tight)
+        yield partial(_heavy, lists, (seed, number), noise, longest, target, tight)
         if reserved:
-            yield partial(reserved_starts, shop, floor, near, target, (seed, RESERVATIONS + number))
+            yield partial(reserved_starts, shop, lists, near, target, (seed, RESERVATIONS + number))
 
 
-def _heavy(floor: Floor, chance: Chance, noise: float, longest: float, target: int, tight: int) -> Ints:
+def _heavy(lists: ShopLists, chance: Chance, noise: float, longest: float, target: int, tight: int) -> Ints:
     queue = MostWork(chance, noise=noise, longest=longest)
-    return starts(floor, queue, Holds(target, tight) if tight else None)
+    return starts(lists, queue, Holds(target, tight) if tight else None)

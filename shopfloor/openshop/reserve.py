@@ -13,7 +13,8 @@ from dataclasses import replace
 import numpy as np
 
 from shopfloor.model.shop import Ints, Shop
-from shopfloor.openshop.dense import NOTHING, Chance, Dispatch, Floor, Holds, MostWork
+from shopfloor.openshop.dense import NOTHING, Chance, Dispatch, MostWork, ShopLists
+from shopfloor.openshop.holds import Holds
 
 FEW = 6  # more orders than this are not placed in advance
 NEAR = 4  # a block is near when this many of the longest operations would reach it
@@ -36,19 +37,19 @@ def near_bound_orders(shop: Shop, target: int) -> list[int]:
     return [int(order) for order in near[np.argsort(slack[near], kind="stable")]]
 
 
-def reserved_starts(shop: Shop, floor: Floor, orders: list[int], target: int, chance: Chance) -> Ints:
+def reserved_starts(shop: Shop, lists: ShopLists, orders: list[int], target: int, chance: Chance) -> Ints:
     """Return the start of each operation when `orders` go first and the others fill in around them.
 
     Only for orders without steps on machines of one unit, which :func:`may_reserve` tells.
     """
     columns = shop.operations
     ours = np.isin(columns.job, orders)
-    alone = Floor.of(shop.keep(ours))
+    alone = ShopLists.of(shop.keep(ours))
     if chance is not None:  # another sequence of machines: the loop serves those with most load first
         share = 1.0 + np.random.default_rng(chance).random(len(alone.load))
         alone = replace(alone, load=[int(load * by) for load, by in zip(alone.load, share, strict=True)])
     starts = Dispatch(alone, MostWork(), holds=Holds(target, len(orders))).run()
-    loop = Dispatch(floor, Filling(chance, noise=0.05))
+    loop = Dispatch(lists, Filling(chance, noise=0.05))
     loop.reserve(list(zip(starts, np.flatnonzero(ours).tolist(), strict=True)))
     return np.array(loop.run(), np.int64)
 
@@ -66,22 +67,22 @@ class Filling(MostWork):
     def attach(self, loop: Dispatch) -> None:
         """Learn the loop whose state the queue reads."""
         super().attach(loop)
-        floor = loop.floor
+        lists = loop.lists
         blocked = [bool(blocks) for blocks in loop.next_block]
-        self._waiting: list[set[int]] = [set() for _ in floor.count]
+        self._waiting: list[set[int]] = [set() for _ in lists.count]
         self._filled: set[int] = set()  # taken past the heap, which still lists them
-        longest = [0] * len(floor.count)
-        reserved = {operation for _, operation in loop._blocks}
-        for operation, machine in enumerate(floor.machine):
+        longest = [0] * len(lists.count)
+        reserved = {operation for _, operation in loop.blocks}
+        for operation, machine in enumerate(lists.machine):
             if blocked[machine] and operation not in reserved:
-                longest[machine] = max(longest[machine], floor.seconds[operation])
+                longest[machine] = max(longest[machine], lists.seconds[operation])
         self._reach = [NEAR * seconds for seconds in longest]
 
     def add(self, operation: int) -> None:
         """`operation` may run from now on, whenever its order is free."""
         if operation in self._filled:
             return
-        self._waiting[self._loop.floor.machine[operation]].add(operation)
+        self._waiting[self._loop.lists.machine[operation]].add(operation)
         super().add(operation)
 
     def take(self, machine: int) -> int:
@@ -102,7 +103,7 @@ class Filling(MostWork):
 
     def _fill(self, machine: int, gap: int) -> int:
         """Return the most pressing operation that belongs to a best filling of `gap` seconds."""
-        seconds, idle, job = self._loop.floor.seconds, self._loop.idle, self._loop.floor.job
+        seconds, idle, job = self._loop.lists.seconds, self._loop.idle, self._loop.lists.job
         fitting = [o for o in self._waiting[machine] if seconds[o] <= gap and idle[job[o]]]
         if not fitting:
             return NOTHING

@@ -22,7 +22,7 @@ from shopfloor.openshop.cpsat.solve import ANSWERS, Answer
 from shopfloor.openshop.cpsat.stage import whole_horizon_s
 from shopfloor.openshop.cpsat.variables import Grid, Model, declare
 from shopfloor.openshop.cpsat.windows import around_late_order, least_end_s
-from shopfloor.openshop.dense import Floor, MostWork, starts
+from shopfloor.openshop.dense import MostWork, ShopLists, starts
 from shopfloor.openshop.incumbent import makespan_of, tardiness_of
 from shopfloor.openshop.left_shift import left_shift
 from shopfloor.openshop.units import assign_units
@@ -96,7 +96,7 @@ def test_the_pairs_model_says_yes_from_the_least_makespan_on(shop, with_no_overl
 @given(shops(max_operations=8, releases=False, steps=False))
 def test_a_schedule_run_backwards_is_a_schedule(shop):
     assert reversible(shop)
-    start = starts(Floor.of(shop), MostWork())
+    start = starts(ShopLists.of(shop), MostWork())
     back = mirrored(shop, start)
     assert violations(shop, back) == []
     assert makespan_of(shop, back) == makespan_of(shop, start)
@@ -174,7 +174,7 @@ def test_costs_too_large_for_the_solver_are_made_coarser_and_prove_nothing():
 @SOME
 @given(shops(groups=True, max_operations=10), st.integers(0, 9), st.integers(1, 6))
 def test_a_part_placed_again_leaves_a_legal_schedule_no_longer(shop, first, size):
-    start = starts(Floor.of(shop), MostWork())
+    start = starts(ShopLists.of(shop), MostWork())
     by_start = np.lexsort((np.arange(len(start)), start))
     rows = by_start[min(first, len(start) - 1) :][:size]
     model = declare(shop, makespan_of(shop, start), rows=rows, at_s=start)
@@ -190,7 +190,7 @@ def test_a_part_placed_again_leaves_a_legal_schedule_no_longer(shop, first, size
 @SOME
 @given(shops(groups=True, max_operations=6), st.integers(1, 6))
 def test_no_tail_ends_before_what_its_lines_need(shop, size):
-    start = starts(Floor.of(shop), MostWork())
+    start = starts(ShopLists.of(shop), MostWork())
     rows = np.lexsort((np.arange(len(start)), start))[-size:]
     model = declare(shop, makespan_of(shop, start), rows=rows, at_s=start)
     add_rules(model)

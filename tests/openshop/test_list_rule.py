@@ -13,8 +13,9 @@ from shopfloor.model.results import Choice, Plan
 from shopfloor.model.schedule import Schedule
 from shopfloor.model.shop import NO_STEP, Machine, Operations, Orders, Shop, shop_of
 from shopfloor.model.stated import state
-from shopfloor.openshop.dense import Dispatch, Floor, Holds, MostWork, starts
+from shopfloor.openshop.dense import Dispatch, MostWork, ShopLists, starts
 from shopfloor.openshop.due_search import due_runs
+from shopfloor.openshop.holds import Holds
 from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS, Incumbent
 from shopfloor.openshop.left_shift import left_shift, steps_in_sequence
 from shopfloor.openshop.list_rule import BUDGETS, list_schedules, makespan_runs
@@ -80,7 +81,7 @@ def test_lists_are_never_below_brute_force(shop):
 @given(shops(groups=True, steps=False, releases=False, max_operations=10))
 def test_without_holds_no_machine_waits_for_an_order_that_is_free(shop):
     """A dense schedule: at no start could that operation have run just before on a free unit."""
-    start = starts(Floor.of(shop), MostWork())
+    start = starts(ShopLists.of(shop), MostWork())
     end = start + shop.operations.seconds
     job, machine = shop.operations.job, shop.operations.machine
     for row in range(len(shop)):
@@ -110,10 +111,10 @@ def test_holding_a_machine_helps_the_tight_order():
     """By hand: J1 and J2 have 10 s of work and 10 s of time. J2 leaves M2 at 1; the plain rule gives it to
     J3 for 5 s, so J1, free at 3, finds no machine. A rule that holds M2 for J1 from 1 to 3 loses nothing.
     """
-    floor = Floor.of(shop_of([[3, 2, 5], [6, 1, 3], [0, 5, 0]]))
-    seconds = np.array(floor.seconds)
-    assert int((starts(floor, MostWork()) + seconds).max()) == 11
-    held = starts(floor, MostWork(), Holds(10, 1))
+    lists = ShopLists.of(shop_of([[3, 2, 5], [6, 1, 3], [0, 5, 0]]))
+    seconds = np.array(lists.seconds)
+    assert int((starts(lists, MostWork()) + seconds).max()) == 11
+    held = starts(lists, MostWork(), Holds(10, 1))
     assert int((held + seconds).max()) == 10
     assert held.tolist() == [0, 3, 5, 4, 0, 1, 5]
 
@@ -123,7 +124,7 @@ def test_an_order_as_long_as_the_plan_is_placed_first():
     near = near_bound_orders(shop, bound(shop))
     assert near == [0]
     assert may_reserve(shop, near)
-    start = reserved_starts(shop, Floor.of(shop), near, bound(shop), None)
+    start = reserved_starts(shop, ShopLists.of(shop), near, bound(shop), None)
     assert violations(shop, start) == []
     assert int((start + shop.operations.seconds).max()) == bound(shop)
 
@@ -150,7 +151,7 @@ def near_bound_shop(orders: int, machines: int, seed: int) -> Shop:
 def test_a_filling_fills_what_can_be_filled(values, gap):
     """One machine, a block at `gap`: the largest subset sum up to the gap, as found by trying all subsets."""
     shop = shop_of([[100], *([value] for value in values)])
-    loop = Dispatch(Floor.of(shop), Filling())
+    loop = Dispatch(ShopLists.of(shop), Filling())
     loop.reserve([(gap, 0)])
     start = np.array(loop.run())
     before = [value for value, begin in zip(values, start[1:], strict=True) if begin < gap]
@@ -167,7 +168,7 @@ def test_a_filling_fills_what_can_be_filled(values, gap):
 @SOME
 @given(shops(groups=True, max_operations=12), st.integers(1, 5))
 def test_pushing_left_starts_nothing_later_and_stays_legal(shop, stretch):
-    start = stretch * starts(Floor.of(shop), MostWork())  # legal: every distance between starts has grown
+    start = stretch * starts(ShopLists.of(shop), MostWork())  # legal: every distance between starts has grown
     assert violations(shop, start) == []
     pushed = left_shift(shop, start)
     assert (pushed <= start).all()

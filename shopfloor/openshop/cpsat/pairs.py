@@ -13,10 +13,13 @@ from __future__ import annotations
 
 from itertools import combinations
 
+import numpy as np
 from ortools.sat.python import cp_model
 
 from shopfloor.model.shop import Ints, Shop
 from shopfloor.openshop.cpsat.variables import Model
+
+MOST_MOMENTS, MOST_PIECES, EVERYWHERE = 1 << 19, 1_000, 8
 
 
 def reversible(shop: Shop) -> bool:
@@ -62,24 +65,32 @@ def order_pairs(model: Model, *, mirror: bool = False) -> tuple[int, int] | None
 
 
 def cut_starts(model: Model) -> None:
-    """Let each start only be where the idle time of its lines allows it; for models without a past."""
+    """Let each start only be where the idle time of its lines allows it; for models of whole shops.
+
+    Where that leaves very many pieces, or the plan has very many moments, it is left out: it would cost
+    more than it cuts.
+    """
+    if model.latest > MOST_MOMENTS:
+        return
     allowed: dict[int, int] = {}
     for line in model.lines:
         idle = model.latest - sum(model.seconds[operation] for operation in line)
         if idle < 0:
             model.cp.add_bool_or([])  # the line alone is longer: no solution
             return
+        if (idle + 1) << (len(line) - 1) > EVERYWHERE * model.latest:
+            continue  # so many sums, each with so much room: they leave hardly a moment out
         for operation in line:
             others = [model.seconds[other] for other in line if other != operation]
-            bits = _widen(_sums(others), idle)
-            allowed[operation] = allowed.get(operation, -1) & bits
+            allowed[operation] = allowed.get(operation, -1) & _widen(_sums(others), idle)
     for operation, bits in allowed.items():
         spans = _spans(bits & ((1 << (model.latest - model.seconds[operation] + 1)) - 1))
         if not spans:
             model.cp.add_bool_or([])
             return
-        domain = cp_model.Domain.from_intervals(spans)
-        model.cp.add_linear_expression_in_domain(model.start[operation], domain)
+        if len(spans) <= MOST_PIECES:
+            domain = cp_model.Domain.from_intervals(spans)
+            model.cp.add_linear_expression_in_domain(model.start[operation], domain)
 
 
 def mirrored(shop: Shop, start_s: Ints) -> Ints:
@@ -109,13 +120,8 @@ def _widen(bits: int, width: int) -> int:
 
 def _spans(bits: int) -> list[list[int]]:
     """Return the runs of set bits as [first, last]."""
-    spans: list[list[int]] = []
-    place = 0
-    while bits:
-        gap = (bits & -bits).bit_length() - 1
-        bits >>= gap
-        length = (~bits & (bits + 1)).bit_length() - 1
-        spans.append([place + gap, place + gap + length - 1])
-        bits >>= length
-        place += gap + length
-    return spans
+    raw = np.frombuffer(bits.to_bytes(bits.bit_length() // 8 + 1, "little"), np.uint8)
+    edges = np.flatnonzero(
+        np.diff(np.unpackbits(raw, bitorder="little").astype(np.int8), prepend=0, append=0)
+    )
+    return [[first, after - 1] for first, after in edges.reshape(-1, 2).tolist()]
