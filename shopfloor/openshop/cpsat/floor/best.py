@@ -59,6 +59,15 @@ def tardiness_of(shop: Shop, places: Places, chosen: Bools | None = None) -> int
     return sum(weight[job] * int(done[job] - due[job]) for job in late.tolist())
 
 
+def least_tardiness(shop: Shop) -> int:
+    """Return the weighted tardiness that orders have even when they never wait."""
+    orders = shop.orders
+    soonest = orders.release_s + shop.job_load_s
+    late = np.flatnonzero((orders.due_s != NO_DUE) & (soonest > orders.due_s) & (shop.job_load_s > 0))
+    weight = weights(shop) if len(late) else []
+    return sum(weight[job] * int(soonest[job] - orders.due_s[job]) for job in late.tolist())
+
+
 def changes(shop: Shop, places: Places) -> Iterator[tuple[int, int]]:
     """Yield each operation on a machine with changeovers, and the seconds to change over for it."""
     for index, machine in enumerate(shop.machines):

@@ -17,7 +17,7 @@ def places_of(model: Model, value: Callable[[cp_model.IntVar], int]) -> Places:
     start, end = model.places.start.copy(), model.places.end.copy()
     chosen: list[tuple[int, int]] = []
     for visit in model.visits:
-        if not model.is_placed(visit):
+        if not model.is_free(visit):
             continue
         at = value(visit.at)
         clock = visit.hours.clock

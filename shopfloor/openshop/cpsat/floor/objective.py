@@ -17,7 +17,7 @@ from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS, weights
 
 def makespan(model: Model, least: int) -> Goal:
     """Return the end of the last operation that is placed, known to be `least` seconds or more."""
-    free = [visit for visit in model.visits if model.is_placed(visit)]
+    free = [visit for visit in model.visits if model.is_free(visit)]
     low = min(model.grid.up(least), model.latest)
     finish = model.int_var(low, model.latest, max(visit.end_was for visit in free))
     for visit in free:
@@ -28,7 +28,7 @@ def makespan(model: Model, least: int) -> Goal:
 def tardiness(model: Model, least: int) -> Goal:
     """Return the weighted tardiness of the orders with operations to be placed; due times are on the grid."""
     due, weight, unit_s = model.shop.orders.due_s, weights(model.shop), model.grid.unit_s
-    placed = {visit.job for visit in model.visits if model.is_placed(visit)}
+    placed = {visit.job for visit in model.visits if model.is_free(visit)}
     jobs: dict[int, list[Visit]] = {}
     for visit in model.visits:
         if due[visit.job] != NO_DUE and visit.job in placed:

@@ -68,9 +68,7 @@ def _keep_apart(model: Model, times: Changeovers, one: Visit, two: Visit, here: 
         return
     if one.high + one.work + to <= two.low or two.high + two.work + back <= one.low:
         return
-    first: cp_model.LiteralT = model.yes if one.was < two.was else model.no
-    if not model.in_turn(one, two):
-        first = model.bool_var(one.was < two.was)
+    first = model.bool_var(one.was < two.was)
     together = [list(units) for units in zip(one.on_unit, two.on_unit, strict=True)] or [[]]
     for same in together:
         model.cp.add(one.at + one.work + to <= two.at).only_enforce_if(first, *same)
@@ -90,7 +88,7 @@ def one_place_at_a_time(model: Model) -> None:
             here, there = ids[one.machine], ids[two.machine]
             to = transport.seconds(here, there) // model.grid.unit_s
             back = transport.seconds(there, here) // model.grid.unit_s
-            if (to or back) and not model.in_turn(one, two):
+            if to or back:
                 first = model.bool_var(one.start_was < two.start_was)
                 model.cp.add(one.end + to <= two.start).only_enforce_if(first)
                 model.cp.add(two.end + back <= one.start).only_enforce_if(~first)
@@ -241,31 +239,12 @@ def _without(span: tuple[int, int], spans: Spans) -> Spans:
     return out
 
 
-def sequences_that_stay(model: Model) -> None:
-    """What only slides follows whom it followed, on its unit and in its order."""
-    if model.part is None:
-        return
-    shop, unit_s, unit = model.shop, model.grid.unit_s, model.places.unit
-    ids = [machine.id for machine in shop.machines]
-    sliding = [visit for visit in model.visits if visit.operation in model.part.slides]
-    sliding.sort(key=lambda visit: visit.start_was)
-    for visits in grouped(sliding, lambda visit: visit.machine):
-        for line in grouped(visits, lambda visit: int(unit[visit.operation])):
-            for one, two in pairwise(line):
-                model.cp.add(one.at + one.work <= two.at)
-    for visits in grouped(sliding, lambda visit: visit.job):
-        for one, two in pairwise(visits):
-            way = shop.transport.seconds(ids[one.machine], ids[two.machine]) // unit_s
-            model.cp.add(one.end + way <= two.start)
-
-
 RULES: tuple[Rule, ...] = (
     one_at_a_time_on_a_unit,
     changeovers,
     one_place_at_a_time,
     lower_steps_first,
     heads_of_crews,
-    sequences_that_stay,
 )
 
 

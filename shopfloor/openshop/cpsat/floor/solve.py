@@ -18,7 +18,7 @@ from shopfloor.model.calendar import duration
 from shopfloor.model.results import Outcome
 from shopfloor.model.schedule import Schedule
 from shopfloor.model.shop import Shop
-from shopfloor.openshop.cpsat.floor.best import CHANGEOVERS, Best, Places
+from shopfloor.openshop.cpsat.floor.best import CHANGEOVERS, Best, Places, least_tardiness
 from shopfloor.openshop.cpsat.floor.extract import keep
 from shopfloor.openshop.cpsat.floor.objective import GOAL_BUILDERS
 from shopfloor.openshop.cpsat.floor.rules import add_rules
@@ -86,7 +86,7 @@ class _Search:
         self.shop, self.goals, self.effort = shop, goals, effort
         self.best = Best(shop, places, goals)
         self.bound_s, self.proven_s = bound_s, 0
-        self.least = {goal: bound_s if goal == MAKESPAN else 0 for goal in goals}
+        self.least = dict.fromkeys(goals, 0) | {MAKESPAN: bound_s, TARDINESS: least_tardiness(shop)}
         self.complete = self.repeatable = True
 
     def run(self) -> Outcome:

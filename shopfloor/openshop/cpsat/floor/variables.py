@@ -107,17 +107,14 @@ class Part:
     Attributes
     ----------
     free
-        The operations to be placed anew.
-    slides
-        Operations that may move in time but keep their units, and their sequence among themselves.
+        The operations to be placed.
     beside
         Operations that stay where they are and might be in the way.
     begin_s, end_s
-        The time in which the free and the sliding ones must lie.
+        The time in which the free ones must lie.
     """
 
     free: frozenset[int]
-    slides: frozenset[int]
     beside: frozenset[int]
     begin_s: int
     end_s: int
@@ -147,7 +144,7 @@ class Model:
             Hours(breaks + [(shut.start_s, shut.end_s) for shut in machine.closed], self.grid.unit_s)
             for machine in shop.machines
         ]
-        rows = range(len(shop)) if part is None else sorted(part.free | part.slides | part.beside)
+        rows = range(len(shop)) if part is None else sorted(part.free | part.beside)
         self.visits = [self._visit(row) for row in rows]
 
     # ---- for the rules ---------------------------------------------------------------------------
@@ -182,13 +179,9 @@ class Model:
         done = [self.reaches(visit, jump - work + 1) for jump in visit.hours.jumps]
         return self._on_clock(visit, work, done)
 
-    def is_placed(self, visit: Visit) -> bool:
-        """Whether a visit may move, and is not only in the way."""
-        return self.part is None or visit.operation not in self.part.beside
-
-    def in_turn(self, one: Visit, two: Visit) -> bool:
-        """Whether two visits keep their sequence, because both only slide."""
-        return self.part is not None and {one.operation, two.operation} <= self.part.slides
+    def is_free(self, visit: Visit) -> bool:
+        """Whether a visit is to be placed, not only in the way."""
+        return self.part is None or visit.operation in self.part.free
 
     def has_units(self, machine: int) -> bool:
         """Whether the units of a machine differ by what they are set up for."""
@@ -232,7 +225,8 @@ class Model:
         if self.has_units(machine):
             unit = int(self.places.unit[row])
             count = range(1, shop.machines[machine].count + 1)
-            if self.part is not None and row not in self.part.free:
+            fixed = self.part is not None and row in self.part.beside
+            if fixed:
                 visit.on_unit = [self.yes if each == unit else self.no for each in count]
             else:
                 visit.on_unit = [self.bool_var(each == unit) for each in count]

@@ -2,11 +2,12 @@
 
 * A *tail* is everything that starts after some moment: for the makespan.
 * A *window* is some operations that follow each other in time, with one among them that costs something:
-  an operation of a late order, or one that a unit is changed over for. They are placed anew; some that
-  come after them keep their sequence but may slide, so that time gained is handed on; the rest stays.
+  an operation of a late order, or one that a unit is changed over for. They are placed anew within their
+  own span of time.
 
-After each gain the whole plan is pushed to the left. A neighbourhood searched by an exact method, in the
-manner of P. Shaw, CP98, LNCS 1520 (1998) 417-431.
+After each gain the whole plan is pushed to the left, which hands the time gained on. To let what follows a
+window slide inside the model as well gained less at every size tried: fewer windows fit the time.
+A neighbourhood searched by an exact method, in the manner of P. Shaw, CP98, LNCS 1520 (1998) 417-431.
 """
 
 from __future__ import annotations
@@ -28,10 +29,9 @@ from shopfloor.openshop.cpsat.solve import Switchboard, threads, watch
 from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS, weights
 from shopfloor.openshop.method import Effort, Progress
 
-WINDOW_SIZES = (40, 60, 80, 110)
+WINDOW_SIZES = (15, 25, 40, 60)
 TAIL_SIZES = (80, 150, 300, 600, 1_200, 2_400)
-WINDOW_WORK, TAIL_WORK = 0.2, 1.5  # the solver's own units, about two seconds each
-SLIDING = 150  # operations after a window that may slide
+WINDOW_WORK, TAIL_WORK = 0.02, 1.5  # the solver's own units, about two seconds each
 FRUITLESS = 60  # windows without a gain, in one thread, after which the search ends
 
 
@@ -102,8 +102,7 @@ def _place_again(
     if TARDINESS in kept:
         limit = GOAL_BUILDERS[TARDINESS](model, 0)
         if limit.exact:
-            job, moved = shop.operations.job, sorted(part.free | part.slides)
-            placed = np.isin(job, job[moved])
+            placed = np.isin(shop.operations.job, shop.operations.job[rows])
             model.cp.add(limit.expression <= limit.at_most(tardiness_of(shop, places, placed)))
     model.cp.minimize(GOAL_BUILDERS[goal](model, least).expression)
     solver = cp_model.CpSolver()
@@ -121,23 +120,17 @@ def part_of(shop: Shop, places: Places, rows: Ints, goal: str = "") -> Part:
     """
     job, machine = shop.operations.job, shop.operations.machine
     begin = int(places.start[rows].min())
-    free = np.zeros(len(job), bool)
-    free[rows] = True
-    later = np.flatnonzero(~free & (places.start >= begin))
-    slides = later[np.lexsort((later, places.start[later]))][:SLIDING]
-    moved = np.r_[rows, slides]
-    end = int((places.end if goal == MAKESPAN else places.end[moved]).max())
+    end = int((places.end if goal == MAKESPAN else places.end[rows]).max())
     near = (places.start < end) & (places.end > begin)
-    near |= np.isin(job, job[moved])
+    near |= np.isin(job, job[rows])
     order = np.lexsort((places.start, places.unit, machine))
     line = machine[order] * (int(places.unit.max()) + 1) + places.unit[order]
     first = np.r_[True, line[1:] != line[:-1]]
     early, late = places.end[order] <= begin, places.start[order] >= end
     near[order] |= early & np.r_[~early[1:] | first[1:], True]  # the last before
     near[order] |= late & (first | np.r_[False, ~late[:-1]])  # the first after
-    near[moved] = False
-    free_ones, sliding = frozenset(rows.tolist()), frozenset(slides.tolist())
-    return Part(free_ones, sliding, frozenset(np.flatnonzero(near).tolist()), begin, end)
+    near[rows] = False
+    return Part(frozenset(rows.tolist()), frozenset(np.flatnonzero(near).tolist()), begin, end)
 
 
 def _tail(places: Places, size: int) -> Ints:
