@@ -14,14 +14,16 @@ if TYPE_CHECKING:
     from shopfloor.pipeline import plan
     from shopfloor.read.orders import read_orders
     from shopfloor.render.gantt import gantt_figure
+    from shopfloor.render.notebook import plan_html
 
 __version__ = "0.1.0"
-__all__ = ["Plan", "Shop", "gantt_figure", "plan", "read_orders"]
+__all__ = ["Plan", "Shop", "gantt_figure", "plan", "plan_html", "read_orders"]
 
 _HOMES = {
     "Plan": "shopfloor.model.results",
     "Shop": "shopfloor.model.shop",
     "gantt_figure": "shopfloor.render.gantt",
+    "plan_html": "shopfloor.render.notebook",
     "plan": "shopfloor.pipeline",
     "read_orders": "shopfloor.read.orders",
 }
