@@ -2,7 +2,7 @@
 
 Run:  python tests/bench/read.py [ROWS ...]
 
-Every reading runs in a child process of its own, so that its peak memory is its own; the best of three counts.
+Every reading runs in a child process, so that its peak memory is its own; the best of three counts.
 Times are processor seconds of reading alone, all threads together, so that other work on the machine and the
 start of the interpreter stay out of them.
 """
@@ -32,7 +32,7 @@ REPEATS = 3
 
 
 def write_orders(path: Path, rows: int, seed: int = 0) -> None:
-    """Write `rows` operations: ten an order, two hundred machines, times to a tenth of a minute, a due time."""
+    """Write `rows` operations: ten an order, times to a tenth of a minute, due times."""
     choose = random.Random(seed)
     with path.open("w", encoding="utf-8") as file:
         file.write("order,machine,minutes,due\n")

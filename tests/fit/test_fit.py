@@ -19,7 +19,9 @@ from shopfloor.pipeline import Options
 ROUND = 1800
 
 
-def unit_shop(rng: np.random.Generator, orders: int, machines: int, rounds: int, *, late: bool = False) -> Shop:
+def unit_shop(
+    rng: np.random.Generator, orders: int, machines: int, rounds: int, *, late: bool = False
+) -> Shop:
     job, machine = [], []
     for j in range(orders):
         for m in rng.choice(machines, size=min(machines, int(rng.integers(1, 5))), replace=False):
@@ -28,7 +30,9 @@ def unit_shop(rng: np.random.Generator, orders: int, machines: int, rounds: int,
     due = np.where(rng.random(orders) < 0.2, -60, NO_DUE) if late else np.full(orders, NO_DUE)
     return Shop(
         tuple(Machine(f"M{m}") for m in range(machines)),
-        Orders(tuple(f"J{j}" for j in range(orders)), due_s=due, priority=rng.choice([1.0, 2.0, 5.0], orders)),
+        Orders(
+            tuple(f"J{j}" for j in range(orders)), due_s=due, priority=rng.choice([1.0, 2.0, 5.0], orders)
+        ),
         Operations(job, machine, [ROUND] * len(job)),
         shift_end_s=rounds * ROUND,
     )
@@ -49,8 +53,9 @@ def test_whole_orders_against_every_subset(seed: int, late: bool) -> None:
     need, value = machine_need(shop), shop.orders.priority
     first = shop.orders.due_s <= 0
     best = max(
-        ((value[take & first].sum(), value[take].sum()) for take in map(np.array, product([False, True], repeat=7))
-         if (need[:, take].sum(axis=1) <= rounds).all() and (need.sum(axis=0)[take] <= rounds).all()),
+        (value[take & first].sum(), value[take].sum())
+        for take in map(np.array, product([False, True], repeat=7))
+        if (need[:, take].sum(axis=1) <= rounds).all() and (need.sum(axis=0)[take] <= rounds).all()
     )  # fmt: skip
     assume(best[1] > 0)
     found = fit(shop)
@@ -65,7 +70,9 @@ def test_whole_orders_against_every_subset(seed: int, late: bool) -> None:
 def test_whole_orders_against_scipy_milp_on_a_larger_shop() -> None:
     shop = unit_shop(np.random.default_rng(5), 120, 12, 16)
     need, value = machine_need(shop), shop.orders.priority
-    oracle = milp(-value, constraints=LinearConstraint(need, ub=16), integrality=np.ones(120), bounds=Bounds(0, 1))
+    oracle = milp(
+        -value, constraints=LinearConstraint(need, ub=16), integrality=np.ones(120), bounds=Bounds(0, 1)
+    )
     relaxed = linprog(-value, A_ub=need, b_ub=np.full(12, 16), bounds=(0, 1))
     found = fit(shop, options=Options(time_limit_s=20))
     assert found.proved
@@ -104,7 +111,9 @@ def test_pins_are_kept_and_every_carried_order_has_a_reason() -> None:
 
 def test_pins_that_cannot_be_kept_are_refused() -> None:
     shop = unit_shop(np.random.default_rng(1), 30, 3, 6)
-    with pytest.raises(NoPlanError, match=r"the orders given with --must need more of M\d than the shift has"):
+    with pytest.raises(
+        NoPlanError, match=r"the orders given with --must need more of M\d than the shift has"
+    ):
         fit(shop, must=shop.orders.ids)
     with pytest.raises(InputError, match="'J99' is not among the orders"):
         fit(shop, must=["J99"])

@@ -89,7 +89,14 @@ def test_elapsed_and_minutes_read_back(seconds: int) -> None:
 
 @pytest.mark.parametrize(
     ("seconds", "text"),
-    [(27000, "7 h 30"), (7200, "2 h"), (2700, "45 min"), (90, "1 min 30 s"), (45, "45 s"), (7201, "2 h 0 min 1 s")],
+    [
+        (27000, "7 h 30"),
+        (7200, "2 h"),
+        (2700, "45 min"),
+        (90, "1 min 30 s"),
+        (45, "45 s"),
+        (7201, "2 h 0 min 1 s"),
+    ],
 )
 def test_durations_read_as_people_say_them(seconds: int, text: str) -> None:
     assert duration(seconds) == text
