@@ -170,10 +170,10 @@ class Dispatch:
         return self.start
 
     def _next_moment(self) -> int:
-        moments = [line[-1][0] for line in (self.blocks,) if line]
-        if self._events:
-            moments.append(self._events[0][0])
-        return min(moments)
+        if not self.blocks:
+            return self._events[0][0]
+        block = self.blocks[-1][0]
+        return min(block, self._events[0][0]) if self._events else block
 
     def _settle(self) -> set[int]:
         """Let everything happen that happens now; return the machines that may have something to start."""
