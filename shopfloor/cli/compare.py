@@ -115,6 +115,7 @@ def load_side(path: Path) -> tuple[Side, Clock]:
         late=tuple(_late(taken.name, head)),
         method=_method(head),
         from_s=_from(head),
+        begun=_begun(head),
     )
     return side, clock
 
@@ -157,6 +158,18 @@ def _from(head: Mapping[str, Any]) -> int | None:
     return value if type(value) is int else None
 
 
+def _begun(head: Mapping[str, Any]) -> frozenset[tuple[str, str, int]]:
+    """Return which rows of its parent a plan made during the shift found begun already."""
+    options = head.get("options")
+    listed = options.get("begun") if isinstance(options, dict) else None
+    kinds = (str, str, int)
+    return frozenset(
+        (row[0], row[1], row[2])
+        for row in (listed if isinstance(listed, list) else ())
+        if isinstance(row, list) and tuple(map(type, row)) == kinds
+    )
+
+
 def _on_clock(side: Side, own: Clock, other: Clock) -> Side:
     """Return `side` with its times counted from the start of the other plan's shift."""
     from dataclasses import replace
@@ -184,4 +197,5 @@ def _on_clock(side: Side, own: Clock, other: Clock) -> Side:
             replace(row, due_s=row.due_s + offset, finish_s=row.finish_s + offset) for row in side.late
         ),
         from_s=None if side.from_s is None else side.from_s + offset,
+        begun=frozenset((order, machine, start + offset) for order, machine, start in side.begun),
     )

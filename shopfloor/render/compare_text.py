@@ -93,8 +93,12 @@ def compare_lines(found: Comparison, say: Say) -> list[str]:
         for letter, side in (("A", found.a), ("B", found.b))
     ]
     lines += ["", wrap(verdict(found, say))]
-    if found.identical:
-        return lines
+    return lines if found.identical else lines + moves_lines(found, say)
+
+
+def moves_lines(found: Comparison, say: Say) -> list[str]:
+    """Return what moved, by machine, by order and one by one, as lines of at most 80 columns."""
+    lines: list[str] = []
     machines = [row for row in found.machines if _touched(row)]
     if machines:
         head = ("Machine", "same", "moved", "resequenced", "added", "dropped", "ends A", "ends B")

@@ -51,6 +51,8 @@ class Side:
         Name of the method that made it.
     from_s
         The moment from which a plan made during the shift goes; what lies before it is no longer its matter.
+    begun
+        (order, machine, start) of rows of the plan before it that were begun by then, ahead of their time.
     """
 
     name: str
@@ -63,6 +65,7 @@ class Side:
     late: tuple[Lateness, ...] = ()
     method: str = ""
     from_s: int | None = None
+    begun: frozenset[tuple[str, str, int]] = frozenset()
 
     @property
     def late_s(self) -> int:
@@ -187,7 +190,7 @@ def compare(a: Side, b: Side, *, tolerance_s: int = 0) -> Comparison:
     changes: list[Change] = []
     for machine_changes in _by_machine(_paired(a.rows, b.rows)).values():
         changes += _in_sequence(machine_changes)
-    changes = [_settled(change, tolerance_s, b.from_s) for change in changes]
+    changes = [_settled(change, tolerance_s, b) for change in changes]
     changes.sort(key=lambda change: (change.row.start_s, change.row))
     counts: dict[str, int] = defaultdict(int)
     for change in changes:
@@ -284,11 +287,13 @@ def longest_in_order(values: Sequence[int]) -> list[bool]:
     return kept
 
 
-def _settled(change: Change, tolerance_s: int, from_s: int | None) -> Change:
+def _settled(change: Change, tolerance_s: int, b: Side) -> Change:
     """Let a small move count as none, and what began before the second plan does as passed."""
     before, after = change.before, change.after
-    if from_s is not None and change.row.start_s < from_s:
+    if b.from_s is not None and change.row.start_s < b.from_s:
         return Change(before, after, passed=True)
+    if after is None and before is not None and (before.order, before.machine, before.start_s) in b.begun:
+        return Change(before, None, passed=True)
     if before is None or after is None:
         return change
     near = (

@@ -13,6 +13,7 @@ from shopfloor.model.actuals import OrderState, PieceState, ShiftState
 from shopfloor.model.shop import NO_DUE, NO_FAMILY, NO_STEP, Operations, Orders, Shop
 from shopfloor.replan.told import Told
 
+Pair = tuple[str, str]
 _NAMES = 5  # of what does not fit together, so many are named
 
 
@@ -54,7 +55,7 @@ def current(shop: Shop, state: ShiftState, told: Told) -> Current:
         If the journal has operations that `shop` has not, or an order added needs a machine it has not.
     """
     further = set(told.further)
-    pairs: dict[tuple[str, str], list[PieceState]] = defaultdict(list)
+    pairs: dict[Pair, list[PieceState]] = defaultdict(list)
     fresh: list[PieceState] = []
     for piece in state.pieces.values():
         if piece.key in further:
@@ -62,10 +63,13 @@ def current(shop: Shop, state: ShiftState, told: Told) -> Current:
         else:
             pairs[piece.key.order, piece.key.machine].append(piece)
     operations = _by_pair(shop)
-    _refuse_strangers(pairs.keys() - operations.keys())
+    repeats = {(key.order, key.machine) for key in further} - operations.keys()
+    _refuse_strangers(pairs.keys() - operations.keys() - repeats)
     dealt: list[tuple[PieceState, ...]] = [()] * len(shop)
     seconds = shop.operations.seconds.copy()
     for pair, pieces in pairs.items():
+        if pair in repeats:
+            continue
         pieces.sort(key=lambda piece: piece.key.piece)
         for index, mine in _deal(shop, operations[pair], pieces, told).items():
             dealt[index] = tuple(mine)
@@ -74,11 +78,15 @@ def current(shop: Shop, state: ShiftState, told: Told) -> Current:
                 seconds[index] = said[-1]
     fresh.sort(key=lambda piece: piece.key)
     grown = _with_orders(_with_seconds(shop, seconds), fresh, told)
-    return Current(_amended(grown, state.orders), (*dealt, *((piece,) for piece in fresh)))
+    added = [[piece] for piece in fresh]
+    for piece in (piece for pair in sorted(repeats) for piece in pairs[pair]):
+        alike = [mine for mine in added if mine[0].key[:2] == piece.key[:2]]
+        next((mine for mine in alike if failed(mine[-1])), alike[0]).append(piece)
+    return Current(_amended(grown, state.orders), (*dealt, *map(tuple, added)))
 
 
-def _by_pair(shop: Shop) -> dict[tuple[str, str], list[int]]:
-    found: dict[tuple[str, str], list[int]] = defaultdict(list)
+def _by_pair(shop: Shop) -> dict[Pair, list[int]]:
+    found: dict[Pair, list[int]] = defaultdict(list)
     jobs, machines = shop.operations.job.tolist(), shop.operations.machine.tolist()
     names = [machine.id for machine in shop.machines]
     for index, (job, machine) in enumerate(zip(jobs, machines, strict=True)):
@@ -86,7 +94,7 @@ def _by_pair(shop: Shop) -> dict[tuple[str, str], list[int]]:
     return found
 
 
-def _refuse_strangers(pairs: Iterable[tuple[str, str]]) -> None:
+def _refuse_strangers(pairs: Iterable[Pair]) -> None:
     listed = sorted(pairs)
     if not listed:
         return
@@ -107,8 +115,8 @@ def failed(piece: PieceState) -> bool:
 
 
 def planned_s(shop: Shop, machine: int, piece: PieceState, told: Told) -> int | None:
-    """Return the working time a piece was to take by the first plan that had it, None if none had."""
-    row = told.promised(piece.key)
+    """Return the working time a piece was to take by the plan in force when it began, else by the last."""
+    row = told.planned(piece.key, piece.start_s)
     if row is None or row.start_s is None or row.end_s is None:
         return piece.total_s
     return worked_s(shop, machine, row.start_s, row.end_s)

@@ -80,49 +80,56 @@ def _of(
     least: int,
     taken: set[Key],
 ) -> Iterator[Left]:
+    """Yield what is left of one operation."""
     columns = now.shop.operations
     total, setup = int(columns.seconds[index]), int(columns.setup_s[index])
+    machine = int(columns.machine[index])
+    sound = [piece for piece in pieces if not failed(piece)]
+    good = [piece for piece in sound if piece.status is Status.DONE]
     whole = not columns.splittable[index] or all(p.planned is None or p.planned.parts == 1 for p in pieces)
-    good = [piece for piece in pieces if piece.status is Status.DONE and not failed(piece)]
     if whole and good:
         return
-    machine = int(columns.machine[index])
+    begun = sorted((piece for piece in sound if piece.touched), key=lambda piece: piece.start_s or 0)
 
     def share(piece: PieceState) -> int:
-        return total if whole else min(total, planned_s(now.shop, machine, piece, told) or total)
+        """How long a piece was to take; of an operation in one piece, what goes on with it takes the rest."""
+        planned = planned_s(now.shop, machine, piece, told) or total
+        return total if whole and piece is begun[0] else min(total, planned)
 
-    rest = total - sum(map(share, good))
-    for piece in pieces:
-        if is_running(piece):
-            run = run_s(now, machine, piece, state)
-            left = max(least, estimate(now, machine, piece, state, told, share(piece)))
-            yield Left(
-                operation=index,
-                key=piece.key,
-                seconds=left,
-                setup_s=min(left, max(0, setup - run)),
-                running=True,
-                unit=piece.runs[-1].unit,
-                since_s=piece.start_s,
-                why=piece.why,
-            )
-            rest -= share(piece)
-    stopped = [piece for piece in pieces if is_stopped(piece)]
-    for piece in stopped:
-        run = run_s(now, machine, piece, state)
-        left = max(least, estimate(now, machine, piece, state, told, share(piece)))
-        rest += left - share(piece)
-        setup = max(0, setup - run)
+    def left(piece: PieceState) -> int:
+        return max(least, estimate(now, machine, piece, state, told, share(piece)))
+
+    set_up = max(0, setup - sum(run_s(now, machine, piece, state) for piece in begun))
+    running = [piece for piece in begun if is_running(piece)]
+    for piece in running:
+        seconds = left(piece)
+        yield Left(
+            operation=index,
+            key=piece.key,
+            seconds=seconds,
+            setup_s=min(seconds, set_up),
+            running=True,
+            unit=piece.runs[-1].unit,
+            since_s=piece.start_s,
+            why=piece.why,
+        )
+    stopped = [piece for piece in begun if is_stopped(piece)]
+    if whole:
+        rest = 0 if running else left(stopped[-1]) if stopped else total
+    else:
+        rest = total - sum(map(share, [*good, *running]))
+        rest += sum(left(piece) - share(piece) for piece in stopped)
     if rest <= 0:
         return
     scrapped = [piece for piece in pieces if failed(piece)]
-    waiting = [piece for piece in pieces if not piece.touched]
+    waiting = [piece for piece in sound if not piece.touched]
     names = now.shop.orders.ids[int(columns.job[index])], now.shop.machines[machine].id
-    key = (stopped or waiting)[0].key if stopped or waiting else _fresh(*names, taken)
-    why = stopped[0].why if stopped else ""
+    first = [*stopped[-1:], *waiting]
+    key = first[0].key if first else _fresh(*names, taken)
+    why = stopped[-1].why if stopped else ""
     if scrapped and not stopped:
-        why = f"scrapped, {scrapped[-1].scrap} lost" if scrapped[-1].scrap else "scrapped"
-    yield Left(index, key, rest, min(rest, setup), repeats=bool(scrapped) and not stopped, why=why)
+        why = f"scrapped, {scrapped[-1].scrap} lost"
+    yield Left(index, key, rest, min(rest, set_up), repeats=bool(scrapped) and not stopped, why=why)
 
 
 def _fresh(order: str, machine: str, taken: set[Key]) -> Key:

@@ -27,6 +27,8 @@ class Told:
         The plans issued, in the order in which they took force.
     remarks
         The remarks, in order of time.
+    crew
+        (time, heads): how many of a pool are there, as last said; the pool without a name is the hall's.
     """
 
     seconds: Mapping[Key, int] = field(default_factory=dict)
@@ -34,6 +36,7 @@ class Told:
     left: Mapping[Key, tuple[int, int]] = field(default_factory=dict)
     plans: tuple[Event, ...] = ()
     remarks: tuple[Event, ...] = ()
+    crew: Mapping[str, tuple[int, int]] = field(default_factory=dict)
 
     def planned(self, key: Key, at_s: int | None = None) -> Piece | None:
         """Return the row an operation had in the last plan that had it, in force by `at_s` if given.
@@ -66,6 +69,7 @@ def told(events: Iterable[Event], at_s: int) -> Told:
     left: dict[Key, tuple[int, int]] = {}
     plans: list[Event] = []
     remarks: list[Event] = []
+    crew: dict[str, tuple[int, int]] = {}
     known: set[Key] = set()
     for event in events:
         if event.at_s > at_s:
@@ -81,6 +85,8 @@ def told(events: Iterable[Event], at_s: int) -> Told:
                     further[piece.key] = None
         elif event.kind in _REPORTS and "left_s" in event.data:
             left[event.key] = event.at_s, int(event.data["left_s"])
+        elif event.kind is Kind.CREW:
+            crew[str(event.data.get("pool", ""))] = event.at_s, int(event.data["heads"])
         elif event.kind is Kind.REMARK:
             remarks.append(event)
-    return Told(seconds, tuple(further), left, tuple(plans), tuple(remarks))
+    return Told(seconds, tuple(further), left, tuple(plans), tuple(remarks), crew)

@@ -1,0 +1,304 @@
+"""Sequences of what is left become timetables: what runs stays put, the rest goes as early as it fits."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass, replace
+from typing import NamedTuple
+
+import numpy as np
+
+from shopfloor.model.schedule import Schedule
+from shopfloor.model.shop import NO_DUE, NO_FAMILY, NO_STEP, Operations, Orders, Shop
+from shopfloor.openshop.floor.rules import FAR, NONE, Rules
+from shopfloor.openshop.floor.timetable import Spot, Timetable
+from shopfloor.openshop.incumbent import weights
+from shopfloor.replan.movement import Place
+from shopfloor.replan.residual import Residual
+
+
+class Visit(NamedTuple):
+    """Where an operation, or a part of it, stands on the clock that starts at begin; `unit` from 1."""
+
+    operation: int
+    start: int
+    end: int
+    unit: int
+
+
+@dataclass(frozen=True)
+class Timed:
+    """Where everything left stands.
+
+    Attributes
+    ----------
+    visits
+        In order of operation and start.
+    places
+        First start, last end and first unit of each operation.
+    makespan_s, tardiness
+        When the last is done; seconds late × thousandths of priority, over all orders.
+    value
+        What counts first, second and so on; less is better.
+    """
+
+    visits: tuple[Visit, ...]
+    places: tuple[Place, ...]
+    makespan_s: int
+    tardiness: int
+    value: tuple[int, ...]
+
+
+class _Block(NamedTuple):
+    """A unit of a group that is not free from begin until `until_s`, or was last used for `family`."""
+
+    machine: int
+    unit: int
+    until_s: int
+    family: str | None
+
+
+class Bench:
+    """Times sequences of one residual shop.
+
+    Parameters
+    ----------
+    rest
+        What is left.
+    was
+        Where operations were to run, from begin on; units that are alike are kept where they can be.
+    goals
+        What counts first, second and so on: ``makespan``, ``tardiness``, ``changeovers``.
+
+    Attributes
+    ----------
+    movable
+        The operations that do not run yet, in the order of the shop.
+    """
+
+    def __init__(self, rest: Residual, was: Mapping[int, Place], goals: Sequence[str]) -> None:
+        self.rest, self.was, self.goals = rest, was, tuple(goals)
+        self._count = len(rest.solve)
+        self._blocks = tuple(_blocks(rest))
+        self._rules = Rules.of(_with_blocks(rest.solve, self._blocks))
+        self._weights = weights(rest.solve)
+        self._steps = _ranked(rest.solve)
+        self.movable = [k for k in range(self._count) if k not in rest.pinned]
+        self._pins = {k: self._spot(k) for k in sorted(rest.pinned)}
+
+    @property
+    def free_units(self) -> bool:
+        """Whether `rest.fresh` says all there is: nothing runs in a group, and no unit of one is down."""
+        return not self._blocks and len(self.rest.fresh) == len(self.movable)
+
+    def _alike(self, machine: int) -> bool:
+        return self._rules.count[machine] > 1 and self._rules.change[machine] is None
+
+    def _spot(self, k: int) -> Spot:
+        """Return where running work stands on the clock that starts at begin."""
+        one, origin = self.rest.pinned[k], self.rest.begin_s
+        unit = NONE if self._alike(one.machine) else one.unit - 1
+        return Spot(max(0, one.resumes_s - origin), one.ends_s - origin, unit)
+
+    # ---- timing ------------------------------------------------------------------------------------
+
+    def time(self, sequence: Iterable[int], units: Mapping[int, int] | None = None) -> Timed | None:
+        """Return the timetable of a sequence of what can be moved.
+
+        Parameters
+        ----------
+        sequence
+            Every operation that does not run yet, once. Higher steps of an order are put after lower ones.
+        units
+            The unit, from 1, that an operation shall have; any where it says nothing. Without effect where
+            units are alike.
+
+        Returns
+        -------
+        None if some operation finds no place, because its crew is never large enough again.
+        """
+        table = Timetable(self._rules)
+        for k, block in enumerate(self._blocks, self._count):
+            table.place(k, Spot(0, block.until_s, NONE if self._alike(block.machine) else block.unit - 1))
+        for k, spot in self._pins.items():
+            table.place(k, spot)
+        wanted = units or {}
+        for k in self._in_steps(list(sequence)):
+            found = table.earliest(k, unit=wanted[k] - 1 if k in wanted else None)
+            if found is None:
+                return None
+            table.place(k, found)
+        spots = [spot for spot in table.spots[: self._count] if spot is not None]
+        unit = self._units(spots)
+        return self.timed(Visit(k, spot.start, spot.end, unit[k]) for k, spot in enumerate(spots))
+
+    def of_fresh(self, schedule: Schedule) -> Timed:
+        """Return a schedule of `rest.fresh` as it is, with what runs; only where `free_units`."""
+        operation = self.rest.from_fresh[schedule.operation].tolist()
+        columns = (operation, schedule.start_s.tolist(), schedule.end_s.tolist(), schedule.unit.tolist())
+        running = (Visit(k, spot.start, spot.end, self.rest.pinned[k].unit) for k, spot in self._pins.items())
+        return self.timed([*(Visit(*row) for row in zip(*columns, strict=True)), *running])
+
+    def timed(self, visits: Iterable[Visit]) -> Timed:
+        """Return visits with what counts of them."""
+        rules, found = self._rules, tuple(sorted(visits))
+        done = [0] * len(self.rest.solve.orders)
+        places: dict[int, Place] = {}
+        for k, begin, end, unit in found:
+            done[rules.job[k]] = max(done[rules.job[k]], end)
+            first = places.get(k)
+            places[k] = Place(begin, end, unit) if first is None else first._replace(end_s=end)
+        late = (
+            weight * (end - due)
+            for weight, end, due in zip(self._weights, done, rules.due, strict=False)
+            if due != FAR and end > due
+        )
+        makespan, tardiness = max(done, default=0), sum(late)
+        values = {"makespan": makespan, "tardiness": tardiness}
+        if "changeovers" in self.goals:
+            values["changeovers"] = self._changed(found)
+        listed = tuple(places[k] for k in range(self._count))
+        return Timed(found, listed, makespan, tardiness, tuple(values[goal] for goal in self.goals))
+
+    def _changed(self, visits: Sequence[Visit]) -> int:
+        """Return the seconds of all changeovers."""
+        rules, total = self._rules, 0
+        last: dict[tuple[int, int], int] = {}
+        for k, _, _, unit in sorted(visits, key=lambda visit: (visit.start, visit.operation)):
+            machine = rules.machine[k]
+            table = rules.change[machine]
+            if table is None:
+                continue
+            before = last.get((machine, unit), rules.begins[machine])
+            if before != NONE:
+                total += table[before][rules.family[k]]
+            last[machine, unit] = rules.family[k]
+        return total
+
+    def _in_steps(self, sequence: list[int]) -> list[int]:
+        """Return a sequence in which no step of an order comes before a lower one: ranks change places."""
+        if not self._steps:
+            return sequence
+        place = {k: index for index, k in enumerate(sequence)}
+        step = self._rules.step
+        for ranked in self._steps:
+            mine = [k for k in ranked if k in place]
+            slots = sorted(place[k] for k in mine)
+            for slot, k in zip(slots, sorted(mine, key=lambda k: (step[k], place[k])), strict=True):
+                sequence[slot] = k
+        return sequence
+
+    def _units(self, spots: Sequence[Spot]) -> list[int]:
+        """Return the unit of each operation, from 1; of units that are alike, running work has its own.
+
+        By start each has the unit it was to have, if that is free, else the lowest free one. One always is:
+        at no moment there are more visits than units, and what is blocked is so from begin on.
+        """
+        unit = [1 if spot.unit == NONE else spot.unit + 1 for spot in spots]
+        groups: dict[int, list[int]] = {}
+        for k, spot in enumerate(spots):
+            if spot.unit == NONE:
+                groups.setdefault(self._rules.machine[k], []).append(k)
+        for machine, mine in groups.items():
+            free = [0] * self._rules.count[machine]
+            for block in self._blocks:
+                if block.machine == machine:
+                    free[block.unit - 1] = max(free[block.unit - 1], block.until_s)
+            for k in mine:
+                if k in self._pins:
+                    unit[k] = self.rest.pinned[k].unit
+                    free[unit[k] - 1] = max(free[unit[k] - 1], spots[k].end)
+            for k in sorted(mine, key=lambda k: (spots[k].start, k)):
+                if k in self._pins:
+                    continue
+                open_ = [number for number, until in enumerate(free, 1) if until <= spots[k].start]
+                wanted = self.was[k].unit if k in self.was else 0
+                unit[k] = wanted if wanted in open_ else open_[0]
+                free[unit[k] - 1] = spots[k].end
+        return unit
+
+    # ---- back on the shift's clock -------------------------------------------------------------------
+
+    def schedules(self, timed: Timed) -> tuple[Schedule, Schedule]:
+        """Return the schedule of `rest.solve`, and that of `rest.shop` on the shift's clock."""
+        rest = self.rest
+        operation, start, end, unit = np.array(timed.visits, np.int64).reshape(-1, 4).T
+        strict = Schedule(operation, start, end, unit=unit)
+        begun, done = start + rest.begin_s, end + rest.begin_s
+        for k, one in rest.pinned.items():
+            begun[operation == k] = one.since_s
+        if rest.begin.rounds is None or not _in_rounds(begun, done):
+            return strict, Schedule(operation, begun, done, unit=unit)
+        rounds = np.unique(begun, return_inverse=True)[1] + rest.begin.rounds + 1
+        return strict, Schedule(operation, begun, done, unit=unit, round=rounds)
+
+
+def _in_rounds(start: np.ndarray, end: np.ndarray) -> bool:
+    """Whether whatever starts together is done before anything else starts."""
+    order = np.argsort(start, kind="stable")
+    latest = np.maximum.accumulate(end[order])
+    turns = np.flatnonzero(np.diff(start[order]) > 0)
+    return bool((start[order][turns + 1] >= latest[turns]).all())
+
+
+def _ranked(shop: Shop) -> list[list[int]]:
+    """Return the operations with a step of each order that has several."""
+    found: dict[int, list[int]] = {}
+    for k in np.flatnonzero(shop.operations.step != NO_STEP).tolist():
+        found.setdefault(int(shop.operations.job[k]), []).append(k)
+    return [mine for _, mine in sorted(found.items()) if len(mine) > 1]
+
+
+# ---- units that are not free ---------------------------------------------------------------------------
+
+
+def _blocks(rest: Residual) -> Iterable[_Block]:
+    """Yield what keeps single units of groups from the rest; of whole machines, closures tell."""
+    shop, look = rest.solve, rest.look
+    for out in look.outs:
+        if out.unit and shop.machines[out.machine].count > 1:
+            yield _Block(out.machine, out.unit, max(0, out.until_s - rest.begin_s), None)
+    for one in rest.held:
+        if shop.machines[one.machine].count > 1:
+            yield _Block(one.machine, one.unit, max(0, one.ends_s - rest.begin_s), None)
+    runs = {(one.machine, one.unit) for one in rest.pinned.values()}
+    for place, hall in enumerate(shop.machines):
+        if hall.count == 1 or hall.id not in shop.changeovers or hall.family is not None:
+            continue
+        for unit in range(1, hall.count + 1):
+            family = look.families.get((place, unit), rest.shop.machines[place].family)
+            if family is not None and (place, unit) not in runs:
+                yield _Block(place, unit, 0, family)
+
+
+def _with_blocks(shop: Shop, blocks: Sequence[_Block]) -> Shop:
+    """Return the shop with one operation more for each block, in the same order, each of its own order."""
+    if not blocks:
+        return shop
+    columns, orders, more = shop.operations, shop.orders, len(blocks)
+    families = tuple(dict.fromkeys([*shop.families, *(block.family for block in blocks if block.family)]))
+    index = {name: place for place, name in enumerate(families)}
+    extra = {
+        "job": [len(orders) + k for k in range(more)],
+        "machine": [block.machine for block in blocks],
+        "seconds": [max(1, block.until_s) for block in blocks],
+        "step": [NO_STEP] * more,
+        "splittable": [0] * more,
+        "heads": [0] * more,
+        "family": [index[block.family] if block.family else NO_FAMILY for block in blocks],
+        "setup_s": [0] * more,
+        "row": [0] * more,
+    }
+    return replace(
+        shop,
+        families=families,
+        orders=Orders(
+            (*orders.ids, *(f"\0block {k}" for k in range(more))),
+            np.r_[orders.release_s, np.zeros(more, np.int64)],
+            np.r_[orders.due_s, np.full(more, NO_DUE)],
+            np.r_[orders.priority, np.ones(more)],
+        ),
+        operations=Operations(
+            **{name: np.r_[getattr(columns, name), values] for name, values in extra.items()}
+        ),
+    )
