@@ -177,6 +177,19 @@ def test_a_stop_from_another_thread_ends_a_solver_at_work():
     assert not bracket.closed
 
 
+def test_a_moment_to_stop_at_leaves_the_rest_of_the_time():
+    """The next goal gets what is left: provers, finders and windows end at the moment they were given."""
+    effort = Effort(time_limit_s=600)
+    shop = PUBLISHED["j7-per0-0"].shop()
+    bracket = Bracket(shop, begun(shop), bound(shop), effort)
+    bracket.run(until=time.monotonic() + 0.5)
+    late = begun(late_shop(), MAKESPAN, TARDINESS)
+    latest_s = late.value(MAKESPAN)
+    assert not serve_due_times(late.shop, late, latest_s, 0, effort, str, until=time.monotonic() + 0.5)
+    assert effort.left_s > 300
+    assert (bracket.repeatable, bracket.closed) == (False, False)
+
+
 def test_workers_are_as_many_as_asked_or_one_a_core():
     assert threads(3) == 3
     assert threads(0) >= 1

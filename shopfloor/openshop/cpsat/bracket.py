@@ -96,7 +96,7 @@ class Bracket:
 
     @property
     def _done(self) -> bool:
-        return self.closed or self.effort.over
+        return self.closed or self.effort.over or self._board.is_off
 
     def _watch(self, tasks: list[Iterator[None]], until: float | None) -> bool:
         def progress() -> Progress:

@@ -38,7 +38,11 @@ ANSWERS = {
 
 def threads(workers: int) -> int:
     """Return how many solver threads to run; 0 takes one for each core this process may use."""
-    return workers or len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else workers or 1
+    if workers:
+        return workers
+    if hasattr(os, "sched_getaffinity"):
+        return len(os.sched_getaffinity(0))
+    return os.cpu_count() or 1
 
 
 @dataclass(frozen=True, slots=True)
@@ -57,6 +61,11 @@ class Switchboard:
         self._running: dict[int, tuple[cp_model.CpSolver, Callable[[], bool]]] = {}
         self._next = 0
         self._off = False
+
+    @property
+    def is_off(self) -> bool:
+        """Whether nothing starts here any more."""
+        return self._off
 
     def off(self) -> None:
         """Stop everything, and let nothing start again. May be called again and again."""
@@ -163,4 +172,4 @@ def watch(
             effort.report(progress())
     if errors:
         raise errors[0]
-    return own_end
+    return own_end and not effort.over  # a solver keeps the time limit too, and may have been first

@@ -49,7 +49,7 @@ def shorten_by_tails(
 
     def run() -> None:
         for size in TAIL_SIZES:
-            while size < 2 * len(shop) and not effort.over and incumbent.value(MAKESPAN) > bound_s:
+            while size < 2 * len(shop) and not board.is_off and incumbent.value(MAKESPAN) > bound_s:
                 if not _shorten_tail(shop, incumbent, bound_s, min(size, len(shop)), board, effort):
                     break
 
@@ -123,7 +123,7 @@ def serve_due_times(
     def run(number: int) -> None:
         rng = np.random.default_rng([effort.seed, number])
         fruitless = 0
-        while fruitless < FRUITLESS and not effort.over and incumbent.value(TARDINESS):
+        while fruitless < FRUITLESS and not board.is_off and incumbent.value(TARDINESS):
             gained = _window(shop, incumbent, latest_s, rng, board, effort)
             fruitless = 0 if gained else fruitless + 1
 
