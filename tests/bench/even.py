@@ -16,10 +16,10 @@ from importlib.util import find_spec
 from statistics import median
 
 import numpy as np
-from rounds import SHAPES, columns, milliseconds, table
 
 from shopfloor.kernel.colouring import Kernel, colour_with_steps
 from shopfloor.kernel.equitable import even_colours
+from tests.bench.rounds import SHAPES, columns, milliseconds, table
 
 
 def timed(call: Callable[[], object]) -> float:

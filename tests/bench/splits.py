@@ -17,10 +17,10 @@ from itertools import pairwise
 from statistics import mean, median
 
 import numpy as np
-from rounds import milliseconds, table
 
 from shopfloor.kernel.decompose import split_loads
 from shopfloor.kernel.units import split_units
+from tests.bench.rounds import milliseconds, table
 
 Shop = tuple[np.ndarray, np.ndarray, np.ndarray]
 Pieces = list[tuple[int, int, int]]
