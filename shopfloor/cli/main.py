@@ -9,7 +9,7 @@ from typing import Annotated
 import typer
 
 import shopfloor
-from shopfloor.cli import audit, check, compare, demo, fit, handover, log, plan
+from shopfloor.cli import audit, check, compare, demo, fit, handover, log, plan, replan
 from shopfloor.cli.common import BAD_INPUT, NO_PLAN
 from shopfloor.errors import InputError, NoPlanError, ShopfloorError
 
@@ -28,6 +28,7 @@ app.command("fit")(fit.fit)
 app.command("audit")(audit.audit)
 app.command("compare")(compare.compare)
 app.add_typer(log.app, name="log")
+app.command("replan")(replan.replan)
 app.command("handover")(handover.handover)
 app.command("demo")(demo.demo)
 
