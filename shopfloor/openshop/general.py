@@ -33,6 +33,7 @@ MODEL_MOST = 5_000  # operations up to which the whole shop is put into one mode
 WINDOWS_FROM = 110  # operations from which windows are smaller than the shop
 BRIEF_MOST = 300  # operations up to which one thread may settle a goal in a moment, and repeatably
 FIRST_SHARE = 0.6  # of the time left goes to a goal that another one follows
+AGAIN_S = 2.0  # with so much time left a goal that was broken off is taken up again
 TELL_EVERY_S = 0.4
 TRIED_SHARE = 0.5  # of a goal's time goes to windows before the whole model
 
@@ -92,16 +93,23 @@ class _Search:
         self.proved: set[str] = set()
         self.complete = self.repeatable = True
         self.told = time.monotonic()
+        self.listed: dict[str, int] = {}  # for which target a goal's lists were made
 
     def run(self) -> Outcome:
         stages: dict[str, Callable[[tuple[str, ...], float | None], None]] = {
             MAKESPAN: self._shorten,
             TARDINESS: self._serve,
         }
-        for number, goal in enumerate(self.stages):
-            last = number == len(self.stages) - 1
-            until = None if last else time.monotonic() + FIRST_SHARE * self.effort.left_s
-            stages[goal](self.stages[:number], until)
+        while True:
+            self.complete = True
+            for number, goal in enumerate(self.stages):
+                last = number == len(self.stages) - 1
+                until = None if last else time.monotonic() + FIRST_SHARE * self.effort.left_s
+                stages[goal](self.stages[:number], until)
+            if self.complete or self.stages[0] in self.proved or self.effort.left_s < AGAIN_S:
+                break  # else the first goal was broken off for a later one that did not need all its time
+            if self.effort.stop.is_set():
+                break
         stopped = "done"
         if not self.complete:
             stopped = "interrupted" if self.effort.stop.is_set() else "time limit"
@@ -133,10 +141,10 @@ class _Search:
         else:
             from shopfloor.openshop.cpsat.windows import shorten_by_tails
 
-            repeats = shorten_by_tails(
+            ended = shorten_by_tails(
                 self.shop, self.incumbent, self.bound_s, self.effort, lambda: "shortening", until=until
             )
-            self._note(self._value(MAKESPAN) <= self.bound_s, repeats)
+            self._note(ended, ended and self._alone())
 
     def _suits_bracket(self) -> bool:
         from shopfloor.openshop.cpsat.pairs import pair_count, reversible
@@ -170,29 +178,29 @@ class _Search:
             return
         whole = len(self.shop) <= MODEL_MOST
         if len(self.shop) > WINDOWS_FROM:
-            self._windows(kept, until, share=TRIED_SHARE if whole else 1.0)
+            self._windows(kept, until, whole)
         if self._value(TARDINESS) <= self.least:
             self.proved.add(TARDINESS)
         elif whole and not self._cut_off():
             self._model(TARDINESS, kept, self.least, until)
 
-    def _windows(self, kept: tuple[str, ...], until: float | None, share: float) -> None:
+    def _windows(self, kept: tuple[str, ...], until: float | None, whole: bool) -> None:
         from shopfloor.openshop.cpsat.stage import whole_horizon_s
         from shopfloor.openshop.cpsat.windows import serve_due_times
 
         latest_s = self._value(MAKESPAN) if kept else whole_horizon_s(self.shop)
         now = time.monotonic()
         left = self.effort.left_s if until is None else max(0.0, until - now)
-        repeats = serve_due_times(
+        ended = serve_due_times(
             self.shop,
             self.incumbent,
             latest_s,
             self.bound_s,
             self.effort,
             self._late,
-            until=now + share * left,
+            until=now + (TRIED_SHARE if whole else 1.0) * left,
         )
-        self._note(complete=True, repeatable=repeats)
+        self._note(ended or whole, ended and self._alone())
 
     def _late(self) -> str:
         hours = self._value(TARDINESS) / PRIORITY_UNIT / 3600
@@ -204,6 +212,9 @@ class _Search:
         return self.incumbent.value(goal)
 
     def _lists(self, goal: str, target: int) -> None:
+        if self.listed.get(goal) == target:
+            return
+        self.listed[goal] = target
         complete = list_schedules(
             self.shop, self.incumbent, goal, target, seed=self.effort.seed, over=self._tell_and_ask
         )
@@ -249,6 +260,11 @@ class _Search:
     def _note(self, complete: bool, repeatable: bool) -> None:
         self.complete &= complete
         self.repeatable &= repeatable
+
+    def _alone(self) -> bool:
+        from shopfloor.openshop.cpsat.solve import threads
+
+        return threads(self.effort.workers) == 1
 
     def _cut_off(self) -> bool:
         """Tell whether time is up or a stop was asked for, and remember that it cut something off."""

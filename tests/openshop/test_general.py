@@ -14,7 +14,7 @@ from shopfloor.bounds.catalogue import lower_bounds
 from shopfloor.model.results import Choice, Outcome, Plan
 from shopfloor.model.shop import Machine, Operations, Orders, Shop, shop_of
 from shopfloor.model.stated import state
-from shopfloor.openshop.general import General
+from shopfloor.openshop.general import AGAIN_S, General
 from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS, tardiness_of
 from shopfloor.openshop.method import Effort, Progress
 from tests.bench.instances import Instance, instances, orders_csv
@@ -205,6 +205,17 @@ def test_a_stop_ends_the_search_and_keeps_the_best():
     assert time.monotonic() - began < 300  # it ends because it was asked to, not by its limit
     assert {progress.best_s for progress in seen} >= {seen[-1].best_s}
     assert outcome.schedule.makespan_s <= seen[-1].best_s
+
+
+def test_time_that_a_later_goal_leaves_goes_back_to_the_first():
+    """j7-per0-0 with due times that are always kept: the search for the makespan has all the time."""
+    shop = hard_shop()
+    due = Shop(shop.machines, Orders(shop.orders.ids, due_s=np.full(7, 10**6)), shop.operations)
+    seen: list[Progress] = []
+    outcome = solved(due, time_limit_s=8.0, report=seen.append)
+    assert outcome.stopped == "time limit"
+    assert outcome.remarks == ("Nothing is late.",)
+    assert min(progress.left_s for progress in seen if progress.stage != "lists") < AGAIN_S
 
 
 def test_progress_is_told_while_it_searches():

@@ -43,7 +43,7 @@ def shorten_by_tails(
 ) -> bool:
     """Place growing tails of the best schedule again, until its makespan is `bound_s` or all were tried.
 
-    Returns whether that ended before any limit and in one thread, and so would be found again.
+    Returns whether that ended before any limit.
     """
     board = Switchboard()
 
@@ -56,8 +56,7 @@ def shorten_by_tails(
     def progress() -> Progress:
         return Progress(words(), incumbent.makespan_s, bound_s, effort.left_s)
 
-    ended = watch([run], board, effort, progress, until=until)
-    return ended and threads(effort.workers) == 1
+    return watch([run], board, effort, progress, until=until)
 
 
 def _shorten_tail(
@@ -114,11 +113,10 @@ def serve_due_times(
     """Lower weighted tardiness window by window, with no operation ending after `latest_s`.
 
     One window after the other in each of the effort's threads, from the best schedule of the moment,
-    until none helps any more. Returns whether that ended before any limit and in one thread, and so
-    would be found again.
+    until none helps any more. Returns whether that ended before any limit; with one thread it then
+    repeats.
     """
     board = Switchboard()
-    workers = threads(effort.workers)
 
     def run(number: int) -> None:
         rng = np.random.default_rng([effort.seed, number])
@@ -130,8 +128,8 @@ def serve_due_times(
     def progress() -> Progress:
         return Progress(words(), incumbent.makespan_s, bound_s, effort.left_s)
 
-    tasks = [partial(run, number) for number in range(workers)]
-    return watch(tasks, board, effort, progress, until=until) and workers == 1
+    tasks = [partial(run, number) for number in range(threads(effort.workers))]
+    return watch(tasks, board, effort, progress, until=until)
 
 
 def _window(
