@@ -30,7 +30,7 @@ class MachineReport:
     setup_s
         Of the work, what is taken for set-up.
     planned_s, planned, done
-        Work that the plans wanted done by now, in how many operations, and how many were done.
+        Work that the plans wanted done by now, in how many operations, and how many were done well.
     outages, stops
         Why it was down, and why work on it was stopped, longest first.
     started, in_sequence
@@ -218,7 +218,7 @@ def _machine(
         setup_s=setup,
         planned_s=sum(worked_s(shop, place, row.start_s or 0, min(row.end_s or 0, until)) for row in wanted),
         planned=sum((row.end_s or 0) <= until for row in wanted),
-        done=sum(piece.status is Status.DONE for piece in pieces),
+        done=sum(piece.status is Status.DONE and not failed(piece) for piece in pieces),
         outages=outage_reasons(known.outages if known is not None else (), until),
         stops=outage_reasons([pause for piece in pieces for pause in piece.pauses], until),
         started=started,

@@ -7,7 +7,7 @@ from collections.abc import Iterable, Iterator, Mapping, Sequence
 from shopfloor.model.calendar import WorkClock, united
 from shopfloor.model.shop import Closure, Shop
 from shopfloor.replan.outlook import Outlook, Running, future
-from shopfloor.replan.people import Held
+from shopfloor.replan.people import Held, Steps, change, steps
 from shopfloor.replan.remaining import Left
 
 
@@ -89,6 +89,48 @@ def holdings(
             spans = list(_worked(_ahead(shop, look, one), one.resumes_s, work))
         found.setdefault(hall.crew, []).extend((start, end, heads) for start, end in spans)
     return found
+
+
+def heads_ahead(
+    shop: Shop, look: Outlook, held: Sequence[Running], left: Sequence[Left]
+) -> tuple[dict[str, Steps], list[str]]:
+    """Return each crew's heads from now on, and what had to be assumed.
+
+    What running work holds is there, whatever was said; running work that is no operation of the rest
+    (`held`) takes its heads away from it.
+    """
+    running = holdings(shop, look, look.running, left)
+    away = holdings(shop, look, held, left)
+    found: dict[str, Steps] = {}
+    remarks = []
+    for crew in look.crews:
+        before = steps(crew, look.now_s)
+        raised = change(before, running.get(crew.id, ()), max)
+        if raised != before:
+            remarks.append(
+                f"Work that runs holds more of crew {crew.id} than are said to be there; it is taken to "
+                "run on."
+            )
+        found[crew.id] = change(raised, away.get(crew.id, ()), lambda level, taken: level - taken)
+    return found, remarks
+
+
+def heads_in_rows(
+    shop: Shop, look: Outlook, name: str, heads: Steps, rows: Iterable[tuple[Running, int]]
+) -> Steps:
+    """Return a crew's heads where rows (work, heads) tell of running work from its start on, of no outage.
+
+    Until now it had the people it had; and while its machine is down, its people are free for others.
+    """
+    mine = [(one, count) for one, count in rows if shop.machines[one.machine].crew == name]
+    free = [
+        (look.now_s, one.resumes_s, count)
+        for one, count in mine
+        if one.resumes_s > look.now_s and in_one_row(shop, look, one)
+    ]
+    heads = change(heads, free, lambda level, taken: level + taken)
+    whole = sum(count for _, count in mine)
+    return [(0, max(heads[0][1], whole)), *heads] if look.now_s else heads
 
 
 def _worked(shut: Sequence[tuple[int, int]], start: int, work: int) -> Iterator[tuple[int, int]]:

@@ -10,8 +10,9 @@ from dataclasses import dataclass
 
 from shopfloor.model.actuals import ShiftState, Stretch
 from shopfloor.model.calendar import WorkClock, united
-from shopfloor.model.shop import NO_FAMILY, Closure, Crew, Shop
+from shopfloor.model.shop import Closure, Crew, Shop
 from shopfloor.replan.current import Current
+from shopfloor.replan.families import Changing, Unit, families
 from shopfloor.replan.people import present
 from shopfloor.replan.remaining import Left
 from shopfloor.replan.told import Told
@@ -63,10 +64,11 @@ class Outlook:
         What is down.
     running
         What runs, in order of its place.
-    families
-        The family each unit (machine, unit) was last used for; units that ran nothing are left out.
-    ready
-        For each order, when it can be on another machine, where that is later than now.
+    families, changing
+        The family of each unit (machine, unit) that can be changed over, and the units being changed.
+    ready, even
+        For each order, when it can be on another machine, where that is later than now: by the longest of
+        the ways it may take. Whether these are all equally long.
     crews
         The shop's, as many as are said to be there.
     remarks
@@ -76,8 +78,10 @@ class Outlook:
     now_s: int
     outs: tuple[Out, ...]
     running: tuple[Running, ...]
-    families: Mapping[tuple[int, int], str]
+    families: Mapping[Unit, str]
+    changing: tuple[Changing, ...]
     ready: Mapping[int, int]
+    even: bool
     crews: tuple[Crew, ...]
     remarks: tuple[str, ...]
 
@@ -106,12 +110,22 @@ def outlook(
     outs = tuple(_outs(now.shop, state, back or {}, outage_s, remarks))
     running = tuple(_running(now.shop, left, outs, state.at_s))
     crews, said = present(now.shop, told, state.at_s)
+    ready, even = _ready(now, left, running, state.at_s)
+    known, changing = families(now, left, state, told)
+    for one in changing:
+        name, say = now.shop.machines[one.machine].id, now.shop.clock.say
+        remarks.append(
+            f"{name} is taken to be changing over to {one.family or 'no family'} until {say(one.until_s)}, "
+            "as planned."
+        )
     return Outlook(
         now_s=state.at_s,
         outs=outs,
         running=running,
-        families=_families(now),
-        ready=_ready(now, left, running, state.at_s),
+        families=known,
+        changing=changing,
+        ready=ready,
+        even=even,
         crews=crews,
         remarks=(*remarks, *said),
     )
@@ -174,29 +188,19 @@ def _running(shop: Shop, left: Sequence[Left], outs: Sequence[Out], now_s: int) 
         yield Running(place, machine, one.unit, min(since, now_s), resumes, ends)
 
 
-def _families(now: Current) -> dict[tuple[int, int], str]:
-    """Return the family of what last ran on each unit."""
-    columns = now.shop.operations
-    last: dict[tuple[int, int], tuple[int, str]] = {}
-    for index, pieces in enumerate(now.pieces):
-        family = int(columns.family[index])
-        name = "" if family == NO_FAMILY else now.shop.families[family]
-        for piece in pieces:
-            for run in piece.runs:
-                unit = int(columns.machine[index]), run.unit
-                if unit not in last or last[unit][0] < run.start_s:
-                    last[unit] = run.start_s, name
-    return {unit: name for unit, (_, name) in last.items()}
-
-
 # ---- orders ----------------------------------------------------------------------------------------
 
 
-def _ready(now: Current, left: Sequence[Left], running: Sequence[Running], now_s: int) -> dict[int, int]:
-    """Return when orders that have just been worked on can be elsewhere, by the longest way they may take."""
+def _ready(
+    now: Current, left: Sequence[Left], running: Sequence[Running], now_s: int
+) -> tuple[dict[int, int], bool]:
+    """Return when orders that have just been worked on can be elsewhere, by the longest way they may take.
+
+    Also tell whether the ways of each are equally long.
+    """
     shop = now.shop
     if shop.transport.none:
-        return {}
+        return {}, True
     columns = shop.operations
     runs = {one.place for one in running}
     waiting: dict[int, set[int]] = {}
@@ -212,12 +216,14 @@ def _ready(now: Current, left: Sequence[Left], running: Sequence[Running], now_s
             if end is not None and (job not in ended or ended[job][0] < end):
                 ended[job] = end, int(columns.machine[index])
     found = {}
+    even = True
     for job, (end, machine) in ended.items():
-        ways = (
+        ways = {
             shop.transport.seconds(shop.machines[machine].id, shop.machines[other].id)
             for other in waiting.get(job, ())
-        )
+        }
         there = end + max(ways, default=0)
         if there > now_s:
             found[job] = there
-    return found
+            even &= len(ways) < 2
+    return found, even

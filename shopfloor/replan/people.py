@@ -74,6 +74,13 @@ def crew_of(name: str, heads: Iterable[tuple[int, int]], from_s: int = 0) -> Cre
     return Crew(name, found[-1][1], levels)
 
 
+def crew_from(name: str, heads: Steps, begin_s: int) -> Crew:
+    """Return the crew of steps on a clock that starts at `begin_s`."""
+    first = [level for moment, level in heads if moment <= begin_s][-1]
+    later = [(moment, level) for moment, level in heads if moment > begin_s]
+    return crew_of(name, [(begin_s, first), *later], begin_s)
+
+
 def _joined(heads: Iterable[tuple[int, int]]) -> Steps:
     found: Steps = []
     for moment, level in heads:

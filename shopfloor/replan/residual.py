@@ -25,9 +25,17 @@ from shopfloor.model.calendar import Clock
 from shopfloor.model.shop import NO_DUE, NO_STEP, Closure, Crew, Ints, Machine, Operations, Orders, Shop
 from shopfloor.replan.begin import Begin
 from shopfloor.replan.current import Current
-from shopfloor.replan.holding import holdings, in_one_row, kept_out, merged, outside, row_seconds
+from shopfloor.replan.holding import (
+    heads_ahead,
+    heads_in_rows,
+    holdings,
+    kept_out,
+    merged,
+    outside,
+    row_seconds,
+)
 from shopfloor.replan.outlook import Outlook, Running, future
-from shopfloor.replan.people import Held, Steps, change, crew_of, steps
+from shopfloor.replan.people import Held, change, crew_from, crew_of
 from shopfloor.replan.remaining import Left
 
 
@@ -52,6 +60,9 @@ class Residual:
         contradicts other work that the journal has running.
     from_fresh
         For each operation of `fresh`, which of `shop` it is.
+    exact
+        Whether `fresh` asks no more than `shop` does: an order on its way, or running, is released there by
+        the longest way it may take, and that may be longer than the one it takes.
     remarks
         What was assumed.
     """
@@ -65,6 +76,7 @@ class Residual:
     pinned: Mapping[int, Running]
     held: tuple[Running, ...]
     from_fresh: Ints
+    exact: bool
     remarks: tuple[str, ...]
 
     @property
@@ -100,6 +112,7 @@ def residual(now: Current, left: Sequence[Left], look: Outlook, begin: Begin) ->
         pinned=build.pinned,
         held=tuple(build.held),
         from_fresh=loose,
+        exact=build.exact(),
         remarks=(*look.remarks, *begin.remarks, *build.remarks),
     )
 
@@ -122,10 +135,10 @@ class _Builder:
         self.pinned = {k: runs[place] for k, place in enumerate(self.places) if place in runs}
         # what a closure can stand for: running work on a machine of one unit
         self.fixed = {k for k, one in self.pinned.items() if self.base.machines[one.machine].count == 1}
-        self.remarks: list[str] = []
         self.operation = np.array([left[place].operation for place in self.places], np.int64)
         self.used, self.job = np.unique(self.columns.job[self.operation], return_inverse=True)
-        self.crews = self._crews()
+        self.crews, said = heads_ahead(self.base, look, self.held, left)
+        self.remarks = said
 
     def _at_odds(self, one: Running) -> bool:
         """Whether its order runs elsewhere too, or its unit runs something else: a journal may say so."""
@@ -154,6 +167,7 @@ class _Builder:
             else self.left[place].seconds
             for k, place in enumerate(self.places)
         ]
+        rows = [(one, int(self.columns.heads[self.operation[k]])) for k, one in self.pinned.items()]
         release, due = self.base.orders.release_s[self.used], self.base.orders.due_s[self.used]
         free = self._free()
         since = {int(self.job[k]): one.since_s for k, one in self.pinned.items()}
@@ -172,7 +186,10 @@ class _Builder:
             Orders(self._names(), release, due, self.base.orders.priority[self.used]),
             tuple(self._machines(self.now_s, 0, whole_rows=True)),
             breaks=breaks,
-            crews=tuple(crew_of(name, self._with_rows(name, heads)) for name, heads in self.crews.items()),
+            crews=tuple(
+                crew_of(name, heads_in_rows(self.base, self.look, name, heads, rows))
+                for name, heads in self.crews.items()
+            ),
             clock=self.base.clock,
             end_s=self.base.shift_end_s,
             step=self._after_running(),
@@ -200,7 +217,7 @@ class _Builder:
             Orders(self._names(), release, self._due(release), self.base.orders.priority[self.used]),
             tuple(self._machines(origin, origin)),
             breaks=_moved(future(self.base.breaks, origin), origin),
-            crews=tuple(self._crew(name, heads) for name, heads in self.crews.items()),
+            crews=tuple(crew_from(name, heads, origin) for name, heads in self.crews.items()),
             clock=Clock(start, self.base.clock.zone),
             end_s=None if end is None or end <= origin else end - origin,
         )
@@ -226,7 +243,11 @@ class _Builder:
             for name, spans in holdings(self.base, self.look, [one], self.left).items():
                 held.setdefault(name, []).extend(spans)
         crews = tuple(
-            self._crew(name, change(heads, held.get(name, ()), lambda level, taken: max(0, level - taken)))
+            crew_from(
+                name,
+                change(heads, held.get(name, ()), lambda level, taken: max(0, level - taken)),
+                self.begin_s,
+            )
             for name, heads in self.crews.items()
         )
         release = solve.orders.release_s.copy()
@@ -236,6 +257,21 @@ class _Builder:
         keep = np.zeros(len(solve), np.bool_)
         keep[loose] = True
         return replace(solve, machines=tuple(machines), crews=crews, orders=orders).keep(keep)
+
+    def exact(self) -> bool:
+        """Whether all ways that an order may take from where it is are equally long."""
+        ways: dict[int, set[int]] = {}
+        for one in self.look.running:
+            here = self.base.machines[one.machine].id
+            job = int(self.columns.job[self.left[one.place].operation])
+            mine = [
+                k for k in range(len(self.places)) if k not in self.pinned and self.used[self.job[k]] == job
+            ]
+            ways[one.place] = {
+                self.base.transport.seconds(here, self.base.machines[other].id)
+                for other in self.columns.machine[self.operation[mine]].tolist()
+            }
+        return self.look.even and all(len(each) < 2 for each in ways.values())
 
     # ---- parts --------------------------------------------------------------------------------------
 
@@ -362,6 +398,11 @@ class _Builder:
                     for one in self.held
                     if one.machine == place and one.ends_s > from_s
                 ]
+                closed += [
+                    Closure(from_s, one.until_s, f"changing over to {one.family or 'no family'}")
+                    for one in self.look.changing
+                    if one.machine == place and one.until_s > from_s
+                ]
             yield replace(hall, closed=_moved(merged(closed), origin), family=self._family(place, hall))
 
     def _family(self, place: int, hall: Machine) -> str | None:
@@ -369,50 +410,6 @@ class _Builder:
             return hall.family
         names = {self.look.families.get((place, unit), hall.family) for unit in range(1, hall.count + 1)}
         return names.pop() if len(names) == 1 else None
-
-    def _crews(self) -> dict[str, Steps]:
-        """Return each crew's heads from now on: what running work holds is there, whatever was said.
-
-        Running work that is no operation takes its heads away from the rest.
-        """
-        running = holdings(self.base, self.look, self.look.running, self.left)
-        away = holdings(self.base, self.look, self.held, self.left)
-        found: dict[str, Steps] = {}
-        for crew in self.look.crews:
-            before = steps(crew, self.now_s)
-            raised = change(before, running.get(crew.id, ()), max)
-            if raised != before:
-                self.remarks.append(
-                    f"Work that runs holds more of crew {crew.id} than are said to be there; it is taken to "
-                    "run on."
-                )
-            found[crew.id] = change(raised, away.get(crew.id, ()), lambda level, taken: level - taken)
-        return found
-
-    def _with_rows(self, name: str, heads: Steps) -> Steps:
-        """Return a crew's heads where rows tell of running work from its start on, and of no outage.
-
-        Until now it had the people it had; and while its machine is down, its people are free for others.
-        """
-        rows = [
-            (one, int(self.columns.heads[self.operation[k]]))
-            for k, one in self.pinned.items()
-            if self.base.machines[one.machine].crew == name
-        ]
-        free = [
-            (self.now_s, one.resumes_s, count)
-            for one, count in rows
-            if one.resumes_s > self.now_s and in_one_row(self.base, self.look, one)
-        ]
-        heads = change(heads, free, lambda level, taken: level + taken)
-        whole = sum(count for _, count in rows)
-        return [(0, max(heads[0][1], whole)), *heads] if self.now_s else heads
-
-    def _crew(self, name: str, heads: Steps) -> Crew:
-        """Return a crew on the clock that starts at begin."""
-        at_begin = [level for moment, level in heads if moment <= self.begin_s][-1]
-        later = [(moment, level) for moment, level in heads if moment > self.begin_s]
-        return crew_of(name, [(self.begin_s, at_begin), *later], self.begin_s)
 
 
 def _moved(closures: Iterable[Closure], origin: int) -> tuple[Closure, ...]:

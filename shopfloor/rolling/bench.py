@@ -263,12 +263,13 @@ def _blocks(rest: Residual) -> Iterable[_Block]:
             yield _Block(one.machine, one.unit, max(0, one.ends_s - rest.begin_s), None)
     runs = {(one.machine, one.unit) for one in rest.pinned.values()}
     for place, hall in enumerate(shop.machines):
-        if hall.count == 1 or hall.id not in shop.changeovers or hall.family is not None:
+        if hall.count == 1 or hall.id not in shop.changeovers:
             continue
+        until = {one.unit: one.until_s - rest.begin_s for one in look.changing if one.machine == place}
         for unit in range(1, hall.count + 1):
-            family = look.families.get((place, unit), rest.shop.machines[place].family)
+            family = look.families.get((place, unit))
             if family is not None and (place, unit) not in runs:
-                yield _Block(place, unit, 0, family)
+                yield _Block(place, unit, max(0, until.get(unit, 0)), family)
 
 
 def _with_blocks(shop: Shop, blocks: Sequence[_Block]) -> Shop:

@@ -273,8 +273,7 @@ def _plan(
 def _bounds(rest: Residual, schedule: Schedule, fresh: Plan | None) -> tuple[Bound, ...]:
     """Return the bounds of the rest; what a solver proved of it counts where it was asked the same."""
     bounds = lower_bounds(rest.shop)
-    same = rest.shop.transport.none or not rest.pinned
-    for bound in fresh.bounds if fresh is not None and same else ():
+    for bound in fresh.bounds if fresh is not None and rest.exact else ():
         value = bound.value_s + rest.begin_s
         if bound.kind == "solver" and value > (bounds[0].value_s if bounds else 0):
             finish = rest.shop.clock.say(value)
