@@ -230,6 +230,9 @@ def _goals(given: str | None, events: Sequence[Event], now_s: int) -> tuple[str,
 
 def _write(found: Replan, out: Path, stamp: str | None, codes: str | None, xlsx: bool) -> list[Path]:
     """Make every file in memory, then write them all or none."""
+    import hashlib
+    from dataclasses import replace
+
     from shopfloor.cli.plan import SHEETS_UP_TO, WORKBOOK_UP_TO
     from shopfloor.render.compare_page import compare_page
     from shopfloor.render.dispatch import dispatch_page
@@ -237,12 +240,14 @@ def _write(found: Replan, out: Path, stamp: str | None, codes: str | None, xlsx:
     from shopfloor.render.save import save
     from shopfloor.render.tables import plan_csv, plan_json
 
-    made = found.plan
+    made, text = found.plan, plan_json(found.plan)
+    digest = hashlib.sha256(text.encode("utf-8")).hexdigest()
+    moved = replace(found.comparison, b=replace(found.comparison.b, name="plan.json", sha256=digest))
     files: dict[str, bytes | str] = {
-        "plan.json": plan_json(made),
+        "plan.json": text,
         "plan.csv": plan_csv(made),
         "gantt.html": gantt_page(made, stamp=stamp),
-        "moves.html": compare_page(found.comparison, made.shop.clock),
+        "moves.html": compare_page(moved, made.shop.clock),
     }
     if len(made.schedule) <= SHEETS_UP_TO:
         files["dispatch.html"] = dispatch_page(made, stamp=stamp, codes=codes)
@@ -284,9 +289,8 @@ def _lines(found: Replan, state: ShiftState, files: list[Path], entry: int | Non
     say = made.shop.clock.say
     running, waiting = len(rest.look.running), sum(not one.running for one in rest.left)
     done = len(state.of(Status.DONE))
-    lines = [
-        text.wrap(f"At {say(rest.now_s)}: {done:,} operations are done, {running:,} run, {waiting:,} wait.")
-    ]
+    counts = f"done {done:,}, running {running:,}, waiting {waiting:,}"
+    lines = [text.wrap(f"At {say(rest.now_s)}: operations {counts}.")]
     if rest.look.running:
         ends = ", ".join(
             f"{text.cut(made.shop.machines[one.machine].id, 14)} {say(one.ends_s)}"

@@ -33,6 +33,7 @@ def compare_page(found: Comparison, clock: Clock) -> str:
     """Return the page of a comparison; `clock` writes its moments. Linear in the rows of both plans."""
     say = clock.say
     body = [
+        "<main>",
         "<h1>Two plans compared</h1>",
         f'<p class="under">{_shift(clock)}</p>',
         f'<p class="verdict">{escape(words.verdict(found, say))}</p>',
@@ -46,6 +47,7 @@ def compare_page(found: Comparison, clock: Clock) -> str:
             *_orders(found, say),
             *_changes(found, say),
         ]
+    body.append("</main>")
     return document(title="Two plans compared", style=page_file("report.css"), body="\n".join(body))
 
 
@@ -83,7 +85,7 @@ def _sides(found: Comparison, say: Callable[[int], str]) -> str:
         "lateness",
     )
     columns = zip(names, column(found.a), column(found.b), strict=True)
-    return table(("", "A", "B"), columns, texts=(0, 1, 2))
+    return table(("Plans", "A", "B"), columns, texts=(0, 1, 2))
 
 
 def _machines(found: Comparison, say: Callable[[int], str]) -> list[str]:
@@ -166,7 +168,7 @@ def _picture(found: Comparison, clock: Clock) -> list[str]:
         for row, lane in ((change.before, 0), (change.after, _LANE)):
             if row is not None:
                 parts.append(_bar(change, row, x, top[row.machine, row.unit] + lane, clock))
-    return ["<h2>Where it moved</h2>", _legend(), *parts, "</svg>"]
+    return ["<h2>Where it moved</h2>", _legend(found.counts.get("passed", 0) > 0), *parts, "</svg>"]
 
 
 def _axis(clock: Clock, first: int, last: int, height: int, x: Callable[[int], float]) -> list[str]:
@@ -194,10 +196,11 @@ def _bar(change: Change, row: Row, x: Callable[[int], float], y: int, clock: Clo
     )
 
 
-def _legend() -> str:
+def _legend(passed: bool) -> str:
+    shown = (*_LEGEND, ("passed", "begun before B")) if passed else _LEGEND
     items = (
         f'<li><svg viewBox="0 0 26 12" aria-hidden="true"><rect class="{kind}" x="1" y="1" width="24" '
         f'height="10"/></svg>{text}</li>'
-        for kind, text in _LEGEND
+        for kind, text in shown
     )
     return f'<ul class="legend">{"".join(items)}</ul>'

@@ -31,6 +31,7 @@ def handover_page(found: Handover, clock: Clock, figures: Any, *, stamp: str | N
     printed = f"; printed {stamp}" if stamp else ""
     under = f"{shift}, handed over at {say(found.at_s)}{printed}. {words.plans_line(found, say)}."
     body = [
+        "<main>",
         "<h1>Handover</h1>",
         f'<p class="under">{escape(under)}</p>',
         *(f'<p class="verdict">{escape(sentence)}</p>' for sentence in words.summary(found, say)),
@@ -40,6 +41,7 @@ def handover_page(found: Handover, clock: Clock, figures: Any, *, stamp: str | N
         *_left(found, say),
         *_remarks(found, say),
         *_figures(found, figures),
+        "</main>",
     ]
     return document(title="Handover", style=page_file("report.css"), body="\n".join(body))
 

@@ -158,7 +158,8 @@ def replan(
         stopped="interrupted" if stop.is_set() else "done",
     )
     trades = tuple(trades_of(chosen, best, search.archive.front, bench.goals))
-    made = replace(made, remarks=(*made.remarks, *sentences(chosen, best, scratch, trades)))
+    said_of_moves = sentences(chosen, best, scratch, trades)
+    made = replace(made, remarks=(*made.remarks, *_overdue(rest, rows), *said_of_moves))
     _check(rest, bench, chosen, made, now, here)
     numbers = tuple(_numbers(rest, made, here))
     return Replan(made, _comparison(made, said, now_s), chosen.moves, scratch, trades, rest, numbers)
@@ -175,6 +176,22 @@ def _rows(rest: Residual, said: Told) -> dict[int, Row]:
         if row is not None and row.start_s is not None and row.end_s is not None:
             found[k] = Row(one.key.order, one.key.machine, row.unit, row.start_s, row.end_s, row.round)
     return found
+
+
+def _overdue(rest: Residual, rows: Mapping[int, Row]) -> tuple[str, ...]:
+    """Say how much should have begun by now and is not recorded: perhaps somebody forgot to."""
+    late = [
+        k
+        for k, row in rows.items()
+        if k not in rest.pinned and not rest.left[k].why and row.start_s < rest.now_s - MOVED_S
+    ]
+    if not late:
+        return ()
+    noun = "1 operation was" if len(late) == 1 else f"{len(late):,} operations were"
+    return (
+        f"{noun} to begin before {rest.shop.clock.say(rest.now_s)} and nothing is recorded of them; they are "
+        "planned as not begun.",
+    )
 
 
 def _fresh(

@@ -32,10 +32,11 @@ def before_side(said: Told) -> Side:
         proved=bool(head.get("proved_optimal")),
         fits=head.get("fits_shift"),
         late=late,
+        method=str(head.get("method", {}).get("name", "")),
     )
 
 
-def after_side(made: Plan, now_s: int, sha256: str = "") -> Side:
+def after_side(made: Plan, now_s: int) -> Side:
     """Return a replan as one side of a comparison."""
     shop, schedule = made.shop, made.schedule
     rows = [
@@ -51,7 +52,7 @@ def after_side(made: Plan, now_s: int, sha256: str = "") -> Side:
     ]
     return Side(
         name="replan",
-        sha256=sha256,
+        sha256="",
         rows=rows,
         makespan_s=made.makespan_s,
         bound_s=made.lower_bound_s,

@@ -199,6 +199,17 @@ def test_more_stability_never_moves_more_and_never_costs_more_than_it_may() -> N
         assert trade.stability_s > 0
 
 
+def test_what_should_have_begun_and_is_not_recorded_is_told_of() -> None:
+    shop = rounds_hall(2)
+    made = plan(shop, QUICK)
+    found = anew(shop, opened(made), 1800)
+    missing = int((made.schedule.start_s == 0).sum())
+    assert (
+        f"{missing} operations were to begin before 06:30 and nothing is recorded of them; they are planned "
+        "as not begun." in found.plan.remarks
+    )
+
+
 def test_what_no_plan_can_hold_is_named() -> None:
     shop = hall(0).with_crew(2)
     machines = tuple(replace(machine, crew="crew", set_up_only=False) for machine in shop.machines)
