@@ -280,7 +280,7 @@ def late_lines(plan: Plan) -> list[str]:
         return []
     late = plan.late_orders()
     if not late:
-        return ["No order is late."]
+        return [] if "Nothing is late." in plan.remarks else ["No order is late."]
     worst = ", ".join(f"{cut(row.order, 20)} by {duration(row.late_s)}" for row in late[:LATE_SHOWN])
     more = f", and {len(late) - LATE_SHOWN} more" if len(late) > LATE_SHOWN else ""
     noun = "1 order is late" if len(late) == 1 else f"{len(late)} orders are late"
