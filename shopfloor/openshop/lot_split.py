@@ -119,12 +119,7 @@ def _in_good_order(shop: Shop, pieces: list[UnitPiece]) -> Outcome:
         orders.due_s,
         orders.priority,
     )
-    best = "another order of its blocks might have less weighted lateness"
-    if order.tardiness == 0:
-        best = "nothing is late"
-    elif order.proved:
-        best = "no other order of its blocks has less weighted lateness"
-    remark = f"The blocks of the plan were put in order for the due times; {best}."
+    remark = order.about("blocks of the plan")
     return Outcome(_schedule(_permuted(pieces, blocks, order.position)), remarks=(remark,))
 
 

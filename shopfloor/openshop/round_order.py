@@ -20,6 +20,7 @@ from typing import Any
 
 import numpy as np
 
+from shopfloor.model.calendar import duration
 from shopfloor.model.shop import Ints
 
 EXACT_ROUNDS = 12
@@ -41,6 +42,18 @@ class RoundOrder:
     completion: int
     proved: bool
     exact: bool
+
+    def about(self, what: str) -> str:
+        """Say what the order of `what` (rounds, blocks) did for the due times, and whether it is proved best."""
+        if self.tardiness == 0:
+            return f"The {what} were put in an order in which nothing is late."
+        left = duration(round(self.tardiness / PRIORITY_UNIT))
+        best = (
+            "and no other order of them has less"
+            if self.proved
+            else "and another order of them might have less"
+        )
+        return f"The {what} were put in order for the due times; lateness weighted by priority comes to {left}, {best}."
 
 
 def order_rounds(

@@ -22,7 +22,7 @@ from shopfloor.model.results import Outcome
 from shopfloor.model.schedule import Schedule
 from shopfloor.model.shop import Ints, Shop
 from shopfloor.openshop.method import Effort, why_not_plain
-from shopfloor.openshop.round_order import RoundOrder, order_rounds
+from shopfloor.openshop.round_order import order_rounds
 
 
 @dataclass(frozen=True, slots=True)
@@ -105,18 +105,4 @@ def rounds_to_outcome(shop: Shop, unit: Ints, colour: Ints) -> Outcome:
     )
     place = order.position[colour]
     schedule = Schedule(np.arange(len(shop)), starts[place], ends[place], unit=unit, round=place + 1)
-    return Outcome(schedule, remarks=_about_lateness(shop, order))
-
-
-def _about_lateness(shop: Shop, order: RoundOrder) -> tuple[str, ...]:
-    """Say what the order of rounds did for the due times, and whether that is proved least."""
-    if not shop.has_due:
-        return ()
-    if order.tardiness == 0:
-        return ("The rounds were put in an order in which nothing is late.",)
-    proof = (
-        "no other order of these rounds has less weighted lateness"
-        if order.proved
-        else "another order of these rounds might have less weighted lateness"
-    )
-    return (f"The rounds were put in order for the due times; {proof}.",)
+    return Outcome(schedule, remarks=(order.about("rounds"),) if shop.has_due else ())
