@@ -44,16 +44,15 @@ class RoundOrder:
     exact: bool
 
     def about(self, what: str) -> str:
-        """Say what the order of `what` (rounds, blocks) did for the due times, and whether it is proved best."""
+        """Say what the order of `what` (rounds, blocks) did for the due times, and what is proved."""
         if self.tardiness == 0:
             return f"The {what} were put in an order in which nothing is late."
         left = duration(round(self.tardiness / PRIORITY_UNIT))
-        best = (
-            "and no other order of them has less"
-            if self.proved
-            else "and another order of them might have less"
+        best = "no" if self.proved else "perhaps some"
+        return (
+            f"The {what} were put in order for the due times; lateness weighted by priority comes to {left}, "
+            f"and {best} other order of them has less."
         )
-        return f"The {what} were put in order for the due times; lateness weighted by priority comes to {left}, {best}."
 
 
 def order_rounds(
