@@ -88,6 +88,6 @@ def test_filling_from_the_back_is_legal_and_counts_right(case, data) -> None:
 def test_what_remains_is_said_in_words() -> None:
     late = round_order.RoundOrder(np.zeros(1, int), 1_800_000, 0, proved=True, exact=True)
     assert late.about("rounds") == (
-        "The rounds were put in order for the due times; lateness weighted by priority comes to 30 min, and no "
-        "other order of them has less."
+        "The rounds were put in order for the due times; lateness weighted by priority comes to 30 min, "
+        "and no other order of them has less."
     )
