@@ -22,7 +22,9 @@ from shopfloor.openshop.floor.rules import NONE, Rules
 from shopfloor.openshop.floor.sequence import Pass, Sequencer
 from shopfloor.openshop.floor.timetable import serial
 
-PATIENCE, BATCHES = (0.1, 0.03, 0.3, 1.0), (0.0, 1.0)
+# Patience and batches tried where there are changeovers: for any makespan, and for one that must not grow.
+ANY_TIME = (0.1, 0.03, 0.3, 1.0), (0.0, 1.0)
+IN_TIME = (0.1, 0.03), (0.0, 1.0, 2.0)
 WORK, COST, DUE, MODIFIED = range(4)  # kinds of index
 SHARES, STRENGTHS = (0.05, 0.3, 1.0), (0.1, 0.3, 0.6)  # how many orders are varied at once, and how much
 LIFTS = (0.3, 1.0, 2.0)  # how much more pressing what came late is made
@@ -97,14 +99,15 @@ def grid(rules: Rules, goal: str, *, in_time: bool = False) -> Iterator[Rule]:
     """
     level = (0.0,) * len(rules.release)
     waits = any(change is not None for change in rules.change)
-    for patience, batch in product(PATIENCE, BATCHES) if waits else ((1.0, 0.0),):
-        even = Rule(WORK, (patience,) * len(rules.count), level, batch)
+    patience, batches = (IN_TIME if in_time else ANY_TIME) if waits else ((1.0,), (0.0,))
+    for each, batch in product(patience, batches):
+        even = Rule(WORK, (each,) * len(rules.count), level, batch)
         if goal != TARDINESS:
             yield replace(even, flow=0.0)
             yield replace(even, flow=0.5)
             yield replace(even, kind=COST, pull=1.0)
         elif in_time:
-            for pull, (flow, look_ahead) in product((1.0, 0.1, 10.0), ((1.0, 3.0), (0.0, 3.0), (1.0, 10.0))):
+            for pull, (flow, look_ahead) in product((1.0, 0.1, 100.0), ((1.0, 3.0), (0.0, 3.0), (1.0, 10.0))):
                 yield replace(even, kind=COST, flow=flow, look_ahead=look_ahead, pull=pull)
         else:
             for flow, look_ahead in ((1.0, 3.0), (0.0, 1.0), (1.0, 1.0)):
