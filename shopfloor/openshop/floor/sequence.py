@@ -13,7 +13,7 @@ from dataclasses import dataclass, field
 from shopfloor.openshop.floor.rules import FAR, NONE, Rules
 from shopfloor.openshop.floor.timeline import FOR_EVER, Level
 
-APART = 64  # operations between two moments at which a pass notes where it stands
+APART, NOTES = 64, 64  # a pass notes where it stands every 64 places, or at most so often in a long list
 BY_CREW = -2  # stands for the operation waited for where it was heads that were missing
 
 ALONE, CHANGES, ALIKE, SEVERAL = range(4)  # one unit; with changeovers; units alike; units with changeovers
@@ -78,7 +78,7 @@ class Pass:
         The operation that each one waited for last: before it in its order or on its unit; ``NONE`` if it
         waited for none, ``BY_CREW`` if for heads.
     states
-        Where the pass stood before every ``APART``-th place.
+        Where the pass stood at the places that are multiples of :attr:`Sequencer.apart`.
     done, last
         For each order, when it is done, and its last operation.
     makespan, late, changed
@@ -99,10 +99,17 @@ class Pass:
 
 
 class Sequencer:
-    """Passes over lists of one floor."""
+    """Passes over lists of one floor.
+
+    Attributes
+    ----------
+    apart
+        How many places lie between two notes of where a pass stands.
+    """
 
     def __init__(self, rules: Rules) -> None:
         self.rules = rules
+        self.apart = max(APART, -(-len(rules) // NOTES))
         self._first: list[int] = []
         total = 0
         for count in rules.count:
@@ -126,9 +133,9 @@ class Sequencer:
         -------
         None as soon as it is sure to pass one of the limits.
         """
-        mark = begin // APART
+        mark = begin // self.apart
         trial = Pass(sequence, old.start[:], old.end[:], old.unit[:], old.cause[:], old.states[:mark])
-        return self._run(trial, old.states[mark].copy(), mark * APART, limits)
+        return self._run(trial, old.states[mark].copy(), mark * self.apart, limits)
 
     def _run(self, made: Pass, state: State, begin: int, limits: Limits) -> Pass | None:
         rules = self.rules
@@ -141,9 +148,9 @@ class Sequencer:
         free, on_unit, family, groups = state.free, state.unit, state.family, state.groups
         starts, ends, cause, unit_of = made.start, made.end, made.cause, made.unit
         latest, late, changed = state.latest, state.late, state.changed
-        sequence, states = made.sequence, made.states
+        sequence, states, apart = made.sequence, made.states, self.apart
         for place in range(begin, len(sequence)):
-            if not place % APART:
+            if not place % apart:
                 state.latest, state.late, state.changed = latest, late, changed
                 states.append(state.copy())
             operation = sequence[place]
