@@ -40,9 +40,10 @@ class Kept:
         """Return by how much a schedule passes each; all zero where it may count."""
         return tuple(max(0, worth(made, goal) - most) for goal, most in self.values)
 
-    def nearly(self, made: Pass, share: float) -> bool:
-        """Whether a schedule passes none of them by more than a share of it."""
-        return all(worth(made, goal) <= most + share * most for goal, most in self.values)
+    def passed_by(self, made: Pass) -> float:
+        """Return by what share of it a schedule passes the one that it passes most; 0 if none."""
+        shares = [(worth(made, goal) - most) / max(most, 1) for goal, most in self.values]
+        return max([0.0, *shares])
 
     def limits(self, goal: str, most: int) -> Limits:
         """Return them as limits of a pass, together with `most` of the goal being served."""

@@ -24,7 +24,7 @@ from shopfloor.openshop.floor.timetable import serial
 
 # Patience and batches tried where there are changeovers: for any makespan, and for one that must not grow.
 ANY_TIME = (0.1, 0.03, 0.3, 1.0), (0.0, 1.0)
-IN_TIME = (0.1, 0.03), (0.0, 1.0, 2.0)
+IN_TIME = (0.1,), (0.0, 1.0, 2.0)
 WORK, COST, DUE, MODIFIED = range(4)  # kinds of index
 SHARES, STRENGTHS = (0.05, 0.3, 1.0), (0.1, 0.3, 0.6)  # how many orders are varied at once, and how much
 LIFTS = (0.3, 1.0, 2.0)  # how much more pressing what came late is made

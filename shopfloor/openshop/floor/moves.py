@@ -142,32 +142,26 @@ class Moves:
 
     def _among_runs(self, before: int, after: int) -> Move | None:
         """Move runs of a family, or operations between them, on a unit where one waits for another."""
-        rng, family = self._rng, self._rules.family
+        rng = self._rng
         line = self._line(after)
         here = line.index(after)
-        first = _run_start(line, family, here)
         kind = rng.random()
         if kind < 0.35:
-            return self._earlier_run(line, first, here)
-        if kind < 0.7:
-            return self._join(line, first, here)
+            return self._earlier_run(line, here)
+        if kind < 0.65:
+            return self._join(line, here)
         if kind < 0.85:
-            later = [place for place in range(here + 1, len(line)) if family[line[place]] == family[before]]
-            if not later:
-                return None
-            place = later[0] if rng.random() < 0.7 else rng.choice(later)
-            return Move((before,), line[place], before=rng.random() < 0.5)
+            return self._leave(line, before, here)
+        first = _run_start(line, self._rules.family, here)
         return Move((after,), line[rng.randrange(first, here)], before=True) if first < here else None
 
-    def _earlier_run(self, line: list[int], first: int, here: int) -> Move | None:
+    def _earlier_run(self, line: list[int], here: int) -> Move | None:
         """Take a run, as far as one operation or whole, before the run before it, or further."""
         rng, family = self._rng, self._rules.family
+        first = _run_start(line, family, here)
         if not first:
             return None
-        end = here + 1
-        if rng.random() < 0.5:
-            while end < len(line) and family[line[end]] == family[line[here]]:
-                end += 1
+        end = here + 1 if rng.random() < 0.5 else _run_end(line, family, here)
         to = _run_start(line, family, first - 1)
         kind = rng.random()
         if kind < 0.3:
@@ -176,15 +170,32 @@ class Moves:
             to = _run_start(line, family, to - 1)
         return Move(tuple(line[first:end]), line[to], before=True)
 
-    def _join(self, line: list[int], first: int, here: int) -> Move | None:
-        """Let an operation, or its run as far as it, join an earlier run of its family."""
+    def _join(self, line: list[int], here: int) -> Move | None:
+        """Let an operation, its run as far as it, or all its run join an earlier run of its family."""
         rng, family = self._rng, self._rules.family
+        first = _run_start(line, family, here)
         runs = [place for place in range(first) if family[line[place]] == family[line[here]]]
         if not runs:
             return None
         place = runs[-1] if rng.random() < 0.7 else rng.choice(runs)
-        block = (line[here],) if rng.random() < 0.6 else tuple(line[first : here + 1])
-        return Move(block, line[place], before=False)
+        return Move(self._part(line, here), line[place], before=False)
+
+    def _leave(self, line: list[int], before: int, here: int) -> Move | None:
+        """Let what is waited for, alone or with its run, join a later run of its family."""
+        rng, family = self._rng, self._rules.family
+        later = [place for place in range(here + 1, len(line)) if family[line[place]] == family[before]]
+        if not later or before not in line:
+            return None
+        place = later[0] if rng.random() < 0.7 else rng.choice(later)
+        return Move(self._part(line, line.index(before)), line[place], before=rng.random() < 0.5)
+
+    def _part(self, line: list[int], here: int) -> tuple[int, ...]:
+        """Return an operation, its run as far as it, or all its run."""
+        kind, family = self._rng.random(), self._rules.family
+        if kind < 0.5:
+            return (line[here],)
+        end = here + 1 if kind < 0.7 else _run_end(line, family, here)
+        return tuple(line[_run_start(line, family, here) : end])
 
     def _at_a_change(self) -> Move | None:
         """Move what stands at some change of family."""
@@ -196,10 +207,7 @@ class Moves:
         if not turns:
             return None
         here = rng.choice(turns)
-        end = here + 1
-        while end < len(line) and family[line[end]] == family[line[here]]:
-            end += 1
-        return self._among_runs(line[here - 1], line[rng.randrange(here, end)])
+        return self._among_runs(line[here - 1], line[rng.randrange(here, _run_end(line, family, here))])
 
     def _line(self, operation: int) -> list[int]:
         """Return what runs on the unit of an operation, in order of time."""
@@ -243,3 +251,11 @@ def _run_start(line: list[int], family: list[int], here: int) -> int:
     while here and family[line[here - 1]] == family[line[here]]:
         here -= 1
     return here
+
+
+def _run_end(line: list[int], family: list[int], here: int) -> int:
+    """Return the place after the run of one family that reaches place `here`."""
+    end = here + 1
+    while end < len(line) and family[line[end]] == family[line[here]]:
+        end += 1
+    return end

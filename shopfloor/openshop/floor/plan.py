@@ -22,8 +22,10 @@ from shopfloor.openshop.units import assign_units
 
 ROUNDS = 8  # of rules and improvement, for each goal
 VARIANTS = 20  # rules varied in each round
-NEAR = 0.03  # by so much may a schedule pass what is kept and be worth a repair
-STEPS = 1_000  # changes tried in one cycle of improvement; two or three cycles a round
+NEAR = 0.05  # by so much may a schedule pass what is kept and be worth a repair
+PASSED = 50.0  # times the share by which it does counts against it
+CLOSE, REPAIRS = 8, 3  # such schedules remembered, and repaired in one round
+STEPS = 1_000  # changes tried in one cycle of improvement; two to seven cycles a round
 FIRST_SHARE = 0.6  # of the time left goes to a goal that another one follows
 TELL_EVERY_S = 0.4
 NO_HEADS = "No plan was found: some operation needs more heads than its crew has left for long enough."
@@ -106,40 +108,43 @@ class _Search:
         self.wanted, self.target = wanted, least(self.rules, wanted[0], self.effort.bound_s)
         deadline = dict(self.kept.values).get(MAKESPAN, self.effort.bound_s)
         search = RuleSearch(self.sequencer, wanted, self.kept, deadline, self.rng)
-        near = self._try(search, search.size)
+        close = self._try(search, search.size)
         if self.best is None:
             self.best = rescue(self.sequencer)
         for number in range(self.rounds):
             if self.best is None or self._met() or self._over():
                 break
             heat = HEATS[number % len(HEATS)]
-            if near is not None:
-                self._offer(self._improved(near, heat))
+            repairs = REPAIRS if self.kept.values else 1
+            for made in close[:repairs]:
+                self._offer(self._improved(made, heat))
             self._offer(self._improved(self.best, heat))
             self._offer(closed_up(self.sequencer, self.best, wanted, self.kept))
-            near = self._try(search, VARIANTS)
+            close = self._promising([*close[repairs:], *self._try(search, VARIANTS)])
 
     def _met(self) -> bool:
         return self.best is not None and worth(self.best, self.wanted[0]) <= self.target
 
-    def _try(self, search: RuleSearch, runs: int) -> Pass | None:
-        """Try rules; return the most promising schedule of these, which may count after some repair.
-
-        That is the best in the goal of those that pass what is kept by little, if it is better than the
-        best that does not pass it at all.
-        """
-        close: list[Pass] = []
+    def _try(self, search: RuleSearch, runs: int) -> list[Pass]:
+        """Try rules; return the most promising schedules of these, some of which may need a repair."""
+        found: list[Pass] = []
         for _ in range(runs):
             if self.best is not None and (self._met() or self._over()):
                 break
             made = search.try_next()
-            if made is None:
-                continue
-            if not any(self.kept.excess(made)):
-                self._offer(made)
-            if self.kept.nearly(made, NEAR):
-                close.append(made)
-        return min(close, key=lambda made: score(made, self.wanted), default=None)
+            if made is not None:
+                if not any(self.kept.excess(made)):
+                    self._offer(made)
+                found = self._promising([*found, made])
+        return found
+
+    def _promising(self, made: list[Pass]) -> list[Pass]:
+        """Return the few that pass what is kept by nothing or little and are best in the goal, best first."""
+
+        def value(each: Pass) -> float:
+            return (1 + worth(each, self.wanted[0])) * (1.0 + PASSED * self.kept.passed_by(each))
+
+        return sorted((each for each in made if self.kept.passed_by(each) <= NEAR), key=value)[:CLOSE]
 
     def _improved(self, made: Pass, heat: float) -> Pass | None:
         """Return the schedule improved, or None if it does not come to keep what must be kept."""
