@@ -37,7 +37,7 @@ from shopfloor.rolling.bench import Bench, Timed
 from shopfloor.rolling.mend import mended
 from shopfloor.rolling.search import Candidate, Search
 from shopfloor.rolling.sides import after_side, before_side
-from shopfloor.rolling.trade import Trade, allowed, sentences, trades_of
+from shopfloor.rolling.trade import Trade, limits_of, sentences, trades_of, worse_than
 
 SEARCH_SHARE = 0.5  # of the time for a fresh plan; the other half goes into moving less
 
@@ -54,6 +54,8 @@ class Replan:
         The plan in force before, and this one.
     moves, scratch
         What it moves, and what planning from scratch would move; None where no fresh plan was found.
+    worse_s
+        By goal, how many (weighted) seconds it is worse than the best plan this run found.
     trades
         What moving less would cost.
     rest
@@ -66,6 +68,7 @@ class Replan:
     comparison: Comparison
     moves: Moves
     scratch: Moves | None
+    worse_s: tuple[tuple[str, int], ...]
     trades: tuple[Trade, ...]
     rest: Residual
     numbers: tuple[int, ...]
@@ -157,12 +160,21 @@ def replan(
         repeatable=search.complete and (fresh is None or fresh.repeatable),
         stopped="interrupted" if stop.is_set() else "done",
     )
-    trades = tuple(trades_of(chosen, best, search.archive.front, bench.goals))
+    trades = tuple(trades_of(chosen, best, search.archive, bench.goals))
     said_of_moves = sentences(chosen, best, scratch, trades)
     made = replace(made, remarks=(*made.remarks, *_overdue(rest, rows), *said_of_moves))
     _check(rest, bench, chosen, made, now, here)
     numbers = tuple(_numbers(rest, made, here))
-    return Replan(made, _comparison(made, said, now_s), chosen.moves, scratch, trades, rest, numbers)
+    return Replan(
+        plan=made,
+        comparison=_comparison(made, said, now_s),
+        moves=chosen.moves,
+        scratch=scratch,
+        worse_s=worse_than(chosen, best, bench.goals),
+        trades=trades,
+        rest=rest,
+        numbers=numbers,
+    )
 
 
 # ---- candidates ------------------------------------------------------------------------------------
@@ -235,9 +247,7 @@ def _settled(search: Search, goals: Sequence[str], stability_s: int) -> tuple[Ca
     """
     while True:
         best = search.archive.best()
-        limits = tuple(
-            value + allowed(goal, stability_s) for goal, value in zip(goals, best.timed.value, strict=True)
-        )
+        limits = limits_of(best, goals, stability_s)
         search.settle(limits)
         if search.archive.best().timed.value == best.timed.value:
             return search.archive.best(), search.archive.chosen(limits)

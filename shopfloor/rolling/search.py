@@ -93,7 +93,7 @@ class Search:
         self.archive = Archive()
         size = max(1, len(bench.movable))
         self._left = max(FEWEST, min(MOST, PLACED // size))
-        self.complete = True
+        self.complete, self._timed = True, False
         self._old = _old_keys(bench, reference)
 
     # ---- single timetables ---------------------------------------------------------------------------
@@ -107,11 +107,16 @@ class Search:
         return found
 
     def _time(self, keys: Keys, origin: str) -> Candidate | None:
+        """Time operations by their keys; None where that cannot be, or where the search is at its end.
+
+        The first timetable, that of the old sequence, is made even if time is up: it is always a candidate.
+        """
         if self._left <= 0:
             return None
-        if self._over():
+        if self._timed and self._over():
             self.complete, self._left = False, 0
             return None
+        self._timed = True
         self._left -= 1
         sequence = sorted(self.bench.movable, key=lambda k: (keys[k], k))
         units = {k: was.unit for k, was in self.bench.was.items()}

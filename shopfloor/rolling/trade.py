@@ -9,7 +9,7 @@ from shopfloor.model.calendar import HOUR, MINUTE, duration
 from shopfloor.openshop.incumbent import TARDINESS
 from shopfloor.openshop.round_order import PRIORITY_UNIT
 from shopfloor.replan.movement import Moves
-from shopfloor.rolling.search import Candidate
+from shopfloor.rolling.search import Archive, Candidate, Limits
 
 TRADES = 3  # so many alternatives are told
 DEAREST_S = HOUR  # what costs more than that in finish or lateness is no alternative
@@ -34,38 +34,52 @@ def allowed(goal: str, seconds: int) -> int:
     return seconds * (PRIORITY_UNIT if goal == TARDINESS else 1)
 
 
-def trades_of(
-    chosen: Candidate, best: Candidate, front: Sequence[Candidate], goals: Sequence[str]
-) -> list[Trade]:
+def limits_of(best: Candidate, goals: Sequence[str], stability_s: int) -> Limits:
+    """Return how much of each goal a plan may have, to be no more than `stability_s` worse than the best."""
+    return tuple(
+        value + allowed(goal, stability_s) for goal, value in zip(goals, best.timed.value, strict=True)
+    )
+
+
+def worse_than(one: Candidate, other: Candidate, goals: Sequence[str]) -> tuple[tuple[str, int], ...]:
+    """Return by how many (weighted) seconds a plan is worse than another, by goal; rounded up."""
+    return tuple(
+        (goal, -(-(value - least) // allowed(goal, 1)))
+        for goal, value, least in zip(goals, one.timed.value, other.timed.value, strict=True)
+    )
+
+
+def trades_of(chosen: Candidate, best: Candidate, archive: Archive, goals: Sequence[str]) -> list[Trade]:
     """Return the cheapest ways to move less than the plan chosen does, ``TRADES`` at most.
+
+    Each is what the archive would have chosen, had the stability of the trade been allowed: no promise is
+    made that this very search could not have kept.
 
     Parameters
     ----------
     best
         What stability is counted from.
-    front
+    archive
         Everything that nothing beats.
     """
-    offers = []
-    for one in front:
-        costs = [
-            -(-(value - least) // allowed(goal, 1))
-            for goal, value, least in zip(goals, one.timed.value, best.timed.value, strict=True)
-        ]
-        stability = -(-max(0, *costs) // MINUTE) * MINUTE
-        worse = tuple(
-            (goal, -(-(value - mine) // allowed(goal, 1)))
-            for goal, value, mine in zip(goals, one.timed.value, chosen.timed.value, strict=True)
-        )
-        if any(seconds > 0 for _, seconds in worse) and stability <= DEAREST_S:
-            offers.append(Trade(worse, one.moves, stability))
     found: list[Trade] = []
     fewest = chosen.moves.moved
-    for offer in sorted(offers, key=lambda one: (one.stability_s, one.moves.moved, one.worse_s)):
-        if offer.moves.moved <= fewest - max(LEAST_SPARED, fewest // 10):
-            found.append(offer)
-            fewest = offer.moves.moved
+    for stability_s in sorted({_stability(one, best, goals) for one in archive.front}):
+        if not 0 < stability_s <= DEAREST_S:
+            continue
+        one = archive.chosen(limits_of(best, goals, stability_s))
+        worse = worse_than(one, chosen, goals)
+        clearly = one.moves.moved <= fewest - max(LEAST_SPARED, fewest // 10)
+        if clearly and one.moves.weight < chosen.moves.weight and any(seconds > 0 for _, seconds in worse):
+            found.append(Trade(worse, one.moves, stability_s))
+            fewest = one.moves.moved
     return found[:TRADES]
+
+
+def _stability(one: Candidate, best: Candidate, goals: Sequence[str]) -> int:
+    """Return what has to be allowed for a plan to be among those chosen from, in whole minutes' seconds."""
+    most = max(seconds for _, seconds in worse_than(one, best, goals))
+    return -(-max(0, most) // MINUTE) * MINUTE
 
 
 _WORSE = {

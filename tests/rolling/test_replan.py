@@ -12,6 +12,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
+from shopfloor.bounds.catalogue import lower_bounds
 from shopfloor.errors import NoPlanError
 from shopfloor.journal.entries import Entry
 from shopfloor.journal.events import Journal
@@ -19,6 +20,9 @@ from shopfloor.journal.state import counting
 from shopfloor.model.actuals import Kind, Status
 from shopfloor.model.results import Plan
 from shopfloor.model.shop import Shop
+from shopfloor.openshop.choose import choose
+from shopfloor.openshop.floor.plan import floor_plan
+from shopfloor.openshop.method import Effort
 from shopfloor.pipeline import Options, plan
 from shopfloor.render.tables import plan_json
 from shopfloor.replan.current import current, failed
@@ -28,18 +32,34 @@ from shopfloor.rolling.plan import Replan, replan
 from tests.rolling.shifts import disrupt, hall, issue, listed_plan, opened, play, put, rounds_hall
 
 QUICK = Options(time_limit_s=4)
+AMPLE = Options(time_limit_s=3600)  # never used up by a count of steps
 
 
-def anew(shop: Shop, book: Journal, now_s: int, **more: object) -> Replan:
-    return replan(shop, book.events(), now_s, options=QUICK, **more)  # type: ignore[arg-type]
+def anew(shop: Shop, book: Journal, now_s: int, options: Options = QUICK, **more: object) -> Replan:
+    return replan(shop, book.events(), now_s, options=options, **more)  # type: ignore[arg-type]
+
+
+def by_steps(shop: Shop, options: Options | None = None, **more: object) -> Plan:
+    """A plan that is the same on any machine: by an exact method, else by a count of steps and no clock."""
+    method, choice = choose(shop)
+    if method.reaches_bound:
+        return plan(shop, options, **more)  # type: ignore[arg-type]
+    found = floor_plan(shop, effort=Effort(time_limit_s=AMPLE.time_limit_s), rounds=1)
+    assert found.schedule is not None
+    return Plan(shop, found.schedule, lower_bounds(shop), choice, repeatable=found.repeatable)
+
+
+@pytest.fixture
+def without_clock(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Fresh plans within a replan take a count of steps, too, so that two replans can be compared."""
+    monkeypatch.setattr("shopfloor.rolling.plan.plan_fresh", by_steps)
 
 
 @pytest.mark.parametrize("seed", range(30))
 def test_a_shift_that_goes_wrong_again_and_again_is_replanned_each_time(seed: int) -> None:
     shop = hall(seed)
-    made: Plan | None = listed_plan(shop, seed)
-    if made is None:
-        pytest.skip("this hall never has people enough for one of its operations")
+    made = listed_plan(shop, seed)
+    assert made is not None
     book, now_s = opened(made), 0
     step = max(60, made.makespan_s // 4 // 60 * 60)
     for number in range(3):
@@ -67,34 +87,41 @@ def accounted_for(shop: Shop, book: Journal, now_s: int) -> bool:
     )
 
 
-def undisturbed(shop: Shop, made: Plan, now_s: int) -> Replan:
-    book = opened(made)
-    play(book, made, 0, now_s, 0)
-    return anew(shop, book, now_s)
-
-
 @pytest.mark.parametrize("seed", range(12))
 def test_where_all_goes_as_planned_nothing_moves_and_it_ends_no_later(seed: int) -> None:
+    """The old sequence is always among what is chosen from, however little time there is."""
     shop = hall(seed)
-    made = plan(shop, QUICK) if listed_plan(shop, seed) is not None else None
-    if made is None:
-        pytest.skip("this hall never has people enough for one of its operations")
-    found = undisturbed(shop, made, made.makespan_s // 3 // 60 * 60)
+    made = by_steps(shop)
+    book, now_s = opened(made), made.makespan_s // 3 // 60 * 60
+    play(book, made, 0, now_s, 0)
+    found = anew(shop, book, now_s)
     assert found.plan.makespan_s <= made.makespan_s
     if found.plan.makespan_s == made.makespan_s and found.plan.late_orders() == made.late_orders():
         assert found.moves.moved == 0
         assert found.comparison.counts.keys() <= {"same", "passed"}
 
 
-def test_the_same_journal_gives_the_same_bytes() -> None:
-    shop = hall(5)
-    made = listed_plan(shop, 5)
-    assert made is not None
+def test_the_old_sequence_is_timed_even_if_there_is_no_time() -> None:
+    shop = hall(3)
+    made = by_steps(shop)
+    book = opened(made)
+    play(book, made, 0, 1800, 0)
+    found = anew(shop, book, 1800, Options(time_limit_s=1e-9))
+    assert found.plan.makespan_s <= made.makespan_s
+    assert not found.plan.repeatable
+
+
+@pytest.mark.usefixtures("without_clock")
+@pytest.mark.parametrize("seed", [5, 17])
+def test_the_same_journal_gives_the_same_bytes(seed: int) -> None:
+    shop = hall(seed)
+    made = by_steps(shop)
     book = opened(made)
     play(book, made, 0, 3000, 1, wobble=0.1)
     disrupt(book, shop, 3000, 7)
-    one, two = (plan_json(anew(shop, book, 3000).plan) for _ in range(2))
-    assert one == two
+    one, two = (anew(shop, book, 3000, AMPLE).plan for _ in range(2))
+    assert one.repeatable
+    assert plan_json(one) == plan_json(two)
 
 
 # ---- rounds ------------------------------------------------------------------------------------------
@@ -119,7 +146,8 @@ def test_rounds_go_on_in_the_fewest_that_can_hold_the_rest(seed: int, groups: bo
     assert found.plan.proved_optimal
     assert found.plan.makespan_s == 3600 + 1800 * degree(found.rest.shop)
     assert (found.plan.schedule.round >= 3).all()
-    assert found.moves.moved <= (found.scratch.moved if found.scratch else 10**6)
+    assert found.scratch is not None
+    assert found.moves.weight <= found.scratch.weight
 
 
 @pytest.mark.parametrize("seed", range(4))
@@ -183,20 +211,22 @@ def test_a_round_begins_a_little_later_for_work_that_overruns() -> None:
 # ---- stability ---------------------------------------------------------------------------------------
 
 
-def test_more_stability_never_moves_more_and_never_costs_more_than_it_may() -> None:
+@pytest.mark.parametrize("minutes", [0, 10, 60])
+def test_a_plan_is_no_worse_than_the_best_its_own_search_found_by_more_than_it_may(minutes: int) -> None:
+    """What a search finds depends on its machine; what it makes of that does not."""
     shop = hall(17)
-    made = plan(shop, QUICK)
+    made = by_steps(shop)
     book = opened(made)
     play(book, made, 0, 1800, 3, wobble=0.2)
     put(book, [Entry(Kind.ADDED, 1800, order="HOT", data={"operations": [("M0", 1800)], "due_s": 4000})])
-    results = [anew(shop, book, 1800, stability_s=minutes * 60) for minutes in (0, 10, 60)]
-    weights = [one.moves.weight for one in results]
-    assert weights == sorted(weights, reverse=True)
-    assert results[1].plan.makespan_s <= results[0].plan.makespan_s + 600
-    assert results[2].plan.makespan_s <= results[0].plan.makespan_s + 3600
-    for trade in results[0].trades:
-        assert trade.moves.moved < results[0].moves.moved
-        assert trade.stability_s > 0
+    found = anew(shop, book, 1800, stability_s=minutes * 60)
+    assert all(seconds <= minutes * 60 for _, seconds in found.worse_s)
+    if not minutes:
+        assert not any(seconds for _, seconds in found.worse_s)
+    for trade in found.trades:
+        assert trade.moves.moved < found.moves.moved
+        assert trade.moves.weight < found.moves.weight
+        assert minutes * 60 < trade.stability_s
 
 
 def test_what_should_have_begun_and_is_not_recorded_is_told_of() -> None:

@@ -8,7 +8,7 @@ from hypothesis import strategies as st
 from shopfloor.replan.movement import Moves
 from shopfloor.rolling.bench import Timed
 from shopfloor.rolling.search import Archive, Candidate
-from shopfloor.rolling.trade import Trade, sentences, trade_sentence, trades_of
+from shopfloor.rolling.trade import Trade, limits_of, sentences, trade_sentence, trades_of, worse_than
 
 MIN = 60
 GOALS = ("makespan", "tardiness")
@@ -25,9 +25,7 @@ KEYS = st.tuples(st.integers(0, 3), st.integers(0, 3), st.integers(0, 3))
 
 @given(st.lists(KEYS, min_size=1, max_size=12))
 def test_the_archive_holds_exactly_what_nothing_beats(keys: list[tuple[int, int, int]]) -> None:
-    archive = Archive()
-    for key in keys:
-        archive.offer(candidate(*key))
+    archive = archive_of(keys)
     kept = {
         (one.timed.makespan_s // MIN, one.timed.tardiness // MIN // 1000, one.moves.moved)
         for one in archive.front
@@ -42,9 +40,7 @@ def test_the_archive_holds_exactly_what_nothing_beats(keys: list[tuple[int, int,
 
 
 def test_the_best_ends_first_and_the_choice_moves_least_within_its_limits() -> None:
-    archive = Archive()
-    for one in (candidate(100, 0, 17), candidate(102, 0, 3), candidate(100, 5, 9), candidate(130, 0, 0)):
-        archive.offer(one)
+    archive = archive_of([(100, 0, 17), (102, 0, 3), (100, 5, 9), (130, 0, 0)])
     best = archive.best()
     assert (best.timed.makespan_s, best.moves.moved) == (100 * MIN, 17)
     assert archive.chosen(best.timed.value).moves.moved == 17
@@ -52,17 +48,51 @@ def test_the_best_ends_first_and_the_choice_moves_least_within_its_limits() -> N
     assert archive.chosen((100 * MIN, 5 * MIN * 1000)).moves.moved == 9
 
 
+@given(st.lists(KEYS, min_size=1, max_size=12), st.lists(st.integers(0, 4), min_size=2, max_size=4))
+def test_the_more_is_allowed_the_less_is_moved_and_never_more_is_paid(
+    keys: list[tuple[int, int, int]], minutes: list[int]
+) -> None:
+    """Of one archive: what moves least within wider limits never moves more, and keeps to the limits."""
+    archive = archive_of(keys)
+    best = archive.best()
+    chosen = [archive.chosen(limits_of(best, GOALS, allowed * MIN)) for allowed in sorted(minutes)]
+    weights = [one.moves.weight for one in chosen]
+    assert weights == sorted(weights, reverse=True)
+    for one, allowed in zip(chosen, sorted(minutes), strict=True):
+        assert all(seconds <= allowed * MIN for _, seconds in worse_than(one, best, GOALS))
+    assert archive.chosen(limits_of(best, GOALS, 0)).timed.value == best.timed.value
+
+
+@given(st.lists(KEYS, min_size=1, max_size=12), st.integers(0, 2))
+def test_a_trade_is_what_would_be_chosen_for_its_stability(
+    keys: list[tuple[int, int, int]], minutes: int
+) -> None:
+    archive = archive_of([(finish, late, 10 * moved) for finish, late, moved in keys])
+    best = archive.best()
+    chosen = archive.chosen(limits_of(best, GOALS, minutes * MIN))
+    found = trades_of(chosen, best, archive, GOALS)
+    for trade in found:
+        then = archive.chosen(limits_of(best, GOALS, trade.stability_s))
+        assert (trade.moves, trade.worse_s) == (then.moves, worse_than(then, chosen, GOALS))
+        assert trade.stability_s > minutes * MIN
+        assert max(seconds for _, seconds in trade.worse_s) > 0
+    moved = [chosen.moves.moved, *(trade.moves.moved for trade in found)]
+    assert moved == sorted(set(moved), reverse=True)
+
+
+def archive_of(keys: list[tuple[int, int, int]]) -> Archive:
+    archive = Archive()
+    for key in keys:
+        archive.offer(candidate(*key))
+    return archive
+
+
 def test_trades_are_the_cheapest_ways_to_move_clearly_less() -> None:
-    best = candidate(100, 0, 20)
-    front = [
-        best,
-        candidate(101, 0, 19),
-        candidate(102, 0, 12),
-        candidate(103, 1, 12),
-        candidate(110, 0, 3),
-        candidate(900, 0, 0),
-    ]
-    found = trades_of(best, best, front, GOALS)
+    archive = archive_of(
+        [(100, 0, 20), (101, 0, 19), (102, 0, 12), (103, 1, 12), (110, 0, 3), (900, 0, 0)],
+    )
+    best = archive.best()
+    found = trades_of(best, best, archive, GOALS)
     assert [(trade.moves.moved, trade.stability_s // MIN) for trade in found] == [(12, 2), (3, 10)]
 
 
