@@ -47,11 +47,24 @@ class Figures:
         """The crew of a name, and the operations it attends that cannot start before `begin`."""
         for crew in self.shop.crews:
             if crew.id == name:
-                if crew.levels or crew.heads < 1:
-                    raise NoProofError(f"counts on the heads of crew {name}, which are not always there")
+                if crew.heads < 1:
+                    raise NoProofError(f"counts on the heads of crew {name}, which has none")
                 theirs = np.array([machine.crew == name for machine in self.shop.machines], bool)
                 return crew, self.from_on(np.flatnonzero(theirs[self.machine]), begin)
         raise NoProofError(f"names crew {name!r}, which the shop does not have")
+
+    def attended_until(self, crew: Crew, begin: int, head_seconds: int) -> int:
+        """When a crew has worked so many head-seconds from `begin` on, all its heads at once."""
+        breaks = [(each.start_s, each.end_s, 0) for each in self.shop.breaks]
+        edges = {moment for start, end, _ in (*crew.levels, *breaks) for moment in (start, end)}
+        moment = begin
+        for edge in sorted(edge for edge in edges if edge > begin):
+            heads = _there(crew, breaks, moment)
+            if head_seconds <= heads * (edge - moment):
+                return moment + per_unit(head_seconds, heads) if head_seconds else moment
+            head_seconds -= heads * (edge - moment)
+            moment = edge
+        return moment + per_unit(head_seconds, crew.heads)
 
     def only_set_up(self, operations: Ints) -> Bools:
         """Whether each operation is attended only during its set-up."""
@@ -138,6 +151,14 @@ class Figures:
     @cached_property
     def _by_machine(self) -> Ints:
         return np.argsort(self.machine, kind="stable")
+
+
+def _there(crew: Crew, breaks: list[tuple[int, int, int]], moment: int) -> int:
+    """Return how many heads of a crew are at work at a moment."""
+    for start, end, heads in (*breaks, *crew.levels):
+        if start <= moment < end:
+            return heads
+    return crew.heads
 
 
 def _find(index: Mapping[str, int], name: str, what: str) -> int:

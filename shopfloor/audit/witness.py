@@ -116,17 +116,22 @@ def _longest(figures: Figures, witness: Mapping[str, Any]) -> int:
 
 
 def _crew(figures: Figures, witness: Mapping[str, Any]) -> int:
-    """What a crew cannot attend before `from_s` takes its head-seconds over the crew's heads."""
+    """What a crew cannot attend before `from_s` takes its head-seconds over the heads that are there.
+
+    Each of these leaves at least `tail_s` to do: its run, where only the set-up is attended, and what its
+    order has to do after it.
+    """
     begin = _whole(witness, "from_s")
+    tail = _whole(witness, "tail_s") if "tail_s" in witness else 0
     crew, operations = figures.attended(_name(witness, "crew"), begin)
-    seconds = np.where(
-        figures.only_set_up(operations),
-        figures.shop.operations.setup_s[operations],
-        figures.seconds[operations],
-    )
-    load = int((seconds * figures.shop.operations.heads[operations]).sum())
+    setup, whole = figures.shop.operations.setup_s[operations], figures.seconds[operations]
+    seconds = np.where(figures.only_set_up(operations), setup, whole)
+    leaving = figures.heads_and_tails[1][operations] + whole - seconds >= tail
+    if not leaving.any():
+        raise NoProofError(f"counts no operation: none leaves {tail} s to do")
+    load = int((seconds * figures.shop.operations.heads[operations])[leaving].sum())
     _agree(witness, "head_seconds", load, "the crew's work is")
-    return figures.breaks.finish(begin, per_unit(load, crew.heads))
+    return figures.breaks.finish(figures.attended_until(crew, begin, load), tail)
 
 
 def _crew_rounds(figures: Figures, witness: Mapping[str, Any]) -> int:
@@ -137,6 +142,8 @@ def _crew_rounds(figures: Figures, witness: Mapping[str, Any]) -> int:
     """
     begin, length = _whole(witness, "from_s"), _whole(witness, "round_s")
     crew, operations = figures.attended(_name(witness, "crew"), begin)
+    if crew.levels:
+        raise NoProofError(f"counts on the heads of crew {crew.id}, which are not always there")
     figures.demand_rounds(operations, length, f"crew {crew.id}")
     if figures.only_set_up(operations).any():
         raise NoProofError("counts whole rounds, but some are attended only while they are set up")

@@ -39,6 +39,7 @@ CREW = shop(
     [("TQ-101", "Wash", 30, 1), ("TQ-101", "CMM", 20, 2), ("TQ-102", "CMM", 45)],
     crew={"Blue": 2},
 )
+SHORT_CREW = replace(CREW, crews=(replace(CREW.crews[0], levels=((30 * MINUTE, 60 * MINUTE, 1),)),))
 EQUAL_CREW = shop(
     {"Wash": 1, "CMM": 1, "Test": 1},
     [("TQ-101", "Wash", 30), ("TQ-102", "CMM", 30), ("TQ-103", "Test", 30)],
@@ -127,6 +128,17 @@ BY_HAND: list[tuple[str, Shop, dict[str, Any], int]] = [
     ("crew", CREW, {"crew": "Blue", "from_s": 1800, "head_seconds": 1200}, 40),
     # only 10 min of each are set-up, and only that is attended
     ("crew", SET_UP_CREW, {"crew": "Blue", "from_s": 0, "head_seconds": 1800}, 15),
+    # the two longest: 20 of set-up for two heads, and at least 35 to run without them
+    ("crew", SET_UP_CREW, {"crew": "Blue", "from_s": 0, "tail_s": 2100, "head_seconds": 1200}, 10 + 35),
+    # two heads, one from 06:30 to 07:00: 60 + 30 of the 95, then 5 for two
+    ("crew", SHORT_CREW, {"crew": "Blue", "from_s": 0, "head_seconds": 5700}, 62.5),
+    # the same with tea from 06:45: 60 + 15, then 20 for two from 07:00 on
+    (
+        "crew",
+        with_break(SHORT_CREW, pausing=True),
+        {"crew": "Blue", "from_s": 0, "head_seconds": 5700},
+        70,
+    ),
     # two at once, so three take two rounds
     (
         "crew rounds",
@@ -257,8 +269,20 @@ TAMPERED: list[tuple[str, Shop, dict[str, Any], str]] = [
     ),
     (
         "crew",
-        replace(CREW, crews=(replace(CREW.crews[0], levels=((0, 60, 3),)),)),
+        replace(CREW, crews=(replace(CREW.crews[0], heads=0),)),
         {"crew": "Blue", "from_s": 0, "head_seconds": 5700},
+        "counts on the heads of crew Blue, which has none",
+    ),
+    (
+        "crew",
+        CREW,
+        {"crew": "Blue", "from_s": 0, "tail_s": 1201, "head_seconds": 5700},
+        "counts no operation: none leaves 1201 s to do",
+    ),
+    (
+        "crew rounds",
+        replace(EQUAL_CREW, crews=(replace(EQUAL_CREW.crews[0], levels=((0, 60, 3),)),)),
+        {"crew": "Blue", "from_s": 0, "operations": 3, "at_once": 2, "round_s": 1800},
         "counts on the heads of crew Blue, which are not always there",
     ),
     (

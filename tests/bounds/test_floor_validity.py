@@ -34,3 +34,18 @@ def test_a_crew_that_goes_on_while_a_machine_pauses_has_no_rounds() -> None:
     values = [(bound.kind, bound.value_s) for bound in lower_bounds(shop)]
     assert values[0] == ("machine", 3)
     assert ("crew", 3) in values
+
+
+def test_a_crew_s_heads_count_while_they_are_there() -> None:
+    """Two heads, one of them away for the first three seconds: four seconds of work take four, not two."""
+    machines = tuple(Machine(name, crew="Blue") for name in "ABCD")
+    shop = Shop(
+        machines, Orders(("J", "K", "L", "N")), Operations([0, 1, 2, 3], [0, 1, 2, 3], [1, 1, 1, 1]),
+        crews=(Crew("Blue", 2, ((0, 3, 1),)),),
+    )  # fmt: skip
+    best = lower_bounds(shop)[0]
+    assert (best.kind, best.value_s) == ("crew", 4)
+    assert best.sentence == (
+        "The 1 to 2 heads of crew Blue have 4 s of one head's work, so nothing can end before 0:00:04."
+    )
+    assert least_makespan(shop) == 4
