@@ -31,8 +31,8 @@ RULES = {
     "heads": (r"^heads = 2\n", "fitters", DOWN),
     "attended": (r'attended = "set-up".*?\n', "fitters", UP),
 }
-# Rules without which there are more plans: every plan of the hall is one of the freer hall. `broken` is the
-# rule of the audit that a plan made without it breaks; in this hall the crew and the first family hinder nothing.
+# Rules without which there are more plans: every plan of the hall is one of the freer hall. The second entry
+# is what a plan made without the rule breaks, if anything; here crew and first family hinder nothing.
 FREER = {
     "closure": (RULES["closure"][0], "closure"),
     "changeovers": (RULES["changeovers"][0], "changeover"),
