@@ -4,19 +4,13 @@ from __future__ import annotations
 
 import time
 from pathlib import Path
-from typing import TYPE_CHECKING, Annotated, Any
+from typing import Annotated, Any
 
 import typer
 
 from shopfloor.cli import common
+from shopfloor.cli.files import write_plan
 from shopfloor.settings import SETTINGS
-
-if TYPE_CHECKING:
-    from shopfloor.model.results import Plan
-
-# Rows of a plan; beyond, plan.csv serves: a workbook takes longer to write than the plan to make, and
-# nobody prints a hundred thousand sheets.
-WORKBOOK_UP_TO, SHEETS_UP_TO = 50_000, 100_000
 
 TIME_LIMIT: Any = SETTINGS["time-limit"].default
 WORKERS: Any = SETTINGS["workers"].default
@@ -93,7 +87,7 @@ def plan(
         )
     report.close()
     solve_s = time.perf_counter() - began
-    written = _write(made, out, stamp, codes, xlsx, ics) if out is not None else []
+    written = [] if out is None else write_plan(made, out, stamp=stamp, codes=codes, xlsx=xlsx, ics=ics)
     if as_json:
         from shopfloor.render.tables import summary
 
@@ -107,32 +101,3 @@ def plan(
             lines += ["", text.wrap(f"Wrote {', '.join(str(path) for path in written)}.")]
         print("\n".join([*lines, "", text.wrap(text.CARE)]))
     raise typer.Exit(common.NO if made.fits_shift is False else common.DONE)
-
-
-def _write(
-    made: Plan, out: Path, stamp: str | None, codes: str | None, xlsx: bool, ics: str | None
-) -> list[Path]:
-    """Make every file in memory, then write them all or none."""
-    from shopfloor.render.dispatch import dispatch_page
-    from shopfloor.render.gantt import gantt_page
-    from shopfloor.render.save import save
-    from shopfloor.render.tables import plan_csv, plan_json
-
-    files: dict[str, bytes | str] = {
-        "plan.json": plan_json(made),
-        "plan.csv": plan_csv(made),
-        "gantt.html": gantt_page(made, stamp=stamp),
-    }
-    if len(made.schedule) <= SHEETS_UP_TO:
-        files["dispatch.html"] = dispatch_page(made, stamp=stamp, codes=codes)
-    if xlsx and len(made.schedule) <= WORKBOOK_UP_TO:
-        from shopfloor.render.workbook import plan_xlsx
-
-        files["plan.xlsx"] = plan_xlsx(made, stamp=stamp)
-    if ics is not None:
-        from shopfloor.render import ics as calendars
-
-        files |= (
-            {"plan.ics": calendars.plan_ics(made)} if ics == "plan" else calendars.machine_calendars(made)
-        )
-    return save(out, files)

@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 
 from shopfloor.cli import common
+from shopfloor.cli.files import write_plan
 from shopfloor.settings import SETTINGS
 
 if TYPE_CHECKING:
@@ -133,7 +134,11 @@ def replan(
         )
     report.close()
     solve_s = time.perf_counter() - began
-    files = _write(found, out, stamp, codes, xlsx) if out is not None else []
+    files = (
+        []
+        if out is None
+        else write_plan(found.plan, out, stamp=stamp, codes=codes, xlsx=xlsx, moved=found.comparison)
+    )
     entry = _issue(journal, found, now_s, who) if issue else None
     if as_json:
         data = {**_data(found, files, solve_s), "issued": entry}
@@ -225,37 +230,7 @@ def _goals(given: str | None, events: Sequence[Event], now_s: int) -> tuple[str,
     return Options().objective
 
 
-# ---- files and the journal -------------------------------------------------------------------------
-
-
-def _write(found: Replan, out: Path, stamp: str | None, codes: str | None, xlsx: bool) -> list[Path]:
-    """Make every file in memory, then write them all or none."""
-    import hashlib
-    from dataclasses import replace
-
-    from shopfloor.cli.plan import SHEETS_UP_TO, WORKBOOK_UP_TO
-    from shopfloor.render.compare_page import compare_page
-    from shopfloor.render.dispatch import dispatch_page
-    from shopfloor.render.gantt import gantt_page
-    from shopfloor.render.save import save
-    from shopfloor.render.tables import plan_csv, plan_json
-
-    made, text = found.plan, plan_json(found.plan)
-    digest = hashlib.sha256(text.encode("utf-8")).hexdigest()
-    moved = replace(found.comparison, b=replace(found.comparison.b, name="plan.json", sha256=digest))
-    files: dict[str, bytes | str] = {
-        "plan.json": text,
-        "plan.csv": plan_csv(made),
-        "gantt.html": gantt_page(made, stamp=stamp),
-        "moves.html": compare_page(moved, made.shop.clock),
-    }
-    if len(made.schedule) <= SHEETS_UP_TO:
-        files["dispatch.html"] = dispatch_page(made, stamp=stamp, codes=codes)
-    if xlsx and len(made.schedule) <= WORKBOOK_UP_TO:
-        from shopfloor.render.workbook import plan_xlsx
-
-        files["plan.xlsx"] = plan_xlsx(made, stamp=stamp)
-    return save(out, files)
+# ---- the journal -------------------------------------------------------------------------------------
 
 
 def _issue(path: Path, found: Replan, now_s: int, who: str) -> int:
