@@ -37,7 +37,7 @@ def audit(
         common.refuse(error, as_json)
     from shopfloor.audit.schedule import audit as audit_plan
     from shopfloor.audit.witness import audit_bounds
-    from shopfloor.render.text import wrap
+    from shopfloor.render.lines import wrap
 
     violations = audit_plan(reading.shop, stated)
     notes = audit_bounds(reading.shop, stated)[1]

@@ -81,7 +81,7 @@ def print_json(data: Any) -> None:
 
 def print_notices(notices: tuple[Fault, ...], quiet: bool) -> None:
     """Print what was noticed on standard error, so that results stay clean."""
-    from shopfloor.render.text import wrap
+    from shopfloor.render.lines import wrap
 
     if not quiet:
         for notice in notices:
@@ -90,7 +90,7 @@ def print_notices(notices: tuple[Fault, ...], quiet: bool) -> None:
 
 def refuse(error: InputError, as_json: bool) -> NoReturn:
     """Print every fault of an input and leave with the exit code for bad input."""
-    from shopfloor.render.text import fault_lines
+    from shopfloor.render.lines import fault_lines
 
     if as_json:
         faults = [fault_data(fault) for fault in error.faults]

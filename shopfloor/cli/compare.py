@@ -13,7 +13,7 @@ from shopfloor.cli import common
 
 if TYPE_CHECKING:
     from shopfloor.errors import InputError
-    from shopfloor.model.calendar import Clock
+    from shopfloor.model.clock import Clock
     from shopfloor.model.results import Lateness
     from shopfloor.replan.compare import Side
 
@@ -70,7 +70,7 @@ def load_side(path: Path) -> tuple[Side, Clock]:
         With every fault of the file; plan.csv is refused, since it says neither bound nor due times.
     """
     from shopfloor.journal.pieces import clock_of
-    from shopfloor.model.calendar import Clock
+    from shopfloor.model.clock import Clock
     from shopfloor.read.plan import MAX_PLAN_BYTES
     from shopfloor.read.plan_json import is_json, read_plan_json
     from shopfloor.read.rules import Findings

@@ -14,7 +14,7 @@ if TYPE_CHECKING:
 
     from shopfloor.journal.events import Journal
     from shopfloor.model.actuals import Event
-    from shopfloor.model.calendar import Clock
+    from shopfloor.model.clock import Clock
     from shopfloor.model.results import Fault
     from shopfloor.read.orders import Reading
     from shopfloor.replan.handover import Handover

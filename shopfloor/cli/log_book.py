@@ -83,7 +83,7 @@ def _issued(plan: str, begun: Mapping[Key, int]) -> IssuedPlan:
     """Read plan.json; every fault of it is raised together."""
     from shopfloor.errors import InputError
     from shopfloor.journal.pieces import clock_of, issued_plan
-    from shopfloor.model.calendar import Clock
+    from shopfloor.model.clock import Clock
     from shopfloor.model.results import Fault
     from shopfloor.read.plan import MAX_PLAN_BYTES
     from shopfloor.read.plan_json import is_json, read_plan_json
@@ -280,7 +280,7 @@ def show(
     from shopfloor.journal.moments import read, say
     from shopfloor.journal.state import state
     from shopfloor.render import log_text
-    from shopfloor.render.text import wrap
+    from shopfloor.render.lines import wrap
 
     with shared.open_journal(journal, write=False) as opened:
         clock = opened.clock

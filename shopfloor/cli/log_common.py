@@ -19,7 +19,7 @@ if TYPE_CHECKING:
     from shopfloor.journal.entries import Entry
     from shopfloor.journal.errors import EntryError, RefusedError
     from shopfloor.journal.events import Journal, Recorded, Recorder
-    from shopfloor.model.calendar import Clock
+    from shopfloor.model.clock import Clock
 
 JournalOption = Annotated[
     Path | None,
@@ -137,7 +137,7 @@ def seconds_of(text: str) -> int:
     """Read minutes, such as 12.5 or 0:12, as whole seconds."""
     from shopfloor.journal.errors import EntryError
     from shopfloor.read import cells
-    from shopfloor.read.rules import RULES
+    from shopfloor.read.wording import RULES
 
     try:
         return cells.nearest_second(cells.length(text.strip(), cells.Marks(comma=True, sure=frozenset(".,"))))
@@ -244,7 +244,7 @@ def refuse_entry(error: RefusedError, as_json: bool) -> NoReturn:
 
 def refusal_lines(error: RefusedError) -> list[str]:
     """Return every reason on lines of its own, and how to insist where that is possible."""
-    from shopfloor.render.text import cut, wrap
+    from shopfloor.render.lines import cut, wrap
 
     lines = [wrap(f"Refused: {cut(one.text(), 2_000)}.") for one in error.refusals]
     final = any(one.final for one in error.refusals)
@@ -264,7 +264,7 @@ def refuse_faults(
     faults: Iterable[Any], as_json: bool, *, code: int = common.BAD_INPUT, count: bool = False
 ) -> NoReturn:
     """Print faults and leave; nothing was recorded."""
-    from shopfloor.render.text import fault_lines
+    from shopfloor.render.lines import fault_lines
 
     listed = list(faults)
     if as_json:

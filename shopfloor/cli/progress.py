@@ -10,7 +10,7 @@ from collections.abc import Iterator
 from contextlib import contextmanager
 from typing import TYPE_CHECKING, Any
 
-from shopfloor.model.calendar import Clock, duration
+from shopfloor.model.clock import Clock, duration
 
 if TYPE_CHECKING:
     from shopfloor.openshop.method import Progress

@@ -230,7 +230,7 @@ def _goals(given: str | None, events: Sequence[Event], now_s: int) -> tuple[str,
     return Options().objective
 
 
-# ---- the journal -------------------------------------------------------------------------------------
+# ---- the journal -----------------------------------------------------------------------------------
 
 
 def _issue(path: Path, found: Replan, now_s: int, who: str) -> int:
@@ -256,7 +256,7 @@ def _issue(path: Path, found: Replan, now_s: int, who: str) -> int:
 
 def _lines(found: Replan, state: ShiftState, files: list[Path], entry: int | None) -> list[str]:
     from shopfloor.model.actuals import Status
-    from shopfloor.model.calendar import duration
+    from shopfloor.model.clock import duration
     from shopfloor.render import compare_text, text
     from shopfloor.replan.movement import MOVED_S
 

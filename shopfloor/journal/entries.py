@@ -11,7 +11,7 @@ from typing import Any
 from shopfloor import settings
 from shopfloor.journal.errors import EntryError
 from shopfloor.model.actuals import Event, Kind
-from shopfloor.model.calendar import DAY, MINUTE
+from shopfloor.model.clock import DAY, MINUTE
 
 MAX_HEADS = 10_000
 MAX_MOMENT_S = 366 * DAY  # a shift's journal tells of a shift, not of years

@@ -18,7 +18,7 @@ from shopfloor.journal.pieces import IssuedPlan
 from shopfloor.journal.record import Recorded, Recorder, Writer, write
 from shopfloor.journal.state import MINIMUM_LEFT_S, state
 from shopfloor.model.actuals import Event, Key, Kind, ShiftState
-from shopfloor.model.calendar import Clock
+from shopfloor.model.clock import Clock
 
 
 class Journal:

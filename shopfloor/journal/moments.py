@@ -5,7 +5,7 @@ from __future__ import annotations
 from datetime import UTC, datetime
 
 from shopfloor.journal.errors import EntryError
-from shopfloor.model.calendar import Clock, elapsed
+from shopfloor.model.clock import Clock, elapsed
 
 
 def now_s(clock: Clock, wall: datetime) -> int | None:

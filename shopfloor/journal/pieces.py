@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any
 from zoneinfo import ZoneInfo
 
 from shopfloor.model.actuals import Key, Piece
-from shopfloor.model.calendar import Clock
+from shopfloor.model.clock import Clock
 
 if TYPE_CHECKING:
     from shopfloor.model.stated import StatedPlan

@@ -16,7 +16,7 @@ from shopfloor.journal.migrations import OPEN
 from shopfloor.journal.rules import BACK_SLACK_S, Judge, refusal
 from shopfloor.journal.walk import WORK, Phase, walk
 from shopfloor.model.actuals import Event, Key, Kind, Piece
-from shopfloor.model.calendar import Clock, duration
+from shopfloor.model.clock import Clock, duration
 
 
 @dataclass(frozen=True, slots=True)

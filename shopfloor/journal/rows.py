@@ -10,7 +10,7 @@ from shopfloor.journal import moments
 from shopfloor.journal.entries import Entry, checked
 from shopfloor.journal.errors import EntryError, Refusal
 from shopfloor.model.actuals import Kind
-from shopfloor.model.calendar import Clock
+from shopfloor.model.clock import Clock
 from shopfloor.model.results import Fault
 
 # Column by column, what a table of events may have; the first two it must.

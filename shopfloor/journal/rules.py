@@ -19,7 +19,7 @@ from shopfloor.journal.lookup import Clash, Lookup
 from shopfloor.journal.migrations import OPEN
 from shopfloor.journal.walk import WORK, walk
 from shopfloor.model.actuals import Event, Key, Kind
-from shopfloor.model.calendar import DAY, HOUR, MINUTE, Clock, duration
+from shopfloor.model.clock import DAY, HOUR, MINUTE, Clock, duration
 
 FUTURE_SLACK_S = MINUTE  # a time is typed to the minute, and clocks differ
 BACK_SLACK_S = 5 * MINUTE  # a clock set right by less than this needs nobody's attention

@@ -10,7 +10,7 @@ from fractions import Fraction
 from typing import Any
 
 from shopfloor import settings
-from shopfloor.model.calendar import DAY, MINUTE, Clock
+from shopfloor.model.clock import DAY, MINUTE, Clock
 from shopfloor.read.forms import ERROR_VALUES, NOT_CALCULATED
 
 FAR_YEARS = 10  # a release or due time further from the shift than this has a mistyped year

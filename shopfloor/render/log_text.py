@@ -9,8 +9,8 @@ from collections.abc import Callable, Iterable, Sequence
 from typing import Any
 
 from shopfloor.model.actuals import Event, Kind, PieceState, ShiftState, Status, Stretch
-from shopfloor.model.calendar import MINUTE, duration, minutes_text
-from shopfloor.render.text import cut, wrap
+from shopfloor.model.clock import MINUTE, duration, minutes_text
+from shopfloor.render.lines import cut, wrap
 
 Say = Callable[[int], str]
 NAME = 24  # characters of a name that a line has room for

@@ -4,20 +4,22 @@ from __future__ import annotations
 
 import math
 import textwrap
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 
 import numpy as np
 
 from shopfloor.model.calendar import duration
-from shopfloor.model.results import Bound, Fault, Plan
+from shopfloor.model.results import Bound, Plan
 from shopfloor.model.shop import Closure, Crew, Machine, Shop
 from shopfloor.render.heads import crew_use, head_time_s
 from shopfloor.render.html import CARE_NOTICE
+from shopfloor.render.lines import WIDTH
+from shopfloor.render.lines import cut as cut
+from shopfloor.render.lines import fault_lines as fault_lines
+from shopfloor.render.lines import wrap as wrap
 from shopfloor.render.runs import Runs
 from shopfloor.render.shut import HALL_BREAK, NO_REASON
-from shopfloor.settings import MAX_FAULTS_SHOWN
 
-WIDTH = 80
 BAR = 30
 ORDERS_SHOWN = 5
 LATE_SHOWN = 8
@@ -26,23 +28,6 @@ CREWS_SHOWN = 5
 LISTED = 5
 
 CARE = CARE_NOTICE  # one wording for pages, sheets and the terminal
-
-
-def wrap(text: str, indent: int = 0) -> str:
-    """Fold a sentence to the width of the terminal, further lines indented by two more."""
-    return textwrap.fill(
-        text,
-        WIDTH,
-        initial_indent=" " * indent,
-        subsequent_indent=" " * (indent + 2),
-        break_on_hyphens=False,
-    )
-
-
-def cut(text: str, width: int) -> str:
-    """Shorten a name to `width` characters; control characters never reach the terminal."""
-    clean = "".join(c if c.isprintable() else "?" for c in text)
-    return clean if len(clean) <= width else clean[: width - 1] + "…"
 
 
 def shift_line(shop: Shop) -> str:
@@ -285,12 +270,3 @@ def late_lines(plan: Plan) -> list[str]:
     more = f", and {len(late) - LATE_SHOWN} more" if len(late) > LATE_SHOWN else ""
     noun = "1 order is late" if len(late) == 1 else f"{len(late)} orders are late"
     return [wrap(f"{noun}: {worst}{more}.")]
-
-
-def fault_lines(faults: Iterable[Fault]) -> list[str]:
-    """Return every fault on lines of its own, and how many were left out when there are very many."""
-    listed = list(faults)
-    lines = [wrap(cut(fault.text(), 2_000)) for fault in listed[:MAX_FAULTS_SHOWN]]
-    if len(listed) > MAX_FAULTS_SHOWN:
-        lines.append(f"… and {len(listed) - MAX_FAULTS_SHOWN:,} more.")
-    return lines
