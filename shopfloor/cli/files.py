@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import hashlib
-from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -52,6 +50,9 @@ def write_plan(
         "gantt.html": gantt_page(made, stamp=stamp),
     }
     if moved is not None:
+        import hashlib
+        from dataclasses import replace
+
         from shopfloor.render.compare_page import compare_page
 
         digest = hashlib.sha256(text.encode("utf-8")).hexdigest()

@@ -13,13 +13,12 @@ from shopfloor.cli import common
 from shopfloor.cli import log_common as shared
 
 if TYPE_CHECKING:
-    from collections.abc import Callable, Mapping
+    from collections.abc import Callable
 
     from shopfloor.journal.events import Journal
     from shopfloor.journal.pieces import IssuedPlan
     from shopfloor.journal.rows import Rows
     from shopfloor.journal.times import Family, Worked
-    from shopfloor.model.actuals import Key
 
 SHOWN = 10
 
@@ -48,7 +47,7 @@ def open_plan(
     path = shared.journal_path(journal)
     try:
         if not path.exists():
-            issued = _issued(plan, {})
+            issued = _issued(plan)
             made = Journal.create(path, issued, shared.recorder(issued.clock), who=who)
             done, opened = Recorded(made.plan()), made
         else:
@@ -63,26 +62,34 @@ def open_plan(
 
 
 def _again(journal: Journal, plan: str, *, again: bool, at: str | None, who: str, as_json: bool) -> Any:
+    from dataclasses import replace
+
     from shopfloor.journal.errors import Refusal, RefusedError
     from shopfloor.journal.events import Recorded
     from shopfloor.journal.moments import read
 
-    issued, force = _issued(plan, journal.begun()), journal.plan()
+    issued, force = _issued(plan, journal), journal.plan()
     if force.data["sha256"] == issued.sha256:
         return Recorded(force, repeat=True)
+    in_force = f"{force.data['name']} {force.data['sha256'][:8]}"
     if not again:
-        problem = f"{journal.path} has another plan in force, {force.data['name']} {force.data['sha256'][:8]}"
+        problem = f"{journal.path} has another plan in force, {in_force}"
         advice = "choose another file for a new shift, or add --again to issue this plan in the same shift"
         shared.refuse_entry(RefusedError([Refusal(0, "other-plan", problem, advice, final=True)]), as_json)
     by = shared.recorder(journal.clock)
     at_s = None if at is None else read(journal.clock, at, by.now_s)
-    return journal.issue(issued, by, at_s=at_s, who=who)
+    done = journal.issue(issued, by, at_s=at_s, who=who)
+    parent = issued.parent
+    if parent and parent != force.data["sha256"]:
+        note = f"it was made to follow the plan {parent[:8]}, not {in_force}, which was in force until now"
+        return replace(done, notes=(*done.notes, f"{note}; compare the two, or replan"))
+    return done
 
 
-def _issued(plan: str, begun: Mapping[Key, int]) -> IssuedPlan:
-    """Read plan.json; every fault of it is raised together."""
+def _issued(plan: str, journal: Journal | None = None) -> IssuedPlan:
+    """Read plan.json, to be issued in a journal or to begin one; every fault of it is raised together."""
     from shopfloor.errors import InputError
-    from shopfloor.journal.pieces import clock_of, issued_plan
+    from shopfloor.journal.pieces import clock_of, issued_plan, made_at
     from shopfloor.model.clock import Clock
     from shopfloor.model.results import Fault
     from shopfloor.read.plan import MAX_PLAN_BYTES
@@ -114,7 +121,8 @@ def _issued(plan: str, begun: Mapping[Key, int]) -> IssuedPlan:
         raise fault(
             "plan-row-impossible", "ends before it starts, or has no unit", advice, row, "assignments"
         )
-    return issued_plan(stated, head, sha256=taken.sha256, name=taken.name, begun=begun)
+    known = () if journal is None else journal.known(made_at(head))
+    return issued_plan(stated, head, sha256=taken.sha256, name=taken.name, known=known)
 
 
 # ---- many at once ------------------------------------------------------------------------------------

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import sqlite3
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from contextlib import contextmanager
 from datetime import datetime
 from pathlib import Path
@@ -17,7 +17,7 @@ from shopfloor.journal.errors import JournalError, Refusal, RefusedError
 from shopfloor.journal.pieces import IssuedPlan
 from shopfloor.journal.record import Recorded, Recorder, Writer, write
 from shopfloor.journal.state import MINIMUM_LEFT_S, state
-from shopfloor.model.actuals import Event, Key, Kind, ShiftState
+from shopfloor.model.actuals import Event, Kind, PieceState, ShiftState
 from shopfloor.model.clock import Clock
 
 
@@ -202,10 +202,9 @@ class Journal:
         with file.in_words(self.path, "read"):
             return self._lookup.order_named(code), self._lookup.machine_named(code)
 
-    def begun(self) -> Mapping[Key, int]:
-        """Return when each operation under way or done was started, for :func:`issued_plan`."""
-        pieces = self.state().pieces.values()
-        return {piece.key: piece.start_s for piece in pieces if piece.start_s is not None}
+    def known(self, at_s: int | None = None) -> Iterable[PieceState]:
+        """Return how each operation stood at a moment, else now, for :func:`issued_plan`."""
+        return self.state(at_s).pieces.values()
 
     def check(self) -> None:
         """Read the whole file and see whether it is sound. O(size of the file).

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import datetime
 from typing import TYPE_CHECKING, Any
 from zoneinfo import ZoneInfo
 
-from shopfloor.model.actuals import Key, Piece
+from shopfloor.journal.numbering import Row, row_numbers
+from shopfloor.model.actuals import Key, Piece, PieceState
 from shopfloor.model.clock import Clock
 
 if TYPE_CHECKING:
@@ -49,6 +50,12 @@ class IssuedPlan:
         ends = (piece.end_s or 0 for piece in self.pieces)
         return max(self.shift_end_s or 0, max(ends, default=0))
 
+    @property
+    def parent(self) -> str:
+        """The SHA-256 of the plan that it was made to follow; empty for a plan of the whole shift."""
+        options = self.head.get("options")
+        return str(options.get("parent", "")) if isinstance(options, Mapping) else ""
+
 
 def issued_plan(
     stated: StatedPlan,
@@ -56,7 +63,7 @@ def issued_plan(
     *,
     sha256: str,
     name: str = "plan.json",
-    begun: Mapping[Key, int] | None = None,
+    known: Iterable[PieceState] = (),
     numbers: Sequence[int] | None = None,
 ) -> IssuedPlan:
     """Return a stated plan as one to be issued.
@@ -67,9 +74,9 @@ def issued_plan(
         The rows of plan.json.
     head
         plan.json as read; `assignments` is left out.
-    begun
-        Actual start of each operation under way or done, so that a plan made during the shift calls the same
-        work by the same number: see :func:`numbered`.
+    known
+        How each operation stood when the plan was made (see :func:`made_at`), so that a plan made during the
+        shift calls the same work by the same number.
     numbers
         The number of each row, for a caller that knows better.
 
@@ -81,7 +88,7 @@ def issued_plan(
     clock = clock_of(head)
     end = head.get("shift_end_s")
     kept = {key: value for key, value in head.items() if key != "assignments"}
-    pieces = tuple(numbered(stated, begun or {}, numbers))
+    pieces = tuple(numbered(stated, known, numbers, made_s=made_at(head)))
     return IssuedPlan(sha256, name, clock, None if end is None else int(end), pieces, kept)
 
 
@@ -108,43 +115,44 @@ def clock_of(head: Mapping[str, Any]) -> Clock:
         raise ValueError(f"time_zone {str(zone)[:40]!r} is no time zone known here") from None
 
 
+def made_at(head: Mapping[str, Any]) -> int | None:
+    """Return when a plan was made of what was left of its shift then; None for a plan of the whole shift."""
+    options = head.get("options")
+    moment = options.get("now_s") if isinstance(options, Mapping) else None
+    return moment if type(moment) is int else None
+
+
 def numbered(
-    stated: StatedPlan, begun: Mapping[Key, int], numbers: Sequence[int] | None = None
+    stated: StatedPlan,
+    known: Iterable[PieceState] = (),
+    given: Sequence[int] | None = None,
+    *,
+    made_s: int | None = None,
 ) -> list[Piece]:
     """Number the rows of a plan by order and machine.
 
-    The rows of one order on one machine count 1, 2, … by start, then end, then unit. In a plan made during
-    the shift a row that starts when an operation in `begun` did is that operation and keeps its number; the
-    others take the numbers of those not begun, by start. O(n log n).
+    The rows of one order on one machine count 1, 2, … by start, then end, then unit; in a plan made during
+    the shift, of which `known` tells how its operations stood, each keeps the number of the work it goes on
+    with: see :func:`shopfloor.journal.numbering.row_numbers`. O(n log n).
     """
-    rows: dict[tuple[str, str], list[tuple[int, int, int, int]]] = defaultdict(list)
+    rows: dict[tuple[str, str], list[Row]] = defaultdict(list)
+    part, parts, rounds = stated.part.tolist(), stated.parts.tolist(), stated.round.tolist()
     columns = (stated.start_s.tolist(), stated.end_s.tolist(), stated.unit.tolist())
     for index, (start, end, unit) in enumerate(zip(*columns, strict=True)):
-        rows[stated.order[index], stated.machine[index]].append((start, end, unit, index))
-    starts: dict[tuple[str, str], dict[int, int]] = defaultdict(dict)
-    for key, moment in begun.items():
-        starts[key.order, key.machine][key.piece] = moment
-    part, parts, rounds = stated.part.tolist(), stated.parts.tolist(), stated.round.tolist()
+        rows[stated.order[index], stated.machine[index]].append(Row(start, end, unit, index, part[index]))
+    pieces: dict[tuple[str, str], list[PieceState]] = defaultdict(list)
+    if not given:
+        for piece in sorted(known, key=lambda piece: piece.key):
+            pieces[piece.key.order, piece.key.machine].append(piece)
     found: list[Piece] = []
     for (order, machine), listed in rows.items():
         listed.sort()
-        known = starts.get((order, machine), {})
-        counted = _count([start for start, *_ in listed], known) if numbers is None else ()
-        for place, (start, end, unit, index) in enumerate(listed):
-            key = Key(order, machine, counted[place] if numbers is None else numbers[index])
-            rank = None if rounds[index] == NO_ROUND else rounds[index]
-            found.append(Piece(key, end - start, unit, start, end, rank, part[index], parts[index]))
+        counted: Mapping[int, int] | Sequence[int]
+        counted = given or row_numbers(listed, pieces.get((order, machine), ()), made_s)
+        for row in listed:
+            key = Key(order, machine, counted[row.place])
+            rank = None if rounds[row.place] == NO_ROUND else rounds[row.place]
+            found.append(
+                Piece(key, row.length_s, row.unit, row.start_s, row.end_s, rank, row.part, parts[row.place])
+            )
     return sorted(found, key=lambda piece: (piece.start_s or 0, piece.key))
-
-
-def _count(starts: Sequence[int], begun: Mapping[int, int]) -> list[int]:
-    """Return the number of each row, given its start and when the numbers in use began."""
-    left = sorted(begun.items())
-    found: list[int] = []
-    for start in starts:
-        same = next((pair for pair in left if pair[1] == start), None)
-        found.append(same[0] if same else 0)
-        if same:
-            left.remove(same)
-    fresh = iter(number for number in range(1, len(starts) + len(begun) + 1) if number not in begun)
-    return [number or next(fresh) for number in found]

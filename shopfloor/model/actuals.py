@@ -191,6 +191,11 @@ class PieceState:
         """Whether work on it has begun: a replan may not move it."""
         return self.start_s is not None or self.status is Status.DONE
 
+    @property
+    def failed(self) -> bool:
+        """Whether it was finished and nothing good came out: it has to be run again."""
+        return self.end_s is not None and bool(self.scrap) and not self.good
+
 
 @dataclass(frozen=True, slots=True)
 class MachineState:

@@ -5,6 +5,8 @@ from __future__ import annotations
 import csv
 import io
 import json
+import re
+import shutil
 from pathlib import Path
 
 import pytest
@@ -117,6 +119,61 @@ def test_an_issued_plan_is_in_force_and_numbers_its_work_as_before(shift: Path) 
     again = replan(shift, "--back", "CMM=07:00", "--json").json
     assert again["moves"]["moved"] == 0
     assert again["parent"] == shown["entries"][-1]["sha256"]
+
+
+def test_a_plan_issued_by_hand_goes_on_with_stopped_work_as_replan_does(shift: Path) -> None:
+    """The rest of TQ-1 on the RIG, TQ-2 on the CMM and a scrapped TQ-2 on the BENCH, under either issue."""
+    told = (
+        ("stop", "TQ-1", "RIG", "--reason", "no gauge", "--at", "06:11"),
+        ("start", "=TQ-3", "BENCH", "--at", "06:11"),
+        ("finish", "=TQ-3", "BENCH", "--good", 0, "--scrap", 2, "--at", "06:12"),
+    )
+    found = []
+    for way in ("replan --issue", "log open --again"):
+        folder = shift / way.replace(" ", "-")
+        folder.mkdir()
+        journal = folder / "shift.db"
+        shutil.copy(shift / "shift.db", journal)
+
+        def log(*words: object, journal: Path = journal) -> Said:
+            said = shopfloor("log", *words, "--journal", journal, "--json")
+            assert said.code == 0, said.out
+            return said
+
+        for words in told:
+            log(*words)
+        files = (journal, shift / "orders.csv", "--shop", shift / "shop.toml", "--now", "06:13", *QUICK)
+        issue = ("--issue",) if "--issue" in way else ()
+        options = ("--back", "CMM=07:00", "--out", folder, *issue)
+        assert shopfloor("replan", *files, *options, "--quiet").code == 0
+        if not issue:
+            log("open", folder / "plan.json", "--again", "--at", "06:13")
+        for words in (
+            ("resume", "TQ-1", "RIG", "--at", "06:20"),
+            ("finish", "TQ-1", "RIG", "--good", 1, "--at", "06:45"),
+            ("up", "CMM", "--at", "07:00"),
+            ("start", "=TQ-3", "BENCH", "--at", "07:05"),
+        ):
+            log(*words)
+        state = log("show", "--at", "08:00").json["state"]
+        rig = [row for row in state["operations"] if (row["order"], row["machine"]) == ("TQ-1", "RIG")]
+        assert [(row["piece"], row["status"]) for row in rig] == [(1, "done")]
+        report = shopfloor("handover", *files[:4], "--at", "08:00", "--json").json
+        assert report["operations"] == 6
+        found.append((state, report, (folder / "plan.json").read_bytes()))
+    assert found[0] == found[1]
+
+
+def test_a_plan_issued_by_hand_that_follows_another_one_is_told_of(shift: Path) -> None:
+    assert replan(shift, "--back", "CMM=07:00", "--out", shift / "first", "--quiet").code == 0
+    assert replan(shift, "--back", "CMM=08:00", "--issue", "--quiet").code == 0
+    said = shopfloor("log", "open", shift / "first" / "plan.json", "--again", "--journal", shift / "shift.db")
+    assert said.code == 0
+    assert re.search(
+        r"Note: it was made to follow the plan [0-9a-f]{8}, not plan\.json [0-9a-f]{8}, which was in force "
+        r"until now; compare the two, or replan\.",
+        said.out,
+    )
 
 
 def test_the_compare_command_tells_the_same_moves(shift: Path) -> None:
