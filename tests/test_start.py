@@ -72,19 +72,18 @@ def test_recording_what_happens_loads_no_numbers_library(tmp_path: Path) -> None
     plan, journal = tmp_path / "plan", ("--journal", str(tmp_path / "shift.journal"))
     rows = tmp_path / "orders.csv"
     rows.write_text("order,machine,minutes\nTQ-1,CMM,30\nTQ-2,CMM,20\n", encoding="utf-8")
-    start = ("--start", "2026-03-02T06:00")
-    assert loaded("plan", str(rows), *start, "--out", str(plan), "--no-xlsx", "--quiet")[0] == 0
+    assert loaded("plan", str(rows), "--out", str(plan), "--no-xlsx", "--quiet")[0] == 0
     assert loaded("log", "open", str(plan / "plan.json"), *journal)[0] == 0
     calls = (
-        (0, "start", "TQ-1", "CMM", "--at", "06:00"),
-        (0, "left", "TQ-1", "CMM", "12.5", "--at", "06:05"),
-        (0, "down", "CMM", "--at", "06:10", "--reason", "probe"),
-        (0, "up", "CMM", "--at", "06:15"),
-        (0, "finish", "TQ-1", "CMM", "--at", "06:40"),
-        (0, "add", "TQ-9", "CMM=0:15", "--due", "09:00", "--at", "06:45"),
-        (0, "undo", "--at", "06:50"),
-        (0, "show", "--at", "06:50"),
-        (1, "finish", "TQ-2", "CMM", "--at", "06:50"),
+        (0, "start", "TQ-1", "CMM", "--at", "0:00"),
+        (0, "left", "TQ-1", "CMM", "12.5", "--at", "0:05"),
+        (0, "down", "CMM", "--at", "0:10", "--reason", "probe"),
+        (0, "up", "CMM", "--at", "0:15"),
+        (0, "finish", "TQ-1", "CMM", "--at", "0:40"),
+        (0, "add", "TQ-9", "CMM=0:15", "--due", "3:00", "--at", "0:45"),
+        (0, "undo", "--at", "0:50"),
+        (0, "show", "--at", "0:50"),
+        (1, "finish", "TQ-2", "CMM", "--at", "0:50"),
         (2, "start", "TQ-2", "CMM", "--at", "soon"),
     )
     for wanted, *call in calls:

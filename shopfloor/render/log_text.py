@@ -122,7 +122,7 @@ def state_lines(state: ShiftState, say: Say) -> list[str]:
     """Return how the shift stands: counts, what runs, what is blocked, which machines are down."""
     counts = {status: len(state.of(status)) for status in Status}
     said = ", ".join(f"{count} {status}" for status, count in counts.items() if count) or "none"
-    lines = [f"At {say(state.at_s)}: operations {said}. Good {state.good}, scrap {state.scrap}."]
+    lines = [wrap(f"At {say(state.at_s)}: operations {said}. Good {state.good}, scrap {state.scrap}.")]
     if state.crew:
         present = ", ".join(
             f"{cut(name, NAME)} {heads}" if name else str(heads) for name, heads in state.crew.items()
