@@ -23,8 +23,13 @@ SETTINGS: dict[str, Setting] = {
     setting.name: setting
     for setting in (
         Setting("round", 30, "minutes", "Length of one round when the file gives no times."),
-        Setting("start", None, "YYYY-MM-DDTHH:MM", "Start of the shift; without it time counts from 0:00."),
-        Setting("end", None, "YYYY-MM-DDTHH:MM or HH:MM", "End of the shift."),
+        Setting(
+            "start",
+            None,
+            "YYYY-MM-DDTHH:MM",
+            "Start of the shift, YYYY-MM-DDTHH:MM; without it time counts from 0:00.",
+        ),
+        Setting("end", None, "YYYY-MM-DDTHH:MM or HH:MM", "End of the shift, HH:MM or YYYY-MM-DDTHH:MM."),
         Setting("crew", None, "heads", "One crew of so many heads attends every machine."),
         Setting("even", False, "", "Rounds hold as equally many operations as they can: a steady crew."),
         Setting("split", False, "", "Every operation may be cut into parts."),

@@ -19,12 +19,17 @@ if TYPE_CHECKING:
 DONE, NO, BAD_INPUT, NO_PLAN = 0, 1, 2, 3  # exit codes of every command
 
 
-def setting(name: str, *flags: str, metavar: str | None = None) -> Any:
-    """Return a command-line option for the setting `name`; its help and unit come from the table."""
-    entry = SETTINGS[name]
-    shown = entry.help if entry.default is None else f"{entry.help} [default: {entry.default} {entry.unit}]"
+def setting(name: str, *flags: str, metavar: str | None = None, least: float | None = None) -> Any:
+    """Return a command-line option for the setting `name`; its help and unit come from the table.
+
+    A value below `least` is refused.
+    """
+    entry, shown = SETTINGS[name], SETTINGS[name].help
+    if entry.default is not None and entry.default is not False:
+        value = f"{entry.default:g}" if isinstance(entry.default, float) else entry.default
+        shown += f" [default: {value} {entry.unit}]".replace(" ]", "]")
     return typer.Option(
-        *(flags or (f"--{name}",)), help=shown.replace(" ]", "]"), metavar=metavar, show_default=False
+        *(flags or (f"--{name}",)), help=shown, metavar=metavar, show_default=False, min=least
     )
 
 

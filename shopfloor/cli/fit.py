@@ -21,20 +21,22 @@ def fit(
         Path | None, typer.Option("--out", metavar="DIR", help="Folder for chosen.csv and carried.csv.")
     ] = None,
     must: Annotated[
-        list[str] | None, typer.Option("--must", metavar="ORDER", help="Has to run; repeatable.")
+        list[str] | None,
+        typer.Option("--must", metavar="ORDER", help="An order that has to run; repeatable."),
     ] = None,
     never: Annotated[
-        list[str] | None, typer.Option("--not", metavar="ORDER", help="Must wait; repeatable.")
+        list[str] | None,
+        typer.Option("--not", metavar="ORDER", help="An order that has to wait; repeatable."),
     ] = None,
     by: Annotated[
-        str, typer.Option("--by", metavar="WHAT", help="orders, whole ones; or operations.")
+        str, typer.Option("--by", metavar="WHAT", help="Choose whole orders, or single operations.")
     ] = "orders",
     start: common.StartOption = None,
     end: common.EndOption = None,
     round_minutes: common.RoundOption = None,
     crew: common.CrewOption = None,
     split: common.SplitOption = False,
-    time_limit: Annotated[float, common.setting("time-limit", metavar="SECONDS")] = TIME_LIMIT,
+    time_limit: Annotated[float, common.setting("time-limit", metavar="SECONDS", least=0)] = TIME_LIMIT,
     seed: Annotated[int, common.setting("seed", metavar="N")] = SEED,
     as_json: common.JsonOption = False,
     quiet: common.QuietOption = False,

@@ -20,13 +20,19 @@ if TYPE_CHECKING:
     from shopfloor.replan.handover import Handover
 
 
+ShiftStartOption = Annotated[
+    str | None, typer.Option("--start", metavar="TIME", help="Start of the shift; the journal's without it.")
+]
+ShiftEndOption = Annotated[
+    str | None, typer.Option("--end", metavar="TIME", help="End of the shift; the journal's without it.")
+]
+
+
 def handover(
     journal: Annotated[Path, typer.Argument(metavar="JOURNAL", help="The shift's journal.")],
     orders: Annotated[
         str | None,
-        typer.Argument(
-            metavar="[ORDERS]", help="The orders its first plan was made from.", show_default=False
-        ),
+        typer.Argument(metavar="ORDERS", help="The orders its first plan was made from.", show_default=False),
     ] = None,
     shop: common.ShopOption = None,
     at: Annotated[
@@ -38,8 +44,8 @@ def handover(
     out: Annotated[
         Path | None, typer.Option("--out", metavar="DIR", help="Folder for the page and the tables.")
     ] = None,
-    start: common.StartOption = None,
-    end: common.EndOption = None,
+    start: ShiftStartOption = None,
+    end: ShiftEndOption = None,
     round_minutes: common.RoundOption = None,
     crew: common.CrewOption = None,
     split: common.SplitOption = False,
@@ -137,8 +143,10 @@ def open_to_read(path: Path) -> Journal:
     return opened
 
 
-def moment(journal: Journal, events: Sequence[Event], text: str | None, as_json: bool) -> int:
-    """Return the moment asked for: as said, or now but not long after the shift."""
+def moment(
+    journal: Journal, events: Sequence[Event], text: str | None, as_json: bool, *, field: str = "at"
+) -> int:
+    """Return the moment asked for by the option `field`: as said, or now but not long after the shift."""
     from shopfloor.cli import log_common
     from shopfloor.journal.errors import EntryError
     from shopfloor.journal.moments import read
@@ -147,7 +155,7 @@ def moment(journal: Journal, events: Sequence[Event], text: str | None, as_json:
     now = log_common.recorder(journal.clock).now_s
     if text is not None:
         try:
-            return max(0, read(journal.clock, text, now))
+            return max(0, read(journal.clock, text, now, field=field))
         except EntryError as error:
             log_common.refuse_value(error, as_json)
     last = max((event.at_s for event in events if event.kind is not Kind.WITHDRAWN), default=0)

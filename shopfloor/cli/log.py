@@ -7,7 +7,7 @@ from typing import Annotated
 
 import typer
 
-from shopfloor.cli import common, log_book
+from shopfloor.cli import common, log_book, log_times
 from shopfloor.cli import log_common as shared
 from shopfloor.cli.log_common import Ask, Making, recording
 
@@ -21,7 +21,9 @@ app = typer.Typer(
 
 DueOption = Annotated[str | None, typer.Option("--due", metavar="TIME", help="Wanted finish.")]
 ReleaseOption = Annotated[str | None, typer.Option("--release", metavar="TIME", help="Earliest start.")]
-PriorityOption = Annotated[float | None, typer.Option("--priority", metavar="N", help="Weight.")]
+PriorityOption = Annotated[
+    float | None, typer.Option("--priority", metavar="N", help="Weight of the order, 1 unless said.")
+]
 
 app.command("open")(log_book.open_plan)
 
@@ -49,7 +51,7 @@ def start(
     }
 
 
-@app.command("stop")
+@app.command("stop", short_help="ORDER has stopped on MACHINE before it was done.")
 @recording
 def stop(
     order: shared.OrderArgument,
@@ -89,7 +91,7 @@ def resume(
     }
 
 
-@app.command("finish")
+@app.command("finish", short_help="ORDER is done on MACHINE.")
 @recording
 def finish(
     order: shared.OrderArgument,
@@ -107,7 +109,7 @@ def finish(
     return [*started, {"kind": "finished", "good": good, "scrap": scrap, **named}]
 
 
-@app.command("left")
+@app.command("left", short_help="ORDER will run MINUTES more on MACHINE.")
 @recording
 def left(
     order: shared.OrderArgument,
@@ -119,7 +121,7 @@ def left(
     return {"kind": "left", "order": order, "machine": machine, "piece": piece, "left": minutes}
 
 
-@app.command("down")
+@app.command("down", short_help="MACHINE is down, or one unit of it.")
 @recording
 def down(
     machine: shared.MachineArgument,
@@ -159,7 +161,7 @@ def add(
     order: shared.OrderArgument,
     operations: Annotated[
         list[str],
-        typer.Argument(metavar="MACHINE=MINUTES...", help="What it needs, such as CMM=25 WASH=0:10."),
+        typer.Argument(metavar="MACHINE=MINUTES", help="What it needs, such as CMM=25 WASH=0:10."),
     ],
     due: DueOption = None,
     release: ReleaseOption = None,
@@ -176,13 +178,13 @@ def add(
     }
 
 
-@app.command("change")
+@app.command("change", short_help="ORDER has changed: due time, release, priority, times.")
 @recording
 def change(
     order: shared.OrderArgument,
     operations: Annotated[
         list[str] | None,
-        typer.Argument(metavar="MACHINE=MINUTES...", help="New times; a new machine is a further operation."),
+        typer.Argument(metavar="MACHINE=MINUTES", help="New times; a new machine is a further operation."),
     ] = None,
     due: DueOption = None,
     release: ReleaseOption = None,
@@ -199,7 +201,7 @@ def change(
     }
 
 
-@app.command("cancel")
+@app.command("cancel", short_help="ORDER is cancelled.")
 @recording
 def cancel(order: shared.OrderArgument, reason: shared.ReasonOption = "") -> Making:
     """ORDER is cancelled; what runs of it stays running until it is stopped or finished."""
@@ -221,7 +223,7 @@ def remark(
     return {"kind": "remark", "text": text, "order": order, "machine": machine}
 
 
-@app.command("undo")
+@app.command("undo", short_help="Strike out an entry.")
 def undo(
     number: Annotated[
         int | None, typer.Argument(metavar="NO", help="Number of the entry; without it the last.", min=1)
@@ -257,7 +259,7 @@ def _last(journal: Path | None, who: str, as_json: bool) -> int:
     return event.seq
 
 
-app.command("import")(log_book.import_file)
-app.command("scan")(log_book.scan)
-app.command("show")(log_book.show)
-app.command("times")(log_book.times)
+app.command("import", short_help="Record a table of events, all of it or nothing.")(log_book.import_file)
+app.command("scan", short_help="Record from a bar-code scanner.")(log_book.scan)
+app.command("show", short_help="Show how the shift stands, and the last entries.")(log_book.show)
+app.command("times", short_help="Compare planned and actual minutes.")(log_times.times)

@@ -1,4 +1,4 @@
-"""The subcommands of ``shopfloor log`` that deal with whole files: open, import, scan, show, times."""
+"""The subcommands of ``shopfloor log`` that deal with whole files: open, import, scan, show."""
 
 from __future__ import annotations
 
@@ -13,12 +13,10 @@ from shopfloor.cli import common
 from shopfloor.cli import log_common as shared
 
 if TYPE_CHECKING:
-    from collections.abc import Callable
-
     from shopfloor.journal.events import Journal
     from shopfloor.journal.pieces import IssuedPlan
     from shopfloor.journal.rows import Rows
-    from shopfloor.journal.times import Family, Worked
+    from shopfloor.model.results import Fault
 
 SHOWN = 10
 
@@ -182,7 +180,11 @@ def _rows(file: str, journal: Journal, now: int | None) -> Rows:
 
     findings, wanted = Findings(), Wanted(COLUMNS, NEEDED)
     table = open_table(sys.stdin.buffer if file == "-" else Path(file), wanted, findings)
-    positions = match_columns(table, wanted, findings)
+    try:
+        positions = match_columns(table, wanted, findings)
+        findings.stop_if_any()
+    except InputError as error:
+        raise InputError([_without_mapping(fault) for fault in error.faults]) from None
     cells = gather(table, positions, findings)
     if not len(cells):
         findings.fault(table.place, "no-rows")
@@ -194,6 +196,13 @@ def _rows(file: str, journal: Journal, now: int | None) -> Rows:
         findings.merge(InputError(rows.faults))
     findings.stop_if_any()
     return rows
+
+
+def _without_mapping(fault: Fault) -> Fault:
+    """Return a fault of a header without the advice to map it: no shop.toml is read here."""
+    from dataclasses import replace
+
+    return replace(fault, advice=fault.advice.partition(", or map it")[0])
 
 
 def scan(
@@ -321,87 +330,3 @@ def show(
         print("\nLast entries")
         for event in listed[-entries:]:
             print(wrap(f"No {event.seq}: {log_text.sentence(event, spoken)}", 2))
-
-
-def times(
-    journals: Annotated[list[Path], typer.Argument(metavar="JOURNAL...", help="One or many journals.")],
-    orders: Annotated[
-        list[str] | None,
-        typer.Option("--orders", metavar="FILE", help="The orders planned: gives families; repeatable."),
-    ] = None,
-    shop: common.ShopOption = None,
-    out: Annotated[
-        Path | None, typer.Option("--csv", metavar="FILE", help="Write suggested minutes to this file.")
-    ] = None,
-    as_json: common.JsonOption = False,
-    quiet: common.QuietOption = False,
-) -> None:
-    """Compare planned and actual minutes by machine, and by family with --orders. Nothing is applied.
-
-    With --orders and --shop, breaks over which a machine pauses are left out of both.
-
-    Exit code 0: done. 2: bad input.
-    """
-    from dataclasses import asdict
-
-    from shopfloor.errors import InputError
-    from shopfloor.journal.times import learned, timings
-    from shopfloor.render import log_text
-    from shopfloor.render.save import save_file
-    from shopfloor.render.tables import harmless
-
-    try:
-        family, worked = _knowledge(orders or [], shop)
-    except InputError as error:
-        common.refuse(error, as_json)
-    found = []
-    for path in journals:
-        with shared.open_journal(path, write=False) as opened:
-            opened.check()
-            found += timings(opened.events(), family=family, worked=worked)
-    rows = learned(found)
-    if out is not None:
-        save_file(out, log_text.times_csv(rows, harmless))
-    if as_json:
-        common.print_json(
-            {"ok": True, "times": [asdict(row) for row in rows], "file": str(out) if out else None}
-        )
-    elif not quiet:
-        print("\n".join(log_text.times_lines(rows)))
-        if out is not None:
-            print(f"Wrote {out}.")
-
-
-def _knowledge(orders: list[str], shop: Path | None) -> tuple[Family, Worked]:
-    """Return what the orders files and shop.toml tell of families and working time."""
-    families: dict[tuple[str, str], str] = {}
-    clocks: dict[str, Callable[[int], int]] = {}
-    for name in orders:
-        hall = common.read(name, shop, None, None, None).shop
-        for row in hall:
-            families.setdefault((row.order, row.machine_id), row.family)
-        clocks |= _clocks(hall)
-
-    def worked(machine: str, start: int, end: int) -> int:
-        count = clocks.get(machine)
-        return end - start if count is None else count(end) - count(start)
-
-    return lambda order, machine: families.get((order, machine), ""), worked
-
-
-def _clocks(hall: Any) -> dict[str, Callable[[int], int]]:
-    """Return the working time before a moment, for each machine that pauses over breaks and closures."""
-    from shopfloor.model.calendar import WorkClock
-
-    found: dict[str, Callable[[int], int]] = {}
-    for machine in hall.machines:
-        if machine.pauses:
-            shut: list[list[int]] = []
-            for one in sorted((*hall.breaks, *machine.closed), key=lambda pause: pause.start_s):
-                if shut and one.start_s <= shut[-1][1]:
-                    shut[-1][1] = max(shut[-1][1], one.end_s)
-                else:
-                    shut.append([one.start_s, one.end_s])
-            clock = WorkClock((start, end) for start, end in shut)
-            found[machine.id] = lambda moment, clock=clock: int(clock.worked(moment))  # type: ignore[misc]
-    return found

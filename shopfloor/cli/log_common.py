@@ -158,6 +158,7 @@ def record(ask: Ask, makings: Sequence[Making]) -> None:
         by = recorder(journal.clock, ask.accept)
         try:
             entries = [_entry(ask, journal, by, making) for making in makings]
+            _in_order(entries, journal.clock)
             done = journal.record(entries, by)
         except EntryError as error:
             refuse_value(error, ask.as_json)
@@ -183,10 +184,27 @@ def _entry(ask: Ask, journal: Journal, by: Recorder, making: Making) -> Entry:
     for name in ("release", "due"):
         if name in data:
             data[f"{name}_s"] = moment(data.pop(name), name)
-    if "operations" in data:
+    if data.get("operations") is not None:
         data["operations"] = [_operation(text) for text in data["operations"]]
     values["corrects"] = ask.corrects or values.get("corrects", 0)
     return Entry(Kind(values.pop("kind")), at_s=at, who=ask.who, id=ask.id, data=data, **values)
+
+
+def _in_order(entries: Sequence[Entry], clock: Clock) -> None:
+    """Refuse a start that one call gives after its finish; the journal would only miss the start."""
+    from itertools import pairwise
+
+    from shopfloor.journal.errors import EntryError
+    from shopfloor.journal.moments import say
+
+    for first, then in pairwise(entries):
+        if first.at_s is not None and then.at_s is not None and first.at_s > then.at_s:
+            start, end = say(clock, first.at_s), say(clock, then.at_s)
+            problem, advice = (
+                f"is after the finish, {end}",
+                "give the start with --from, the finish with --at",
+            )
+            raise EntryError("from", start, "from-after-finish", problem, advice)
 
 
 def _operation(text: str) -> tuple[str, int]:

@@ -22,15 +22,15 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
     context_settings={"help_option_names": ["-h", "--help"]},
 )
-app.command("check")(check.check)
-app.command("plan")(plan.plan)
-app.command("fit")(fit.fit)
-app.command("audit")(audit.audit)
-app.command("compare")(compare.compare)
+app.command("check", short_help="Say whether the shift can hold the orders, and what binds.")(check.check)
+app.command("plan", short_help="Plan the orders, audit the plan, and write its files.")(plan.plan)
+app.command("fit", short_help="Choose what fits the shift; the rest is carried over.")(fit.fit)
+app.command("audit", short_help="Check a plan against its orders, also after an edit.")(audit.audit)
+app.command("compare", short_help="Show what moved between two plans.")(compare.compare)
 app.add_typer(log.app, name="log")
-app.command("replan")(replan.replan)
-app.command("handover")(handover.handover)
-app.command("demo")(demo.demo)
+app.command("replan", short_help="Plan what is left of a shift anew, moving little.")(replan.replan)
+app.command("handover", short_help="Tell how the shift went, and what carries over.")(handover.handover)
+app.command("demo", short_help="Write sample sets of orders to try the tool on.")(demo.demo)
 
 
 def _show_version(wanted: bool) -> None:

@@ -30,11 +30,11 @@ def plan(
     round_minutes: common.RoundOption = None,
     crew: common.CrewOption = None,
     split: common.SplitOption = False,
-    shortest_piece: Annotated[float, common.setting("shortest-piece", metavar="MINUTES")] = 0,
+    shortest_piece: Annotated[float, common.setting("shortest-piece", metavar="MINUTES", least=0)] = 0,
     objective: Annotated[str, common.setting("objective", metavar="GOALS")] = OBJECTIVE,
     even: common.EvenOption = False,
-    time_limit: Annotated[float, common.setting("time-limit", metavar="SECONDS")] = TIME_LIMIT,
-    workers: Annotated[int, common.setting("workers", metavar="N")] = WORKERS,
+    time_limit: Annotated[float, common.setting("time-limit", metavar="SECONDS", least=0)] = TIME_LIMIT,
+    workers: Annotated[int, common.setting("workers", metavar="N", least=0)] = WORKERS,
     seed: Annotated[int, common.setting("seed", metavar="N")] = SEED,
     stamp: Annotated[str | None, common.setting("stamp", metavar="TEXT")] = None,
     codes: Annotated[
@@ -42,7 +42,10 @@ def plan(
     ] = None,
     xlsx: Annotated[bool, typer.Option("--xlsx/--no-xlsx", help="Write plan.xlsx too.")] = True,
     ics: Annotated[
-        str | None, typer.Option("--ics", metavar="BY", help="Write a calendar by plan, or one by machine.")
+        str | None,
+        typer.Option(
+            "--ics", metavar="BY", help="Write calendars too: plan for one of all, machine for one a machine."
+        ),
     ] = None,
     as_json: common.JsonOption = False,
     quiet: common.QuietOption = False,

@@ -10,6 +10,7 @@ import typer
 
 from shopfloor.cli import common
 from shopfloor.cli.files import write_plan
+from shopfloor.cli.handover import ShiftEndOption, ShiftStartOption
 from shopfloor.settings import SETTINGS
 
 if TYPE_CHECKING:
@@ -17,6 +18,8 @@ if TYPE_CHECKING:
 
     from shopfloor.journal.events import Journal
     from shopfloor.model.actuals import Event, ShiftState
+    from shopfloor.model.results import Fault
+    from shopfloor.read.orders import Reading
     from shopfloor.replan.movement import Moves
     from shopfloor.rolling.plan import Replan
 
@@ -33,7 +36,7 @@ def replan(
     ],
     shop: common.ShopOption = None,
     now: Annotated[
-        str | None, typer.Option("--now", metavar="TIME", help="Plan from then on; from now without it.")
+        str | None, typer.Option("--now", metavar="TIME", help="The moment to plan from; now without it.")
     ] = None,
     back: Annotated[
         list[str] | None,
@@ -43,15 +46,24 @@ def replan(
     ] = None,
     outage: Annotated[
         float,
-        typer.Option("--outage", metavar="MINUTES", help="How long others that are down stay so.", min=1),
+        typer.Option(
+            "--outage",
+            metavar="MINUTES",
+            help="How long what is down stays so where --back says nothing.",
+            min=1,
+        ),
     ] = OUTAGE,
     least: Annotated[
         float,
-        typer.Option("--least", metavar="MINUTES", help="Running work needs at least so much more.", min=0),
+        typer.Option(
+            "--least", metavar="MINUTES", help="Least time that running work is taken to need still.", min=0
+        ),
     ] = LEAST,
     stability: Annotated[
         float,
-        typer.Option("--stability", metavar="MINUTES", help="So much later is fine if less moves.", min=0),
+        typer.Option(
+            "--stability", metavar="MINUTES", help="The plan may end so much later if that moves less.", min=0
+        ),
     ] = 0,
     issue: Annotated[
         bool, typer.Option("--issue", help="Record in the journal that the new plan is in force.")
@@ -66,17 +78,21 @@ def replan(
         Path | None,
         typer.Option("--out", metavar="DIR", help="Folder for the files; without it none is written."),
     ] = None,
-    start: common.StartOption = None,
-    end: common.EndOption = None,
+    start: ShiftStartOption = None,
+    end: ShiftEndOption = None,
     round_minutes: common.RoundOption = None,
     crew: common.CrewOption = None,
     split: common.SplitOption = False,
     objective: Annotated[
         str | None,
-        typer.Option("--objective", metavar="GOALS", help="What counts; as the plan in force without it."),
+        typer.Option(
+            "--objective",
+            metavar="GOALS",
+            help="What counts first, and what then; as in the plan in force without it.",
+        ),
     ] = None,
-    time_limit: Annotated[float, common.setting("time-limit", metavar="SECONDS")] = TIME_LIMIT,
-    workers: Annotated[int, common.setting("workers", metavar="N")] = WORKERS,
+    time_limit: Annotated[float, common.setting("time-limit", metavar="SECONDS", least=0)] = TIME_LIMIT,
+    workers: Annotated[int, common.setting("workers", metavar="N", least=0)] = WORKERS,
     seed: Annotated[int, common.setting("seed", metavar="N")] = SEED,
     stamp: Annotated[str | None, common.setting("stamp", metavar="TEXT")] = None,
     codes: Annotated[
@@ -102,15 +118,18 @@ def replan(
     from shopfloor.rolling.plan import replan as plan_anew
 
     common.one_of("--codes", codes, ("qr", "code128"))
+    if issue:
+        _see_that_it_can_be_issued(journal)
     with open_to_read(journal) as opened:
         events, clock = opened.events(), opened.clock
-        now_s = moment(opened, events, now, as_json)
+        now_s = moment(opened, events, now, as_json, field="now")
         try:
             reading = read_shift(opened, orders, shop, start, end, round_minutes, crew=crew, split=split)
             expected = _back(opened, state(events, now_s), now_s, back or ())
         except InputError as error:
             common.refuse(error, as_json)
-    common.print_notices(reading.notices, quiet or as_json)
+    notices = (*reading.notices, *_strange_crews(reading, state(events, now_s)))
+    common.print_notices(notices, quiet or as_json)
     report = Reporter(clock, quiet)
     began = time.perf_counter()
     with stopping() as stop:
@@ -142,7 +161,7 @@ def replan(
     entry = _issue(journal, found, now_s, who) if issue else None
     if as_json:
         data = {**_data(found, files, solve_s), "issued": entry}
-        common.print_json({**data, "notices": [common.fault_data(notice) for notice in reading.notices]})
+        common.print_json({**data, "notices": [common.fault_data(notice) for notice in notices]})
     elif not quiet:
         print("\n".join(_lines(found, state(events, now_s), files, entry)))
     raise typer.Exit(common.NO if found.plan.fits_shift is False else common.DONE)
@@ -208,6 +227,22 @@ def _unit(name: str, state: ShiftState) -> tuple[str, int]:
     return machine, int(number)
 
 
+def _strange_crews(reading: Reading, state: ShiftState) -> list[Fault]:
+    """Return a notice for each crew that the journal counts and the shop has not."""
+    from shopfloor.model.results import Fault
+
+    known = sorted(crew.id for crew in reading.shop.crews)
+    named = f", which has {', '.join(known)}" if known else ""
+    problem = f"names no crew of the shop{named}; it is left out"
+    return [
+        Fault(
+            "log crew --pool", 0, "", name[:40], "crew-unknown", problem, "undo it, and name one of its crews"
+        )
+        for name in sorted(state.crew)
+        if name and name not in known
+    ]
+
+
 def _goals(given: str | None, events: Sequence[Event], now_s: int) -> tuple[str, ...]:
     """Return what counts: as asked, else as in the plan in force."""
     from shopfloor.model.actuals import Kind
@@ -231,6 +266,14 @@ def _goals(given: str | None, events: Sequence[Event], now_s: int) -> tuple[str,
 
 
 # ---- the journal -----------------------------------------------------------------------------------
+
+
+def _see_that_it_can_be_issued(path: Path) -> None:
+    """Open the journal to write before the search begins: nobody waits for a plan that cannot be issued."""
+    from shopfloor.journal.events import Journal
+
+    with Journal.open(path) as opened:
+        opened.ready()
 
 
 def _issue(path: Path, found: Replan, now_s: int, who: str) -> int:

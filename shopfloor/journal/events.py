@@ -149,9 +149,13 @@ class Journal:
             If the plan is for another shift, or the disk refuses.
         """
         if plan.clock != self.clock:
+            ours, theirs = (
+                f"{clock.write(0)}{f' {clock.zone}' if clock.zone else ''}"
+                for clock in (self.clock, plan.clock)
+            )
             raise JournalError(
-                f"cannot write {self.path}: its shift starts {self.clock.write(0)}, the plan's "
-                f"{plan.clock.write(0)}; open a new journal for it"
+                f"cannot write {self.path}: its shift starts {ours}, the plan's {theirs}; open a new journal "
+                "for it"
             )
         with self._writing():
             plans = self._lookup.plans()
@@ -162,6 +166,17 @@ class Journal:
             event = _issue_event(self._lookup.last_seq() + 1, plan, when, by, who)
             write(self._connection, event)
         return Recorded(event)
+
+    def ready(self) -> None:
+        """See that entries can be written, before somebody waits for what is to be recorded.
+
+        Raises
+        ------
+        JournalError
+            If the disk refuses, or other programs keep the file in use.
+        """
+        with self._writing():
+            pass
 
     @contextmanager
     def _writing(self) -> Iterator[None]:

@@ -79,6 +79,10 @@ def create(path: Path, fill: Callable[[sqlite3.Connection], None]) -> None:
     JournalError
         If a file of that name stands there already (then its message ends so), or the disk refuses.
     """
+    if not path.parent.is_dir():
+        raise JournalError(
+            f"cannot write {path}: there is no folder {path.parent}; make it, or choose another"
+        )
     part = path.with_name(f".shopfloor-{secrets.token_hex(8)}.part")
     try:
         with in_words(path, "write"):
@@ -133,8 +137,13 @@ def _look(path: Path) -> None:
         raise JournalError(
             f"cannot open {path}: there is no such journal; make one with: shopfloor log open PLAN"
         ) from None
+    except IsADirectoryError:
+        raise JournalError(f"cannot open {path}: it is a folder; name a file in it") from None
+    except PermissionError:
+        raise JournalError(f"cannot open {path}: you may not read it; {_RIGHTS}") from None
     except OSError as error:
-        raise JournalError(f"cannot open {path}: {(error.strerror or str(error)).lower()}") from error
+        reason = (error.strerror or str(error)).lower()
+        raise JournalError(f"cannot open {path}: {reason}; choose another file") from error
     if head != b"SQLite format 3\0":
         raise JournalError(f"cannot open {path}: {_REASONS['SQLITE_NOTADB']}")
 
@@ -191,7 +200,8 @@ def _place(part: Path, path: Path) -> None:
                 raise JournalError(taken) from None
             part.rename(path)
     except OSError as error:
-        raise JournalError(f"cannot write {path}: {(error.strerror or str(error)).lower()}") from error
+        reason = (error.strerror or str(error)).lower()
+        raise JournalError(f"cannot write {path}: {reason}; choose another place") from error
     with contextlib.suppress(OSError):  # flush the name too, where the system lets a folder be flushed
         handle = os.open(path.parent, os.O_RDONLY)
         try:

@@ -247,6 +247,39 @@ def test_undo_without_a_number_takes_the_last_entry_of_whoever_asks() -> None:
     )
 
 
+@pytest.mark.usefixtures("journal")
+def test_an_order_is_changed_in_one_thing_and_leaves_the_rest() -> None:
+    assert (
+        ok("change", "TQ-1", "--due", "12:30", "--at", "06:22")
+        == "No 2: Order TQ-1 changed 06:22: due 12:30\n"
+    )
+    answer = said("change", "TQ-1", "--at", "06:23")
+    assert (answer.code, answer.err) == (
+        2,
+        "order: 'TQ-1' is not changed in any way; give what is to change\n",
+    )
+
+
+@pytest.mark.usefixtures("journal")
+def test_a_start_after_its_finish_is_told_as_such() -> None:
+    answer = said("finish", "TQ-1", "WASH", "--from", "06:30", "--at", "06:10")
+    assert answer.code == 2
+    assert " ".join(answer.err.split()) == (
+        "from: '06:30' is after the finish, 06:10; give the start with --from, the finish with --at"
+    )
+
+
+@pytest.mark.usefixtures("journal")
+def test_a_table_without_its_columns_is_not_sent_to_a_shop_toml(tmp_path: Path) -> None:
+    """`log import` reads none."""
+    table = tmp_path / "events.csv"
+    table.write_text("what,when,order\nstart,06:00,TQ-1\n")
+    answer = said("import", table)
+    assert answer.code == 2
+    assert "has no column event; name it event in the header" in " ".join(answer.err.split())
+    assert "shop.toml" not in answer.err
+
+
 # ---- open --------------------------------------------------------------------------------------------
 
 

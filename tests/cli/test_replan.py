@@ -12,6 +12,8 @@ from pathlib import Path
 
 import pytest
 
+from shopfloor.journal.errors import JournalError
+from shopfloor.journal.events import Journal
 from tests.cli.run import DATA, Said, shopfloor
 from tests.render.browser import chromium, needs_browser
 
@@ -230,6 +232,46 @@ def test_an_unknown_goal_is_refused(shift: Path) -> None:
     said = replan(shift, "--objective", "beauty")
     assert said.code == 2
     assert "'beauty' is not one of makespan, tardiness, changeovers" in " ".join(said.err.split())
+
+
+@pytest.mark.parametrize(
+    ("given", "words"),
+    [
+        (("--now", "later"), "now: 'later' is no time this tool reads"),
+        (("--time-limit", -1), "Invalid value for '--time-limit'"),
+        (("--workers", -1), "Invalid value for '--workers'"),
+    ],
+)
+def test_an_option_that_cannot_be_meant_is_refused(
+    shift: Path, given: tuple[object, ...], words: str
+) -> None:
+    said = replan(shift, *given)
+    assert said.code == 2
+    assert words in " ".join(said.err.split())
+
+
+def test_a_crew_that_the_shop_has_not_is_told_of(shift: Path) -> None:
+    journal = ("--journal", shift / "shift.db")
+    assert shopfloor("log", "crew", 3, "--pool", "riggers", "--at", "06:11", *journal).code == 0
+    said = replan(shift, "--back", "CMM=07:00")
+    assert said.code == 0
+    assert " ".join(said.err.split()) == (
+        "Note: log crew --pool: 'riggers' names no crew of the shop; it is left out; undo it, and name one "
+        "of its crews"
+    )
+
+
+def test_a_journal_that_cannot_be_written_is_told_before_the_search(
+    shift: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def refuse(path: Path, **options: object) -> Journal:
+        raise JournalError(f"cannot write {path}: the disk is full; make room, then record this again")
+
+    monkeypatch.setattr(Journal, "open", refuse)
+    monkeypatch.setattr("shopfloor.rolling.plan.replan", lambda *given, **named: pytest.fail("it searched"))
+    said = replan(shift, "--issue")
+    assert said.code == 2
+    assert "the disk is full; make room" in said.err
 
 
 def test_nothing_is_issued_when_the_orders_do_not_belong_to_the_journal(shift: Path) -> None:

@@ -7,6 +7,7 @@ import re
 import sqlite3
 from dataclasses import replace
 from itertools import combinations
+from zoneinfo import ZoneInfo
 
 import pytest
 from hypothesis import given, settings
@@ -596,6 +597,15 @@ def test_a_plan_of_another_shift_is_refused(book: Journal) -> None:
     assert str(caught.value) == (
         "cannot write memory: its shift starts 2026-03-02T06:00:00, the plan's 2026-03-03T06:00:00; open a "
         "new journal for it"
+    )
+
+
+def test_a_plan_of_another_time_zone_is_of_another_shift(book: Journal) -> None:
+    with pytest.raises(JournalError) as caught:
+        book.issue(issued(clock=replace(CLOCK, zone=ZoneInfo("Europe/London")), sha256="1" * 64), LATE)
+    assert str(caught.value) == (
+        "cannot write memory: its shift starts 2026-03-02T06:00:00, the plan's 2026-03-02T06:00:00 "
+        "Europe/London; open a new journal for it"
     )
 
 

@@ -56,7 +56,7 @@ def test_a_database_of_another_program_is_no_journal(tmp_path: Path) -> None:
 
 
 def test_a_folder_is_no_journal(tmp_path: Path) -> None:
-    assert opened(tmp_path) == f"cannot open {tmp_path}: is a directory"
+    assert opened(tmp_path) == f"cannot open {tmp_path}: it is a folder; name a file in it"
 
 
 def test_a_journal_of_a_newer_release_is_left_alone(path: Path) -> None:
@@ -109,8 +109,25 @@ def test_a_second_journal_does_not_replace_the_first(path: Path) -> None:
 
 
 def test_a_journal_in_a_folder_that_is_not_there_is_told(tmp_path: Path) -> None:
-    with pytest.raises(JournalError, match="cannot be opened; check the rights of both"):
-        filed(tmp_path / "none" / "shift.db")
+    path = tmp_path / "none" / "shift.db"
+    with pytest.raises(JournalError) as caught:
+        filed(path)
+    assert str(caught.value) == (
+        f"cannot write {path}: there is no folder {path.parent}; make it, or choose another"
+    )
+    assert list(tmp_path.iterdir()) == []
+
+
+def test_whether_entries_can_be_written_is_known_before_there_are_any(path: Path) -> None:
+    before = path.read_bytes()
+    with Journal.open(path) as book:
+        book.ready()
+    assert path.read_bytes() == before
+    with (
+        Journal.open(path, write=False) as book,
+        pytest.raises(JournalError, match="you may not write there"),
+    ):
+        book.ready()
 
 
 # ---- versions ----------------------------------------------------------------------------------------
