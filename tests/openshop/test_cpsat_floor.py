@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -11,13 +12,14 @@ from hypothesis import strategies as st
 
 from shopfloor.audit.schedule import audit
 from shopfloor.bounds.catalogue import lower_bounds
+from shopfloor.model.feasible import FOR_GOOD_S
 from shopfloor.model.results import Choice, Plan
 from shopfloor.model.schedule import Schedule
-from shopfloor.model.shop import Machine, Operations, Orders, Shop
+from shopfloor.model.shop import Closure, Machine, Operations, Orders, Shop
 from shopfloor.model.stated import state
 from shopfloor.openshop.cpsat.floor import solve, windows
 from shopfloor.openshop.cpsat.floor.best import MEASURES, Places
-from shopfloor.openshop.cpsat.floor.solve import improve_floor
+from shopfloor.openshop.cpsat.floor.solve import improve_floor, whole_horizon_s
 from shopfloor.openshop.floor.rules import Rules
 from shopfloor.openshop.floor.timetable import Timetable
 from shopfloor.openshop.method import Effort
@@ -107,6 +109,33 @@ def test_parts_placed_again_fit_what_stays(shop: Shop, goals: list[str], count: 
     check(shop, outcome.schedule)
     assert outcome.schedule is not None
     assert measures(shop, outcome.schedule, chosen) <= measures(shop, start, chosen)
+
+
+@given(floors(max_operations=5))
+@settings(max_examples=60, deadline=None)
+def test_some_best_plan_has_ended_by_the_horizon(shop: Shop) -> None:
+    """And no machine that shuts for good after that is waited for."""
+    least = least_makespan(shop)
+    assert least is not None
+    horizon = whole_horizon_s(shop)
+    assert least <= horizon
+    shut = Closure(horizon, horizon + FOR_GOOD_S, "sold")
+    closing = replace(shop, machines=tuple(replace(m, closed=(*m.closed, shut)) for m in shop.machines))
+    assert whole_horizon_s(closing) <= 2 * horizon
+
+
+def test_a_machine_that_shuts_for_good_makes_no_long_horizon() -> None:
+    """Open until 0:01 only, its closure told in two pieces; the order on the other machine comes at 0:02."""
+    shut = (Closure(60, 600, "stocktaking"), Closure(600, 60 + FOR_GOOD_S, "not open"))
+    shop = Shop(
+        (Machine("M", closed=shut), Machine("N")),
+        Orders(("A", "B"), release_s=[0, 120], due_s=[30, 125]),
+        Operations([0, 1], [0, 1], [50, 7]),
+    )
+    assert whole_horizon_s(shop) == 120 + 50 + 7
+    outcome = improve_floor(shop, one_after_the_other(shop, 3), ("tardiness",), 0, Effort(workers=1))
+    assert check(shop, outcome.schedule).end.tolist() == [50, 127]
+    assert outcome.stopped == "done"
 
 
 def test_a_stop_is_obeyed_and_the_best_plan_handed_back() -> None:

@@ -14,7 +14,8 @@ from functools import partial
 import numpy as np
 from ortools.sat.python import cp_model
 
-from shopfloor.model.calendar import duration
+from shopfloor.model.calendar import duration, united
+from shopfloor.model.feasible import FOR_GOOD_S
 from shopfloor.model.results import Outcome
 from shopfloor.model.schedule import Schedule
 from shopfloor.model.shop import Shop
@@ -243,11 +244,25 @@ def _whole_model(shop: Shop, best: Best, goal: str, kept: tuple[str, ...], least
 
 
 def whole_horizon_s(shop: Shop) -> int:
-    """Return a time by which some best plan has ended: from the last change in the hall one after another."""
-    quiet = [0, *shop.orders.release_s.tolist(), *(pause.end_s for pause in shop.breaks)]
-    quiet += [shut.end_s for machine in shop.machines for shut in machine.closed]
-    quiet += [end for crew in shop.crews for _, end, _ in crew.levels]
-    change = [max(each.between, *each.pairs.values(), 0) for each in shop.changeovers.values()]
+    """Return a time by which some best plan has ended: from the last change in the hall one after another.
+
+    What begins after that and is pushed to the left begins when something else has ended, and the changeover
+    of its machine or its way there is over. A machine that is shut for good, or a crew that is another for
+    good, changes for the last time when that begins: nobody waits for its end.
+    """
+    hall, columns = shop.machines, shop.operations
+    quiet = [0, *shop.orders.release_s.tolist()]
+    for shut in {machine.closed for machine in hall} | {()}:
+        spans = united((each.start_s, each.end_s) for each in (*shop.breaks, *shut))
+        quiet += [_settled(start, end) for start, end in spans]
+    quiet += [_settled(start, end) for crew in shop.crews for start, end, _ in crew.levels]
     way = max(shop.transport.between, *shop.transport.pairs.values(), 0)
-    gaps = (max(change, default=0) + way) * (len(shop) + 1)
-    return int(max(quiet) + np.sum(shop.operations.seconds) + gaps)
+    rules = [shop.changeovers.get(machine.id) for machine in hall]
+    gap = [way if rule is None else max(way, rule.between, *rule.pairs.values()) for rule in rules]
+    visits = np.bincount(columns.machine, minlength=len(hall)) + 1
+    return int(max(quiet) + np.sum(columns.seconds) + np.dot(visits, gap))
+
+
+def _settled(start: int, end: int) -> int:
+    """Return when a stretch changes the hall for the last time."""
+    return max(0, start if end - start >= FOR_GOOD_S else end)
