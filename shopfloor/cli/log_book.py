@@ -28,7 +28,8 @@ def open_plan(
         bool, typer.Option("--again", help="Issue another plan in a journal that has one.")
     ] = False,
     at: Annotated[
-        str | None, typer.Option("--at", metavar="TIME", help="When it takes force; now without it.")
+        str | None,
+        typer.Option("--at", metavar="TIME", help="When another plan takes force; now without it."),
     ] = None,
     who: shared.WhoOption = "",
     as_json: common.JsonOption = False,
@@ -36,10 +37,13 @@ def open_plan(
 ) -> None:
     """Make the journal of a shift: PLAN is issued. The same plan once more changes nothing.
 
-    Exit code 0: done. 1: the journal has another plan, and --again was not said. 2: bad input.
+    The first plan is in force from the start of the shift.
+
+    Exit code 0: done. 1: the journal has another plan and --again was not said, or the time cannot be.
+    2: bad input.
     """
     from shopfloor.errors import InputError
-    from shopfloor.journal.errors import EntryError
+    from shopfloor.journal.errors import EntryError, RefusedError
     from shopfloor.journal.events import Journal, Recorded
 
     path = shared.journal_path(journal)
@@ -55,6 +59,8 @@ def open_plan(
         shared.refuse_file(error, as_json)
     except EntryError as error:
         shared.refuse_value(error, as_json)
+    except RefusedError as error:
+        shared.refuse_entry(error, as_json)
     with opened:
         shared.print_recorded([done], opened, as_json=as_json, quiet=quiet)
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import sqlite3
 from collections.abc import Iterable, Iterator, Sequence
 from contextlib import contextmanager
+from dataclasses import replace
 from datetime import datetime
 from pathlib import Path
 from types import TracebackType
@@ -16,6 +17,7 @@ from shopfloor.journal.entries import Entry
 from shopfloor.journal.errors import JournalError, Refusal, RefusedError
 from shopfloor.journal.pieces import IssuedPlan
 from shopfloor.journal.record import Recorded, Recorder, Writer, write
+from shopfloor.journal.rules import Judge
 from shopfloor.journal.state import MINIMUM_LEFT_S, state
 from shopfloor.model.actuals import Event, Kind, PieceState, ShiftState
 from shopfloor.model.clock import Clock
@@ -141,10 +143,12 @@ class Journal:
     def issue(self, plan: IssuedPlan, by: Recorder, *, at_s: int | None = None, who: str = "") -> Recorded:
         """Write that a plan was issued, with all of it; the plan in force already is a repeat.
 
-        `at_s` is when it takes force, else now; never before the shift's start.
+        `at_s` is when it takes force, else now; never before the plan in force did.
 
         Raises
         ------
+        RefusedError
+            If that is in the future, or long after the shift.
         JournalError
             If the plan is for another shift, or the disk refuses.
         """
@@ -163,6 +167,9 @@ class Journal:
                 return Recorded(plans[-1], repeat=True)
             earliest = plans[-1].at_s if plans else 0
             when = max(earliest, at_s if at_s is not None else by.now_s or 0)
+            refusals = Judge(self._lookup, self.clock, self._last_s, by.now_s).times(0, when)
+            if refusals:
+                raise RefusedError([replace(one, final=True) for one in refusals])
             event = _issue_event(self._lookup.last_seq() + 1, plan, when, by, who)
             write(self._connection, event)
         return Recorded(event)

@@ -60,7 +60,8 @@ def row_numbers(
     rest = [row for row in rows if row.place not in found]
     anew = [row for row in rest if made_s is not None and row.part > 1]
     whole = sorted((row for row in rest if made_s is None or row.part == 1), key=lambda row: row.length_s)
-    free = sorted((piece for piece in known if piece.key.piece not in named), key=_rank)[: len(whole)]
+    free = [piece for piece in known if piece.key.piece not in named]
+    free = sorted(free, key=lambda piece: _rank(piece, made_s is not None))[: len(whole)]
     offers = [(_length(piece, made_s), next(fresh) if piece.failed else piece.key.piece) for piece in free]
     found |= {row.place: number for row, (_, number) in zip(whole, sorted(offers), strict=False)}
     for row in (*sorted(whole[len(free) :]), *sorted(anew, key=lambda row: row.place)):
@@ -91,14 +92,14 @@ def _under_way(rows: Sequence[Row], known: Sequence[PieceState], made_s: int | N
     return found
 
 
-def _rank(piece: PieceState) -> tuple[int, int, int]:
+def _rank(piece: PieceState, rest: bool) -> tuple[int, int, int]:
     """Return how likely a row goes on with an operation, the likeliest first; of those stopped the last."""
     if piece.failed:
         rank = 2
     elif piece.status in (Status.DONE, Status.CANCELLED):
         rank = 4
-    elif _is_running(piece):
-        rank = 3
+    elif rest and _is_running(piece):
+        rank = 3  # its row would have begun before the plan was made
     else:
         rank = 0 if piece.touched else 1
     return rank, -(piece.start_s or 0), piece.key.piece

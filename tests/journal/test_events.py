@@ -600,6 +600,21 @@ def test_a_plan_of_another_shift_is_refused(book: Journal) -> None:
     )
 
 
+@pytest.mark.parametrize(
+    ("now", "at", "words"),
+    [
+        (100 * 86400, None, "is 99 days after the end of the shift; check that this is the right journal"),
+        (3600, 7200, "08:00 is in the future, it is 07:00 now; correct the time"),
+    ],
+)
+def test_a_plan_takes_force_during_its_shift(book: Journal, now: int, at: int | None, words: str) -> None:
+    with pytest.raises(RefusedError) as caught:
+        book.issue(issued(sha256="1" * 64), Recorder(now_s=now), at_s=at)
+    (why,) = caught.value.refusals
+    assert why.final
+    assert words in why.text()
+
+
 def test_a_plan_of_another_time_zone_is_of_another_shift(book: Journal) -> None:
     with pytest.raises(JournalError) as caught:
         book.issue(issued(clock=replace(CLOCK, zone=ZoneInfo("Europe/London")), sha256="1" * 64), LATE)
