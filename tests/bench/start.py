@@ -41,17 +41,21 @@ def main() -> None:
         folder = Path(name)
         orders_file(folder / "orders.csv")
         tool = [sys.executable, "-m", "shopfloor"]
+        journal = ["--journal", str(folder / "shift.journal")]
+        seconds([*tool, "plan", str(folder / "orders.csv"), "--out", str(folder / "out")])
+        seconds([*tool, "log", "open", str(folder / "out" / "plan.json"), *journal])
         commands = {
             "bare interpreter": [sys.executable, "-c", "pass"],
             HEAVY: [sys.executable, "-c", HEAVY],
             "`--help`": [*tool, "--help"],
             "`check`": [*tool, "check", str(folder / "orders.csv")],
             "`plan`, all files": [*tool, "plan", str(folder / "orders.csv"), "--out", str(folder / "out")],
+            "`log remark`": [*tool, "log", "remark", "--at", "0:00", *journal],
         }
         times: dict[str, list[float]] = {what: [] for what in commands}
         for run in range(RUNS + 1):
             for what, command in commands.items():
-                took = seconds(command)
+                took = seconds([*command, f"word {run}"] if what == "`log remark`" else command)
                 if run:  # the first warms the file cache
                     times[what].append(took)
     median = {what: statistics.median(values) for what, values in times.items()}
