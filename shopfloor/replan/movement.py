@@ -75,18 +75,24 @@ class Reference:
 
     def moves(self, places: Sequence[Place]) -> Moves:
         """Return what a new plan, an entry an operation, moves; O(n log n)."""
-        count = resequenced = weight = 0
-        for line in self.lines:
-            ties = sorted(line, key=lambda k: (self.was[k].start_s, places[k].start_s, k))
-            kept = longest_in_order([places[k].start_s for k in ties])
-            for k, stays in zip(ties, kept, strict=True):
-                moved = self._moved(self.was[k], places[k])
-                if moved or not stays:
-                    count += 1
-                    resequenced += not stays
-                    weight += self.weight[k] * (moved + (not stays))
-        return Moves(count, resequenced, weight)
+        each = [self.moves_of(line, places) for line in self.lines]
+        return Moves(*(sum(column) for column in zip(*each, strict=True))) if each else Moves(0, 0, 0)
 
-    def _moved(self, old: Place, new: Place) -> bool:
+    def moves_of(self, line: Sequence[int], places: Sequence[Place]) -> tuple[int, int, int]:
+        """Return what it moves on one machine: how many moved, how many resequenced, their weight."""
+        count = resequenced = weight = 0
+        ties = sorted(line, key=lambda k: (self.was[k].start_s, places[k].start_s, k))
+        kept = longest_in_order([places[k].start_s for k in ties])
+        for k, stays in zip(ties, kept, strict=True):
+            moved = self.moved(k, places[k])
+            if moved or not stays:
+                count += 1
+                resequenced += not stays
+                weight += self.weight[k] * (moved + (not stays))
+        return count, resequenced, weight
+
+    def moved(self, k: int, new: Place) -> bool:
+        """Whether an operation that was planned starts or ends clearly off, or on another unit."""
+        old = self.was[k]
         shift = max(abs(new.start_s - old.start_s), abs(new.end_s - old.end_s))
         return shift > self.moved_s or new.unit != old.unit

@@ -10,7 +10,7 @@ import numpy as np
 
 from shopfloor.model.schedule import Schedule
 from shopfloor.model.shop import NO_DUE, NO_FAMILY, NO_STEP, Operations, Orders, Shop
-from shopfloor.openshop.floor.rules import FAR, NONE, Rules
+from shopfloor.openshop.floor.rules import NONE, Rules
 from shopfloor.openshop.floor.timetable import Spot, Timetable
 from shopfloor.openshop.incumbent import weights
 from shopfloor.replan.movement import Place
@@ -74,30 +74,38 @@ class Bench:
     ----------
     movable
         The operations that do not run yet, in the order of the shop.
+    lines
+        The operations of each machine.
+    rules
+        The rules of what is left, as lists.
     """
 
     def __init__(self, rest: Residual, was: Mapping[int, Place], goals: Sequence[str]) -> None:
         self.rest, self.was, self.goals = rest, was, tuple(goals)
         self._count = len(rest.solve)
         self._blocks = tuple(_blocks(rest))
-        self._rules = Rules.of(_with_blocks(rest.solve, self._blocks))
+        self.rules = Rules.of(_with_blocks(rest.solve, self._blocks))
         self._weights = weights(rest.solve)
         self._steps = _ranked(rest.solve)
         self.movable = [k for k in range(self._count) if k not in rest.pinned]
         self._pins = {k: self._spot(k) for k in sorted(rest.pinned)}
+        self.lines: list[list[int]] = [[] for _ in rest.solve.machines]
+        for k in range(self._count):
+            self.lines[self.rules.machine[k]].append(k)
 
     @property
     def free_units(self) -> bool:
         """Whether `rest.fresh` says all there is: nothing runs in a group, and no unit of one is down."""
         return not self._blocks and len(self.rest.fresh) == len(self.movable)
 
-    def _alike(self, machine: int) -> bool:
-        return self._rules.count[machine] > 1 and self._rules.change[machine] is None
+    def alike(self, machine: int) -> bool:
+        """Whether any unit of a machine of several does, so that units are dealt after the times."""
+        return self.rules.count[machine] > 1 and self.rules.change[machine] is None
 
     def _spot(self, k: int) -> Spot:
         """Return where running work stands on the clock that starts at begin."""
         one, origin = self.rest.pinned[k], self.rest.begin_s
-        unit = NONE if self._alike(one.machine) else one.unit - 1
+        unit = NONE if self.alike(one.machine) else one.unit - 1
         return Spot(max(0, one.resumes_s - origin), one.ends_s - origin, unit)
 
     # ---- timing ------------------------------------------------------------------------------------
@@ -117,20 +125,34 @@ class Bench:
         -------
         None if some operation finds no place, because its crew is never large enough again.
         """
-        table = Timetable(self._rules)
-        for k, block in enumerate(self._blocks, self._count):
-            table.place(k, Spot(0, block.until_s, NONE if self._alike(block.machine) else block.unit - 1))
-        for k, spot in self._pins.items():
-            table.place(k, spot)
+        table = self.table()
         wanted = units or {}
         for k in self._in_steps(list(sequence)):
             found = table.earliest(k, unit=wanted[k] - 1 if k in wanted else None)
             if found is None:
                 return None
             table.place(k, found)
-        spots = [spot for spot in table.spots[: self._count] if spot is not None]
-        unit = self._units(spots)
-        return self.timed(Visit(k, spot.start, spot.end, unit[k]) for k, spot in enumerate(spots))
+        return self.told(table)
+
+    def table(self) -> Timetable:
+        """Return a timetable in which only what runs stands, and what keeps units of groups."""
+        table = Timetable(self.rules)
+        for k, block in enumerate(self._blocks, self._count):
+            if self.alike(block.machine):
+                table.place(k, Spot(0, block.until_s, NONE))
+            else:  # what only tells the family lies before the clock starts, so that nothing shares its start
+                table.place(k, Spot(0 if block.until_s else -1, block.until_s, block.unit - 1))
+        for k, spot in self._pins.items():
+            table.place(k, spot)
+        return table
+
+    def told(self, table: Timetable) -> Timed:
+        """Return a timetable in which everything stands, with its units and what counts of it."""
+        unit: dict[int, int] = {}
+        for machine in range(len(self.lines)):
+            unit |= self.units(machine, table.spots)
+        spots = enumerate(table.spots[: self._count])
+        return self.timed(Visit(k, spot.start, spot.end, unit[k]) for k, spot in spots if spot is not None)
 
     def of_fresh(self, schedule: Schedule) -> Timed:
         """Return a schedule of `rest.fresh` as it is, with what runs; only where `free_units`."""
@@ -141,38 +163,46 @@ class Bench:
 
     def timed(self, visits: Iterable[Visit]) -> Timed:
         """Return visits with what counts of them."""
-        rules, found = self._rules, tuple(sorted(visits))
+        rules, found = self.rules, tuple(sorted(visits))
         done = [0] * len(self.rest.solve.orders)
         places: dict[int, Place] = {}
         for k, begin, end, unit in found:
             done[rules.job[k]] = max(done[rules.job[k]], end)
             first = places.get(k)
             places[k] = Place(begin, end, unit) if first is None else first._replace(end_s=end)
-        late = (
-            weight * (end - due)
-            for weight, end, due in zip(self._weights, done, rules.due, strict=False)
-            if due != FAR and end > due
-        )
-        makespan, tardiness = max(done, default=0), sum(late)
-        values = {"makespan": makespan, "tardiness": tardiness}
+        listed = [places[k] for k in range(self._count)]
+        changed = 0
         if "changeovers" in self.goals:
-            values["changeovers"] = self._changed(found)
-        listed = tuple(places[k] for k in range(self._count))
-        return Timed(found, listed, makespan, tardiness, tuple(values[goal] for goal in self.goals))
+            changed = sum(self.changed(machine, listed) for machine in range(len(self.lines)))
+        makespan, tardiness = max(done, default=0), self.tardiness(done)
+        return Timed(found, tuple(listed), makespan, tardiness, self.value(done, changed))
 
-    def _changed(self, visits: Sequence[Visit]) -> int:
-        """Return the seconds of all changeovers."""
-        rules, total = self._rules, 0
-        last: dict[tuple[int, int], int] = {}
-        for k, _, _, unit in sorted(visits, key=lambda visit: (visit.start, visit.operation)):
-            machine = rules.machine[k]
-            table = rules.change[machine]
-            if table is None:
-                continue
-            before = last.get((machine, unit), rules.begins[machine])
+    def tardiness(self, done: Sequence[int]) -> int:
+        """Return seconds late × thousandths of priority over all orders, `done` being when each is."""
+        rows = zip(self._weights, done, self.rules.due, strict=False)
+        return sum(weight * (end - due) for weight, end, due in rows if end > due)
+
+    def value(self, done: Sequence[int], changed: int) -> tuple[int, ...]:
+        """Return what counts first, second and so on, from when orders are done and seconds of changeover."""
+        values = {
+            "makespan": lambda: max(done, default=0),
+            "tardiness": lambda: self.tardiness(done),
+            "changeovers": lambda: changed,
+        }
+        return tuple(values[goal]() for goal in self.goals)
+
+    def changed(self, machine: int, places: Sequence[Place]) -> int:
+        """Return the seconds of all changeovers of a machine."""
+        rules, total = self.rules, 0
+        table = rules.change[machine]
+        if table is None:
+            return 0
+        last: dict[int, int] = {}
+        for k in sorted(self.lines[machine], key=lambda k: (places[k].start_s, k)):
+            before = last.get(places[k].unit, rules.begins[machine])
             if before != NONE:
                 total += table[before][rules.family[k]]
-            last[machine, unit] = rules.family[k]
+            last[places[k].unit] = rules.family[k]
         return total
 
     def _in_steps(self, sequence: list[int]) -> list[int]:
@@ -180,7 +210,7 @@ class Bench:
         if not self._steps:
             return sequence
         place = {k: index for index, k in enumerate(sequence)}
-        step = self._rules.step
+        step = self.rules.step
         for ranked in self._steps:
             mine = [k for k in ranked if k in place]
             slots = sorted(place[k] for k in mine)
@@ -188,34 +218,45 @@ class Bench:
                 sequence[slot] = k
         return sequence
 
-    def _units(self, spots: Sequence[Spot]) -> list[int]:
-        """Return the unit of each operation, from 1; of units that are alike, running work has its own.
+    def units(self, machine: int, spots: Sequence[Spot | None]) -> dict[int, int]:
+        """Return the unit of each operation of a machine, from 1; running work has its own.
 
-        By start each has the unit it was to have, if that is free, else the lowest free one. One always is:
-        at no moment there are more visits than units, and what is blocked is so from begin on.
+        Where units are alike they are dealt here: by start each operation has the unit it was to have, if
+        that is free, else of the free ones that which is wanted last. One always is free: at no moment
+        there are more visits than units, and what is blocked is so from begin on.
         """
-        unit = [1 if spot.unit == NONE else spot.unit + 1 for spot in spots]
-        groups: dict[int, list[int]] = {}
-        for k, spot in enumerate(spots):
-            if spot.unit == NONE:
-                groups.setdefault(self._rules.machine[k], []).append(k)
-        for machine, mine in groups.items():
-            free = [0] * self._rules.count[machine]
-            for block in self._blocks:
-                if block.machine == machine:
-                    free[block.unit - 1] = max(free[block.unit - 1], block.until_s)
-            for k in mine:
-                if k in self._pins:
-                    unit[k] = self.rest.pinned[k].unit
-                    free[unit[k] - 1] = max(free[unit[k] - 1], spots[k].end)
-            for k in sorted(mine, key=lambda k: (spots[k].start, k)):
-                if k in self._pins:
-                    continue
-                open_ = [number for number, until in enumerate(free, 1) if until <= spots[k].start]
-                wanted = self.was[k].unit if k in self.was else 0
-                unit[k] = wanted if wanted in open_ else open_[0]
-                free[unit[k] - 1] = spots[k].end
-        return unit
+        if not self.alike(machine):
+            return {k: spot.unit + 1 for k in self.lines[machine] if (spot := spots[k]) is not None}
+        free = [0] * self.rules.count[machine]
+        for block in self._blocks:
+            if block.machine == machine:
+                free[block.unit - 1] = max(free[block.unit - 1], block.until_s)
+        found: dict[int, int] = {}
+        waiting: list[tuple[int, int, int]] = []
+        wanted: list[list[int]] = [[] for _ in free]  # starts of those that were to run there, last first
+        for k in self.lines[machine]:
+            spot = spots[k]
+            if spot is None:
+                continue
+            if k in self._pins:
+                found[k] = self.rest.pinned[k].unit
+                free[found[k] - 1] = max(free[found[k] - 1], spot.end)
+                continue
+            waiting.append((spot.start, k, spot.end))
+            if k in self.was and self.was[k].unit <= len(free):
+                wanted[self.was[k].unit - 1].append(spot.start)
+        for starts in wanted:
+            starts.sort(reverse=True)
+        for start, k, end in sorted(waiting):
+            for starts in wanted:
+                while starts and starts[-1] < start:
+                    starts.pop()
+            own = self.was[k].unit if k in self.was else 0
+            open_ = [unit for unit, until in enumerate(free, 1) if until <= start]
+            if own not in open_:
+                own = min(open_, key=lambda unit: (-min([end, *wanted[unit - 1][-1:]]), unit))
+            found[k], free[own - 1] = own, end
+        return found
 
     # ---- back on the shift's clock -------------------------------------------------------------------
 

@@ -33,11 +33,12 @@ from shopfloor.replan.outlook import OUTAGE_S, outlook
 from shopfloor.replan.remaining import MINIMUM_LEFT_S, remaining
 from shopfloor.replan.residual import Residual, residual
 from shopfloor.replan.told import Told, told
+from shopfloor.rolling.archive import Candidate, worse_than
 from shopfloor.rolling.bench import Bench, Timed
 from shopfloor.rolling.mend import mended
-from shopfloor.rolling.search import Candidate, Search
+from shopfloor.rolling.search import Search
 from shopfloor.rolling.sides import after_side, before_side
-from shopfloor.rolling.trade import Trade, limits_of, sentences, trades_of, worse_than
+from shopfloor.rolling.trade import Trade, sentences, trades_of
 
 SEARCH_SHARE = 0.5  # of the time for a fresh plan; the other half goes into moving less
 
@@ -136,13 +137,14 @@ def replan(
     }
     bench = Bench(rest, was, options.objective)
     reference = Reference(was, rest.solve.operations.machine.tolist(), now_s - rest.begin_s)
-    search = Search(bench, reference, over)
+    search = Search(bench, reference, over, seed=options.seed)
     search.kept()
     fresh = _fresh(rest, replace(options, time_limit_s=options.time_limit_s * SEARCH_SHARE), report, stop)
     scratch = _offer_fresh(search, bench, fresh, rows)
     if not search.archive.front:
         raise NoPlanError(_why_none(rest, options))
-    best, chosen = _settled(search, bench.goals, stability_s)
+    search.sharpen(0 if fresh is None else fresh.lower_bound_s)
+    best, chosen = search.settled(stability_s)
     made = _plan(
         rest,
         bench,
@@ -238,19 +240,6 @@ def _offer_fresh(search: Search, bench: Bench, fresh: Plan | None, rows: Mapping
     if timed is not None:
         search.between(timed)
     return None if found is None else found.moves
-
-
-def _settled(search: Search, goals: Sequence[str], stability_s: int) -> tuple[Candidate, Candidate]:
-    """Return the best candidate, and the one that moves least among those near enough to it.
-
-    On the way back towards the old plan a better one than the best may turn up; then that one counts.
-    """
-    while True:
-        best = search.archive.best()
-        limits = limits_of(best, goals, stability_s)
-        search.settle(limits)
-        if search.archive.best().timed.value == best.timed.value:
-            return search.archive.best(), search.archive.chosen(limits)
 
 
 def _why_none(rest: Residual, options: Options) -> str:

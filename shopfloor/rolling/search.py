@@ -1,78 +1,29 @@
-"""Candidates between the old plan and a fresh one, and the choice among them.
+"""The search for little movement: the old sequence kept, a fresh one, what lies between; then repairs.
 
-Serial generation (:mod:`shopfloor.openshop.floor.timetable`) turns a sequence into the timetable in which
-each operation stands as early as it may beside those before. So a candidate is a sequence: the old one, a
-fresh one, or one that follows the fresh plan in places and the old one elsewhere. From a good candidate the
-search goes back towards the old plan, machine by machine, then stretch by stretch, then operation by
-operation, and keeps each step that ends in time and moves less.
-
-Every timetable made goes into an archive of those that nothing beats in every goal and movement at once; so
-the trade between them is known without asking for it. How many are made depends on the size of the shop, not
-on the clock, so that they repeat.
+Between the plan that moves least and the one that ends earliest lie sequences that take after the old one
+for some while and after the fresh one then, or after both. They, and timetables built around the old plan,
+are repaired until nothing brings more of them back home within the limits. Every timetable made goes into an
+archive of those that nothing beats in every goal and movement at once; so the trade between them is known
+without asking for it. How many are made depends on the size of the shop, not on the clock, so that they
+repeat.
 """
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
-from dataclasses import dataclass, field
+from collections.abc import Callable, Iterator, Mapping
 
-from shopfloor.replan.movement import Moves, Reference
+from shopfloor.replan.movement import Reference
+from shopfloor.rolling.archive import Archive, Candidate, Limits, limits_of
 from shopfloor.rolling.bench import Bench, Timed
+from shopfloor.rolling.repair import Repair
+from shopfloor.rolling.sharpen import sharpened
 
-PLACED = 200_000  # operations placed in all timetables of one search together
-FEWEST, MOST = 60, 1_500  # timetables
-WINDOWS = (8, 4, 2, 1)  # how many operations of a machine are taken back at once, in this order
+PLACED = 400_000  # places looked for in all repairs of one search together
+SHAKES = 1_500
 BLENDS = (0.25, 0.5, 0.75)
 CUTS = 6  # moments at which a candidate changes from one sequence to the other
 
 Keys = dict[int, float]
-Limits = tuple[int, ...]  # the most of each goal, in the order of the goals
-
-
-@dataclass(frozen=True)
-class Candidate:
-    """A timetable, what it moves, and which kind of sequence it came from."""
-
-    timed: Timed
-    moves: Moves
-    origin: str
-
-    @property
-    def key(self) -> tuple[int, ...]:
-        """What counts, in its order, and movement last."""
-        return (*self.timed.value, self.moves.weight)
-
-
-def within(timed: Timed, limits: Limits) -> bool:
-    """Whether a timetable is no worse in any goal than allowed."""
-    return all(value <= limit for value, limit in zip(timed.value, limits, strict=True))
-
-
-@dataclass
-class Archive:
-    """The candidates that nothing beats in every goal and movement at once."""
-
-    front: list[Candidate] = field(default_factory=list)
-
-    def offer(self, one: Candidate) -> bool:
-        """Keep a candidate unless one kept is as good in everything; tell whether it was kept."""
-        key = one.key
-        if any(all(a <= b for a, b in zip(kept.key, key, strict=True)) for kept in self.front):
-            return False
-        self.front = [
-            kept for kept in self.front if not all(a <= b for a, b in zip(key, kept.key, strict=True))
-        ]
-        self.front.append(one)
-        return True
-
-    def best(self) -> Candidate:
-        """The best by what counts, one after the other; then the one that moves least."""
-        return min(self.front, key=lambda one: one.key)
-
-    def chosen(self, limits: Limits) -> Candidate:
-        """The one that moves least, by weight, among those within limits; of equals the better one."""
-        fine = [one for one in self.front if within(one.timed, limits)]
-        return min(fine, key=lambda one: (one.moves.weight, one.key))
 
 
 class Search:
@@ -86,14 +37,26 @@ class Search:
         The old plan, on the bench's clock.
     over
         Asked between timetables; true ends the search with what it has.
+    seed
+        Of the parts drawn in repairs.
+
+    Attributes
+    ----------
+    archive
+        What was found.
+    complete
+        Whether nothing was cut short by `over`.
+    bound_s
+        A lower bound of the makespan, as far as known.
     """
 
-    def __init__(self, bench: Bench, reference: Reference, over: Callable[[], bool]) -> None:
-        self.bench, self.reference, self._over = bench, reference, over
+    def __init__(
+        self, bench: Bench, reference: Reference, over: Callable[[], bool], *, seed: int = 0
+    ) -> None:
+        self.bench, self.reference, self._over, self._seed = bench, reference, over, seed
         self.archive = Archive()
-        size = max(1, len(bench.movable))
-        self._left = max(FEWEST, min(MOST, PLACED // size))
-        self.complete, self._timed = True, False
+        self.complete, self.bound_s = True, 0
+        self._timed, self._left = False, PLACED
         self._old = _old_keys(bench, reference)
 
     # ---- single timetables ---------------------------------------------------------------------------
@@ -107,22 +70,23 @@ class Search:
         return found
 
     def _time(self, keys: Keys, origin: str) -> Candidate | None:
-        """Time operations by their keys; None where that cannot be, or where the search is at its end.
+        """Time operations by their keys; None where that cannot be, or where time is up.
 
-        The first timetable, that of the old sequence, is made even if time is up: it is always a candidate.
+        The first timetable, that of the old sequence, is made even then: it is always a candidate.
         """
-        if self._left <= 0:
-            return None
-        if self._timed and self._over():
-            self.complete, self._left = False, 0
+        if self._timed and self._ended():
             return None
         self._timed = True
-        self._left -= 1
         sequence = sorted(self.bench.movable, key=lambda k: (keys[k], k))
         units = {k: was.unit for k, was in self.bench.was.items()}
         return self.offer(self.bench.time(sequence, units), origin)
 
-    # ---- the search ----------------------------------------------------------------------------------
+    def _ended(self) -> bool:
+        if self.complete and self._over():
+            self.complete = False
+        return not self.complete
+
+    # ---- between the old plan and a fresh one ----------------------------------------------------------
 
     def kept(self) -> None:
         """Time the old sequence; what is new comes where its order's time runs out, or first, or last."""
@@ -142,54 +106,72 @@ class Search:
         for share in BLENDS:
             self._time({k: share * old[k] + (1 - share) * new[k] for k in new}, "repaired")
 
-    def settle(self, limits: Limits) -> None:
-        """From the best candidate so far go back towards the old plan, within limits."""
-        while self._left > 0:
-            before = self.archive.chosen(limits)
-            self._descend(before, limits)
-            if self.archive.chosen(limits) is before:
-                return
+    def sharpen(self, bound_s: int) -> None:
+        """Improve what moves least so far and what is best, unless nothing can be better; O(steps)."""
+        self.bound_s = bound_s
+        best = self.archive.best()
+        if best.timed.makespan_s <= bound_s and not best.timed.tardiness:
+            return
+        for one in dict.fromkeys((self.archive.nearest(), best)):
+            if not self._ended():
+                timed, ended = sharpened(self.bench, one.timed, bound_s, self._over, seed=self._seed)
+                self.offer(timed, "repaired")
+                self.complete &= ended
 
-    def _descend(self, start: Candidate, limits: Limits) -> None:
-        best, keys = start, _keys(start.timed)
-        for window in (None, *WINDOWS):
-            for some in self._stretches(keys, window):
-                tried = {**keys, **self._back(keys, some)}
-                if tried == keys:
-                    continue
-                found = self._time(tried, "repaired")
-                if found is None:
-                    if self._left <= 0:
-                        return
-                    continue
-                if within(found.timed, limits) and found.moves.weight < best.moves.weight:
-                    best, keys = found, _keys(found.timed)
+    # ---- repairs ---------------------------------------------------------------------------------------
 
-    def _stretches(self, keys: Keys, window: int | None) -> Iterator[Sequence[int]]:
-        """Yield the operations that are taken back together: those of a machine, or stretches of them."""
-        weight = self.reference.weight
-        lines = [line for line in self._lines() if len(line) > 1 or window == 1]
-        for line in sorted(lines, key=lambda line: (-sum(weight.get(k, 0) for k in line), line)):
-            if window is None:
-                yield line
-                continue
-            step = max(1, window // 2)
-            for first in range(0, max(1, len(line) - window + 1), step):
-                yield line[first : first + window]
+    def settled(self, stability_s: int) -> tuple[Candidate, Candidate]:
+        """Return the best candidate, and the one that moves least among those near enough to it.
 
-    def _lines(self) -> Iterable[tuple[int, ...]]:
-        movable = set(self.bench.movable)
-        for line in self.reference.lines:
-            mine = tuple(k for k in line if k in movable)
-            if mine:
-                yield mine
+        On the way back towards the old plan a better one than the best may turn up; then that one counts.
+        What moves least without any loss is looked for first, so that more stability moves no more.
+        """
+        goals = self.bench.goals
+        for allowed_s in sorted({0, stability_s}):
+            while True:
+                best = self.archive.best().timed.value
+                self._settle(limits_of(self.archive.best(), goals, allowed_s), strict=not allowed_s)
+                if self.archive.best().timed.value == best:
+                    break
+        best_one = self.archive.best()
+        return best_one, self.archive.chosen(limits_of(best_one, goals, stability_s))
 
-    def _back(self, keys: Keys, some: Sequence[int]) -> Keys:
-        """Return keys that put some operations of a machine in their old order; of one, its old start."""
-        if len(some) == 1:
-            return {some[0]: self._old[some[0]]}
-        slots = sorted(keys[k] for k in some)
-        return dict(zip(sorted(some, key=lambda k: (self._old[k], k)), slots, strict=True))
+    def _settle(self, limits: Limits, *, strict: bool) -> None:
+        """Look for what moves less within limits: built around the old plan, or mended."""
+        new = [k for k in self.bench.movable if k not in self.reference.was]
+        starts = [self.archive.nearest().timed]
+        for first in ([], new) if new else ([],):
+            repair = self._repair(limits, strict)
+            built = list(repair.build(first))
+            for timed in built:
+                self.offer(timed, "repaired")
+            starts += built[-1:]
+            self._count(repair)
+        for timed in starts:
+            self._mend(timed, limits, strict)
+        self._mend(self.archive.chosen(limits).timed, limits, strict, SHAKES)
+
+    def _mend(self, timed: Timed, limits: Limits, strict: bool, shakes: int = 0) -> None:
+        if not self._ended():
+            repair = self._repair(limits, strict)
+            self.offer(repair.mended(timed, shakes, self._seed), "repaired")
+            self._count(repair)
+
+    def _repair(self, limits: Limits, strict: bool) -> Repair:
+        return Repair(
+            self.bench,
+            self.reference,
+            self._old,
+            limits,
+            strict=strict,
+            bound_s=self.bound_s,
+            most=self._left,
+            over=self._over,
+        )
+
+    def _count(self, repair: Repair) -> None:
+        self._left = max(0, self._left - repair.placed)
+        self.complete &= repair.complete
 
     def _with_new(self) -> Iterator[Keys]:
         """Yield the old keys with those of new work: by how soon it must start, before all, after all."""

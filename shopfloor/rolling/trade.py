@@ -6,10 +6,8 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 from shopfloor.model.calendar import HOUR, MINUTE, duration
-from shopfloor.openshop.incumbent import TARDINESS
-from shopfloor.openshop.round_order import PRIORITY_UNIT
 from shopfloor.replan.movement import Moves
-from shopfloor.rolling.search import Archive, Candidate, Limits
+from shopfloor.rolling.archive import Archive, Candidate, limits_of, worse_than
 
 TRADES = 3  # so many alternatives are told
 DEAREST_S = HOUR  # what costs more than that in finish or lateness is no alternative
@@ -27,26 +25,6 @@ class Trade:
     worse_s: tuple[tuple[str, int], ...]
     moves: Moves
     stability_s: int
-
-
-def allowed(goal: str, seconds: int) -> int:
-    """Return what a goal's value may grow by for so many seconds: lateness is weighed in thousandths."""
-    return seconds * (PRIORITY_UNIT if goal == TARDINESS else 1)
-
-
-def limits_of(best: Candidate, goals: Sequence[str], stability_s: int) -> Limits:
-    """Return how much of each goal a plan may have, to be no more than `stability_s` worse than the best."""
-    return tuple(
-        value + allowed(goal, stability_s) for goal, value in zip(goals, best.timed.value, strict=True)
-    )
-
-
-def worse_than(one: Candidate, other: Candidate, goals: Sequence[str]) -> tuple[tuple[str, int], ...]:
-    """Return by how many (weighted) seconds a plan is worse than another, by goal; rounded up."""
-    return tuple(
-        (goal, -(-(value - least) // allowed(goal, 1)))
-        for goal, value, least in zip(goals, one.timed.value, other.timed.value, strict=True)
-    )
 
 
 def trades_of(chosen: Candidate, best: Candidate, archive: Archive, goals: Sequence[str]) -> list[Trade]:

@@ -31,7 +31,7 @@ from shopfloor.replan.told import told
 from shopfloor.rolling.plan import Replan, replan
 from tests.rolling.shifts import disrupt, hall, issue, listed_plan, opened, play, put, rounds_hall
 
-QUICK = Options(time_limit_s=4)
+QUICK = Options(time_limit_s=2)
 AMPLE = Options(time_limit_s=3600)  # never used up by a count of steps
 
 
@@ -112,7 +112,7 @@ def test_the_old_sequence_is_timed_even_if_there_is_no_time() -> None:
 
 
 @pytest.mark.usefixtures("without_clock")
-@pytest.mark.parametrize("seed", [5, 17])
+@pytest.mark.parametrize("seed", [0, 5])
 def test_the_same_journal_gives_the_same_bytes(seed: int) -> None:
     shop = hall(seed)
     made = by_steps(shop)

@@ -6,9 +6,9 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from shopfloor.replan.movement import Moves
+from shopfloor.rolling.archive import Archive, Candidate, limits_of, worse_than
 from shopfloor.rolling.bench import Timed
-from shopfloor.rolling.search import Archive, Candidate
-from shopfloor.rolling.trade import Trade, limits_of, sentences, trade_sentence, trades_of, worse_than
+from shopfloor.rolling.trade import Trade, sentences, trade_sentence, trades_of
 
 MIN = 60
 GOALS = ("makespan", "tardiness")
