@@ -38,7 +38,8 @@ RULES: dict[str, Rule] = {
     "time-future": Rule("{at} is in the future, it is {now} now{midnight}", "correct the time"),
     "time-before-shift": Rule("{at} is before the start of the shift, {start}", "correct the time"),
     "time-after-shift": Rule(
-        "{at} is {away} after the end of the shift{midnight}", "check that this is the right journal"
+        "{at} is {away} after the end of the shift{midnight}",
+        "say when it happened, or choose the right journal",
     ),
     "clock-back": Rule(
         "this computer's clock shows {now}, but the last entry was made at {last}",

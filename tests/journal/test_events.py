@@ -456,7 +456,7 @@ def test_a_journal_does_not_take_the_next_day_for_its_shift(book: Journal) -> No
     with pytest.raises(RefusedError) as caught:
         book.record([replace(STARTED, at_s=None)], Recorder(now_s=40 * 3600))
     assert str(caught.value) == (
-        "Tue 22:00 is 32 h after the end of the shift; check that this is the right journal"
+        "Tue 22:00 is 32 h after the end of the shift; say when it happened, or choose the right journal"
     )
 
 
@@ -603,7 +603,7 @@ def test_a_plan_of_another_shift_is_refused(book: Journal) -> None:
 @pytest.mark.parametrize(
     ("now", "at", "words"),
     [
-        (100 * 86400, None, "is 99 days after the end of the shift; check that this is the right journal"),
+        (100 * 86400, None, "is 99 days after the end of the shift; say when it happened"),
         (3600, 7200, "08:00 is in the future, it is 07:00 now; correct the time"),
     ],
 )
