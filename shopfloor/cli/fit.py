@@ -18,7 +18,10 @@ def fit(
     orders: common.OrdersArgument,
     shop: common.ShopOption = None,
     out: Annotated[
-        Path | None, typer.Option("--out", metavar="DIR", help="Folder for chosen.csv and carried.csv.")
+        Path | None,
+        typer.Option(
+            "--out", metavar="DIR", help="Folder for chosen.csv and carried.csv; without it none is written."
+        ),
     ] = None,
     must: Annotated[
         list[str] | None,

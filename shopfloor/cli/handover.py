@@ -42,7 +42,10 @@ def handover(
         ),
     ] = None,
     out: Annotated[
-        Path | None, typer.Option("--out", metavar="DIR", help="Folder for the page and the tables.")
+        Path | None,
+        typer.Option(
+            "--out", metavar="DIR", help="Folder for the page and the tables; without it none is written."
+        ),
     ] = None,
     start: ShiftStartOption = None,
     end: ShiftEndOption = None,

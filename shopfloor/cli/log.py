@@ -213,10 +213,10 @@ def cancel(order: shared.OrderArgument, reason: shared.ReasonOption = "") -> Mak
 def remark(
     text: Annotated[str, typer.Argument(metavar="TEXT", help="Anything the next shift should know.")],
     order: Annotated[
-        str, typer.Option("--order", metavar="ORDER", help="What it is about.", show_default=False)
+        str, typer.Option("--order", metavar="ORDER", help="The order it is about.", show_default=False)
     ] = "",
     machine: Annotated[
-        str, typer.Option("--machine", metavar="MACHINE", help="What it is about.", show_default=False)
+        str, typer.Option("--machine", metavar="MACHINE", help="The machine it is about.", show_default=False)
     ] = "",
 ) -> Making:
     """Write a remark into the journal."""

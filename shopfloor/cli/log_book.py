@@ -215,7 +215,12 @@ def scan(
     journal: shared.JournalOption = None,
     machine: Annotated[
         str,
-        typer.Option("--machine", metavar="MACHINE", help="The scanner is fixed to it.", show_default=False),
+        typer.Option(
+            "--machine",
+            metavar="MACHINE",
+            help="The machine that the scanner is fixed to.",
+            show_default=False,
+        ),
     ] = "",
     who: shared.WhoOption = "",
     accept: shared.AcceptOption = False,

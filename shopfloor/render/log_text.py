@@ -125,7 +125,8 @@ def state_lines(state: ShiftState, say: Say) -> list[str]:
     lines = [wrap(f"At {say(state.at_s)}: operations {said}. Good {state.good}, scrap {state.scrap}.")]
     if state.crew:
         present = ", ".join(
-            f"{cut(name, NAME)} {heads}" if name else str(heads) for name, heads in state.crew.items()
+            f"{cut(name or 'the hall', NAME)} {heads}" if len(state.crew) > 1 or name else str(heads)
+            for name, heads in state.crew.items()
         )
         lines.append(f"Crew present: {present}.")
     for status, line in ((Status.RUNNING, _running), (Status.BLOCKED, _blocked)):

@@ -261,6 +261,14 @@ def test_an_order_is_changed_in_one_thing_and_leaves_the_rest() -> None:
 
 
 @pytest.mark.usefixtures("journal")
+def test_crews_are_counted_by_name_and_the_hall_as_a_whole() -> None:
+    ok("crew", 5, "--at", "06:10")
+    assert "Crew present: 5." in ok("show", "--at", "06:20")
+    ok("crew", 4, "--pool", "fitters", "--at", "06:15")
+    assert "Crew present: the hall 5, fitters 4." in ok("show", "--at", "06:20")
+
+
+@pytest.mark.usefixtures("journal")
 def test_a_start_after_its_finish_is_told_as_such() -> None:
     answer = said("finish", "TQ-1", "WASH", "--from", "06:30", "--at", "06:10")
     assert answer.code == 2
