@@ -31,7 +31,7 @@ def test_every_argument_and_option_is_a_sentence(path: tuple[str, ...]) -> None:
 
 
 def test_an_option_says_the_same_wherever_it_means_the_same() -> None:
-    """But for those that mean another thing: a moment, a person, a folder, or in a shift what its journal says."""
+    """But for those that mean another moment, person, folder or machine, or what the journal says."""
     differ = {"--at", "--who", "--out", "--machine", "--objective", "--start", "--end"}
     said: dict[str, set[str]] = {}
     for command in COMMANDS.values():
