@@ -101,7 +101,7 @@ def test_parts_placed_again_fit_what_stays(shop: Shop, goals: list[str], count: 
     chosen = tuple(goals[:count])
     start = one_after_the_other(shop)
     with pytest.MonkeyPatch.context() as patch:
-        for name, value in (("MODEL_MOST", 0), ("BRIEF_MOST", 0), ("WINDOWS_FROM", 0)):
+        for name, value in (("MODEL_MOST", 0), ("BRIEF_MOST", 0)):
             patch.setattr(solve, name, value)
         for name, sizes in (("WINDOW_SIZES", (1, 2, 3)), ("TAIL_SIZES", (1, 2, 4, 8)), ("FRUITLESS", 6)):
             patch.setattr(windows, name, sizes)

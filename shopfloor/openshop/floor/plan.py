@@ -20,7 +20,9 @@ from shopfloor.openshop.incumbent import GOALS
 from shopfloor.openshop.method import Effort, Progress
 from shopfloor.openshop.units import assign_units
 
-ROUNDS = 8  # of rules and improvement, for each goal
+ROUNDS = 8  # of rules and improvement, for each goal of a floor on which the exact model moves fast
+LONG_FROM = 300  # operations from which it does not: there rounds go on until time is up
+NO_END = 2**31
 VARIANTS = 20  # rules varied in each round
 NEAR = 0.05  # by so much may a schedule pass what is kept and be worth a repair
 PASSED = 50.0  # times the share by which it does counts against it
@@ -32,7 +34,7 @@ NO_HEADS = "No plan was found: some operation needs more heads than its crew has
 
 
 def floor_plan(
-    shop: Shop, goals: tuple[str, ...] = GOALS, effort: Effort | None = None, *, rounds: int = ROUNDS
+    shop: Shop, goals: tuple[str, ...] = GOALS, effort: Effort | None = None, *, rounds: int | None = None
 ) -> Outcome:
     """Return the best schedule found for a shop with any rules of the floor; splits are not used.
 
@@ -44,7 +46,8 @@ def floor_plan(
     effort
         Of its bounds only that of the makespan is known here.
     rounds
-        How long each goal is improved, where time allows; 0 for list schedules only.
+        How long each goal is improved, where time allows; 0 for list schedules only, None to leave it to
+        the number of operations.
 
     Returns
     -------
@@ -55,6 +58,8 @@ def floor_plan(
     """
     if not len(shop):
         return Outcome(Schedule(*(np.zeros(0, np.int64),) * 3))
+    if rounds is None:
+        rounds = ROUNDS if len(shop) < LONG_FROM else NO_END
     return _Search(shop, goals, effort or Effort(), rounds).run()
 
 

@@ -36,8 +36,10 @@ MODEL_MOST = 1_000  # operations up to which the whole shop is put into one mode
 BRIEF_MOST = 300  # operations up to which one thread may settle a goal in a moment, and repeatably
 BRIEF_WORK = 0.5  # the solver's own units, about two seconds each
 LEAN_FROM = 400  # operations from which presolve is kept short: the first solution comes first
-WINDOWS_FROM = 110  # operations from which windows are smaller than the shop
-TRIED_SHARE = 0.5  # of a goal's time goes to windows before the whole model
+# For each goal: operations from which windows come before the whole model, and for what share of its time.
+# For late orders the whole model finds more in the same time, up to some 400 operations.
+WINDOWS_FROM = {TARDINESS: LEAN_FROM, CHANGEOVERS: 110}
+WINDOWS_SHARE = {TARDINESS: 0.2, CHANGEOVERS: 0.5}
 FIRST_SHARE = 0.6  # of the time left goes to a goal that another one follows
 STAGES = {MAKESPAN: "shortening", TARDINESS: "late orders", CHANGEOVERS: "changeovers"}
 
@@ -117,8 +119,9 @@ class _Search:
         ways: list[Callable[[], None]] = []
         if size <= BRIEF_MOST:
             ways.append(lambda: self._model(goal, kept, until, brief=True))
-        if size > WINDOWS_FROM and (goal != MAKESPAN or size > MODEL_MOST):
-            ways.append(lambda: self._parts(goal, kept, until, 1.0 if size > MODEL_MOST else TRIED_SHARE))
+        if size > min(WINDOWS_FROM.get(goal, MODEL_MOST), MODEL_MOST):
+            share = 1.0 if size > MODEL_MOST else WINDOWS_SHARE[goal]
+            ways.append(lambda: self._parts(goal, kept, until, share))
         if size <= MODEL_MOST:
             ways.append(lambda: self._model(goal, kept, until, brief=False))
         for way in ways:
