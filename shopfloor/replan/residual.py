@@ -16,7 +16,7 @@ Operation k of `shop` and of `solve` is one and the same.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -31,9 +31,9 @@ from shopfloor.replan.holding import (
     holdings,
     kept_out,
     merged,
-    outside,
     row_seconds,
 )
+from shopfloor.replan.machines import machines_ahead, moved
 from shopfloor.replan.outlook import Outlook, Running, future
 from shopfloor.replan.people import Held, change, crew_from, crew_of
 from shopfloor.replan.remaining import Left
@@ -184,7 +184,7 @@ class _Builder:
             np.array(seconds, np.int64),
             {k: int(self.columns.setup_s[self.operation[k]]) for k in self.pinned},
             Orders(self._names(), release, due, self.base.orders.priority[self.used]),
-            tuple(self._machines(self.now_s, 0, whole_rows=True)),
+            self._machines(self.now_s, 0, whole_rows=True),
             breaks=breaks,
             crews=tuple(
                 crew_of(name, heads_in_rows(self.base, self.look, name, heads, rows))
@@ -215,8 +215,8 @@ class _Builder:
             np.array([self.left[place].seconds for place in self.places], np.int64),
             {k: self.left[self.places[k]].setup_s for k in self.pinned},
             Orders(self._names(), release, self._due(release), self.base.orders.priority[self.used]),
-            tuple(self._machines(origin, origin)),
-            breaks=_moved(future(self.base.breaks, origin), origin),
+            self._machines(origin, origin),
+            breaks=moved(future(self.base.breaks, origin), origin),
             crews=tuple(crew_from(name, heads, origin) for name, heads in self.crews.items()),
             clock=Clock(start, self.base.clock.zone),
             end_s=None if end is None or end <= origin else end - origin,
@@ -373,44 +373,16 @@ class _Builder:
         moved = np.where(due == NO_DUE, NO_DUE, due - self.begin_s)
         return np.where((moved < release) & (release > 0), release, moved)
 
-    def _machines(self, from_s: int, origin: int, *, whole_rows: bool = False) -> Iterable[Machine]:
-        """Return the machines with what is ahead of them, times counted from `origin`.
-
-        With `whole_rows` running work occupies its machine from its start on, else from when it goes on.
-        """
-        rows: dict[int, tuple[int, int]] = {}  # machines of one unit that do not pause: when their row runs
-        for one in self.pinned.values():
-            hall = self.base.machines[one.machine]
-            if hall.count == 1 and not hall.pauses:
-                rows[one.machine] = (from_s if whole_rows else one.resumes_s), one.ends_s
-        for place, hall in enumerate(self.base.machines):
-            closed = list(future(hall.closed, from_s))
-            closed += [
-                Closure(from_s, out.until_s, out.reason)
-                for out in self.look.outs
-                if out.machine == place and not out.unit and out.until_s > from_s
-            ]
-            if place in rows:
-                closed = list(outside(closed, *rows[place]))
-            if hall.count == 1:
-                closed += [
-                    Closure(from_s, one.ends_s, f"running {self.left[one.place].key.order}")
-                    for one in self.held
-                    if one.machine == place and one.ends_s > from_s
-                ]
-                closed += [
-                    Closure(from_s, one.until_s, f"changing over to {one.family or 'no family'}")
-                    for one in self.look.changing
-                    if one.machine == place and one.until_s > from_s
-                ]
-            yield replace(hall, closed=_moved(merged(closed), origin), family=self._family(place, hall))
-
-    def _family(self, place: int, hall: Machine) -> str | None:
-        if hall.id not in self.base.changeovers:
-            return hall.family
-        names = {self.look.families.get((place, unit), hall.family) for unit in range(1, hall.count + 1)}
-        return names.pop() if len(names) == 1 else None
-
-
-def _moved(closures: Iterable[Closure], origin: int) -> tuple[Closure, ...]:
-    return tuple(Closure(one.start_s - origin, one.end_s - origin, one.reason) for one in closures)
+    def _machines(self, from_s: int, origin: int, *, whole_rows: bool = False) -> tuple[Machine, ...]:
+        return tuple(
+            machines_ahead(
+                self.base,
+                self.look,
+                self.left,
+                self.pinned.values(),
+                self.held,
+                from_s=from_s,
+                origin=origin,
+                whole_rows=whole_rows,
+            )
+        )

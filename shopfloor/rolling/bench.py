@@ -3,18 +3,19 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from typing import NamedTuple
 
 import numpy as np
 
 from shopfloor.model.schedule import Schedule
-from shopfloor.model.shop import NO_DUE, NO_FAMILY, NO_STEP, Operations, Orders, Shop
+from shopfloor.model.shop import NO_STEP, Shop
 from shopfloor.openshop.floor.rules import NONE, Rules
 from shopfloor.openshop.floor.timetable import Spot, Timetable
 from shopfloor.openshop.incumbent import weights
 from shopfloor.replan.movement import Place
 from shopfloor.replan.residual import Residual
+from shopfloor.rolling.blocks import blocks_of, with_blocks
 
 
 class Visit(NamedTuple):
@@ -49,15 +50,6 @@ class Timed:
     value: tuple[int, ...]
 
 
-class _Block(NamedTuple):
-    """A unit of a group that is not free from begin until `until_s`, or was last used for `family`."""
-
-    machine: int
-    unit: int
-    until_s: int
-    family: str | None
-
-
 class Bench:
     """Times sequences of one residual shop.
 
@@ -83,8 +75,8 @@ class Bench:
     def __init__(self, rest: Residual, was: Mapping[int, Place], goals: Sequence[str]) -> None:
         self.rest, self.was, self.goals = rest, was, tuple(goals)
         self._count = len(rest.solve)
-        self._blocks = tuple(_blocks(rest))
-        self.rules = Rules.of(_with_blocks(rest.solve, self._blocks))
+        self._blocks = tuple(blocks_of(rest))
+        self.rules = Rules.of(with_blocks(rest.solve, self._blocks))
         self._weights = weights(rest.solve)
         self._steps = _ranked(rest.solve)
         self.movable = [k for k in range(self._count) if k not in rest.pinned]
@@ -288,59 +280,3 @@ def _ranked(shop: Shop) -> list[list[int]]:
     for k in np.flatnonzero(shop.operations.step != NO_STEP).tolist():
         found.setdefault(int(shop.operations.job[k]), []).append(k)
     return [mine for _, mine in sorted(found.items()) if len(mine) > 1]
-
-
-# ---- units that are not free ---------------------------------------------------------------------------
-
-
-def _blocks(rest: Residual) -> Iterable[_Block]:
-    """Yield what keeps single units of groups from the rest; of whole machines, closures tell."""
-    shop, look = rest.solve, rest.look
-    for out in look.outs:
-        if out.unit and shop.machines[out.machine].count > 1:
-            yield _Block(out.machine, out.unit, max(0, out.until_s - rest.begin_s), None)
-    for one in rest.held:
-        if shop.machines[one.machine].count > 1:
-            yield _Block(one.machine, one.unit, max(0, one.ends_s - rest.begin_s), None)
-    runs = {(one.machine, one.unit) for one in rest.pinned.values()}
-    for place, hall in enumerate(shop.machines):
-        if hall.count == 1 or hall.id not in shop.changeovers:
-            continue
-        until = {one.unit: one.until_s - rest.begin_s for one in look.changing if one.machine == place}
-        for unit in range(1, hall.count + 1):
-            family = look.families.get((place, unit))
-            if family is not None and (place, unit) not in runs:
-                yield _Block(place, unit, max(0, until.get(unit, 0)), family)
-
-
-def _with_blocks(shop: Shop, blocks: Sequence[_Block]) -> Shop:
-    """Return the shop with one operation more for each block, in the same order, each of its own order."""
-    if not blocks:
-        return shop
-    columns, orders, more = shop.operations, shop.orders, len(blocks)
-    families = tuple(dict.fromkeys([*shop.families, *(block.family for block in blocks if block.family)]))
-    index = {name: place for place, name in enumerate(families)}
-    extra = {
-        "job": [len(orders) + k for k in range(more)],
-        "machine": [block.machine for block in blocks],
-        "seconds": [max(1, block.until_s) for block in blocks],
-        "step": [NO_STEP] * more,
-        "splittable": [0] * more,
-        "heads": [0] * more,
-        "family": [index[block.family] if block.family else NO_FAMILY for block in blocks],
-        "setup_s": [0] * more,
-        "row": [0] * more,
-    }
-    return replace(
-        shop,
-        families=families,
-        orders=Orders(
-            (*orders.ids, *(f"\0block {k}" for k in range(more))),
-            np.r_[orders.release_s, np.zeros(more, np.int64)],
-            np.r_[orders.due_s, np.full(more, NO_DUE)],
-            np.r_[orders.priority, np.ones(more)],
-        ),
-        operations=Operations(
-            **{name: np.r_[getattr(columns, name), values] for name, values in extra.items()}
-        ),
-    )

@@ -4,43 +4,38 @@ from __future__ import annotations
 
 import threading
 import time
-from collections import Counter
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import asdict, dataclass, replace
-from itertools import count
-from typing import Any
 
-from shopfloor.audit.schedule import audit
-from shopfloor.bounds.catalogue import lower_bounds
-from shopfloor.bounds.levers import tie_sentence, what_would_help
-from shopfloor.errors import AuditError, NoPlanError
+from shopfloor.errors import NoPlanError
 from shopfloor.journal.state import counting, state
-from shopfloor.model.actuals import Event, ShiftState
+from shopfloor.model.actuals import Event
 from shopfloor.model.feasible import impossible
-from shopfloor.model.results import Bound, Choice, Plan
-from shopfloor.model.schedule import Schedule
+from shopfloor.model.results import Plan
 from shopfloor.model.shop import Shop
-from shopfloor.model.stated import state as stated
 from shopfloor.openshop.method import Progress
-from shopfloor.pipeline import HELP_UP_TO, Options
+from shopfloor.pipeline import Options
 from shopfloor.pipeline import plan as plan_fresh
 from shopfloor.replan.begin import begin
 from shopfloor.replan.compare import Comparison, Row, compare
-from shopfloor.replan.current import Current, current
-from shopfloor.replan.frozen import audit_frozen
+from shopfloor.replan.current import current
 from shopfloor.replan.movement import MOVED_S, Moves, Place, Reference
 from shopfloor.replan.outlook import OUTAGE_S, outlook
 from shopfloor.replan.remaining import MINIMUM_LEFT_S, remaining
 from shopfloor.replan.residual import Residual, residual
 from shopfloor.replan.told import Told, told
-from shopfloor.rolling.archive import Candidate, worse_than
+from shopfloor.rolling.archive import worse_than
 from shopfloor.rolling.bench import Bench, Timed
+from shopfloor.rolling.check import check
 from shopfloor.rolling.mend import mended
 from shopfloor.rolling.search import Search
 from shopfloor.rolling.sides import after_side, before_side
 from shopfloor.rolling.trade import Trade, sentences, trades_of
+from shopfloor.rolling.written import begun_early, numbers, parent, written
 
 SEARCH_SHARE = 0.5  # of the time for a fresh plan; the other half goes into moving less
+
+Report = Callable[[Progress], None]
 
 
 @dataclass(frozen=True)
@@ -86,7 +81,7 @@ def replan(
     outage_s: int = OUTAGE_S,
     minimum_left_s: int = MINIMUM_LEFT_S,
     inputs: Sequence[tuple[str, str]] = (),
-    report: Callable[[Progress], None] | None = None,
+    report: Report | None = None,
     stop: threading.Event | None = None,
 ) -> Replan:
     """Plan what is left of a shift: the best finish and lateness that are found, then the least movement.
@@ -108,6 +103,12 @@ def replan(
         As in :func:`shopfloor.replan.outlook.outlook`.
     minimum_left_s
         As in :func:`shopfloor.replan.remaining.remaining`.
+    inputs
+        Name and SHA-256 of each file the shop was read from, for the record.
+    report
+        Called with each :class:`Progress` of the whole, from any thread; times from the shift's start.
+    stop
+        When set, the search ends and the best plan so far is handed on.
 
     Raises
     ------
@@ -137,27 +138,28 @@ def replan(
     }
     bench = Bench(rest, was, options.objective)
     reference = Reference(was, rest.solve.operations.machine.tolist(), now_s - rest.begin_s)
-    search = Search(bench, reference, over, seed=options.seed)
+    tell = _whole(report or (lambda progress: None), began + options.time_limit_s, rest.begin_s)
+    search = Search(bench, reference, over, tell, seed=options.seed)
     search.kept()
-    fresh = _fresh(rest, replace(options, time_limit_s=options.time_limit_s * SEARCH_SHARE), report, stop)
+    fresh = _fresh(rest, replace(options, time_limit_s=options.time_limit_s * SEARCH_SHARE), tell, stop)
     scratch = _offer_fresh(search, bench, fresh, rows)
     if not search.archive.front:
         raise NoPlanError(_why_none(rest, options))
     search.sharpen(0 if fresh is None else fresh.lower_bound_s)
     best, chosen = search.settled(stability_s)
-    made = _plan(
+    made = written(
         rest,
         bench,
         chosen,
         fresh,
-        inputs=(*inputs, *_parent(said)),
+        inputs=(*inputs, *parent(said)),
         options={
             **asdict(options),
             "parent": str(said.plans[-1].data.get("sha256", "")) if said.plans else "",
             "now_s": now_s,
             "stability_s": stability_s,
             "minimum_left_s": minimum_left_s,
-            "begun": _begun_early(said, here, now_s),
+            "begun": begun_early(said, here, now_s),
         },
         repeatable=search.complete and (fresh is None or fresh.repeatable),
         stopped="interrupted" if stop.is_set() else "done",
@@ -165,8 +167,8 @@ def replan(
     trades = tuple(trades_of(chosen, best, search.archive, bench.goals))
     said_of_moves = sentences(chosen, best, scratch, trades)
     made = replace(made, remarks=(*made.remarks, *_overdue(rest, rows), *said_of_moves))
-    _check(rest, bench, chosen, made, now, here)
-    numbers = tuple(_numbers(rest, made, here))
+    check(rest, bench, chosen, made, now, here)
+    called = tuple(numbers(rest, made, here))
     return Replan(
         plan=made,
         comparison=_comparison(made, said, now_s),
@@ -175,7 +177,7 @@ def replan(
         worse_s=worse_than(chosen, best, bench.goals),
         trades=trades,
         rest=rest,
-        numbers=numbers,
+        numbers=called,
     )
 
 
@@ -208,12 +210,18 @@ def _overdue(rest: Residual, rows: Mapping[int, Row]) -> tuple[str, ...]:
     )
 
 
-def _fresh(
-    rest: Residual,
-    options: Options,
-    report: Callable[[Progress], None] | None,
-    stop: threading.Event,
-) -> Plan | None:
+def _whole(report: Report, until: float, begin_s: int) -> Report:
+    """Return a report that tells of the whole replan: the time left for all of it, on the shift's clock."""
+
+    def passed_on(progress: Progress) -> None:
+        best = None if progress.best_s is None else progress.best_s + begin_s
+        left = max(0.0, until - time.monotonic())
+        report(replace(progress, best_s=best, bound_s=progress.bound_s + begin_s, left_s=left))
+
+    return passed_on
+
+
+def _fresh(rest: Residual, options: Options, report: Report, stop: threading.Event) -> Plan | None:
     """Plan the rest as if there had been no plan; None if that finds none in time."""
     try:
         return plan_fresh(rest.fresh, options, report=report, stop=stop)
@@ -248,143 +256,6 @@ def _why_none(rest: Residual, options: Options) -> str:
         operation = rest.solve.operation(one.operation)
         return f"no plan can hold {operation.order} on {operation.machine_id}: it {one.problem}; {one.advice}"
     return f"no plan was found in {options.time_limit_s:g} s; allow more with --time-limit"
-
-
-# ---- the plan --------------------------------------------------------------------------------------
-
-
-def _plan(
-    rest: Residual,
-    bench: Bench,
-    chosen: Candidate,
-    fresh: Plan | None,
-    *,
-    inputs: tuple[tuple[str, str], ...],
-    options: Mapping[str, Any],
-    repeatable: bool,
-    stopped: str,
-) -> Plan:
-    shop = rest.shop
-    schedule = bench.schedules(chosen.timed)[1]
-    bounds = _bounds(rest, schedule, fresh)
-    helps: tuple[str, ...] = ()
-    if len(shop) <= HELP_UP_TO:
-        tie = tie_sentence(shop, bounds)
-        levers = (lever.sentence for lever in what_would_help(shop, bounds))
-        helps = (*([tie] if tie else []), *levers)
-    return Plan(
-        shop=shop,
-        schedule=schedule,
-        bounds=bounds,
-        choice=_choice(chosen, fresh),
-        inputs=inputs,
-        options=options,
-        remarks=rest.remarks,
-        would_help=helps,
-        stopped=stopped,
-        repeatable=repeatable,
-    )
-
-
-def _bounds(rest: Residual, schedule: Schedule, fresh: Plan | None) -> tuple[Bound, ...]:
-    """Return the bounds of the rest; what a solver proved of it counts where it was asked the same."""
-    bounds = lower_bounds(rest.shop)
-    for bound in fresh.bounds if fresh is not None and rest.exact else ():
-        value = bound.value_s + rest.begin_s
-        if bound.kind == "solver" and value > (bounds[0].value_s if bounds else 0):
-            finish = rest.shop.clock.say(value)
-            sentence = f"The solver CP-SAT has proved that nothing can end before {finish}."
-            if value <= schedule.makespan_s:
-                bounds = (Bound("solver", value, bound.witness, sentence), *bounds)
-    return bounds
-
-
-def _choice(chosen: Candidate, fresh: Plan | None) -> Choice:
-    method = "" if fresh is None else fresh.choice.name
-    others = {} if fresh is None else dict(fresh.choice.others)
-    match chosen.origin:
-        case "kept":
-            why = (
-                "every machine goes on in its old sequence as early as it can, and nothing found ends earlier"
-            )
-            return Choice("kept sequence", why, others)
-        case "mended":
-            why = (
-                "the old rounds were mended along paths of two rounds each, in the fewest rounds that can "
-                "hold what is left (König 1916)"
-            )
-            return Choice("mended rounds", why, others)
-        case "repaired":
-            why = (
-                f"a fresh plan ({method}) was taken back towards the old one as far as its finish and "
-                "lateness allow"
-            )
-            return Choice("repaired sequence", why, others)
-        case _:
-            assert fresh is not None
-            return Choice(method, f"planned anew: {fresh.choice.why}", others)
-
-
-def _parent(said: Told) -> tuple[tuple[str, str], ...]:
-    """Return name and hash of the plan in force."""
-    if not said.plans:
-        return ()
-    data = said.plans[-1].data
-    return ((f"parent {data.get('name', 'plan.json')}", str(data.get("sha256", ""))),)
-
-
-def _numbers(rest: Residual, made: Plan, here: ShiftState) -> list[int]:
-    """Return the number of each assignment: its operation's own, and free ones for further parts."""
-    taken = {*here.pieces, *(one.key for one in rest.left)}
-    found = []
-    for row in made.schedule:
-        key = rest.left[row.operation].key
-        if row.part > 1:
-            key = next(key for n in count(1) if (key := key._replace(piece=n)) not in taken)
-            taken.add(key)
-        found.append(key.piece)
-    return found
-
-
-def _begun_early(said: Told, here: ShiftState, now_s: int) -> list[list[Any]]:
-    """Return order, machine and planned start of what the last plan has from now on, and is begun already."""
-    rows = said.plans[-1].pieces if said.plans else ()
-    return [
-        [row.key.order, row.key.machine, row.start_s]
-        for row in rows
-        if row.start_s is not None
-        and row.start_s >= now_s
-        and row.key in here.pieces
-        and here.pieces[row.key].touched
-    ]
-
-
-# ---- checks and comparison -------------------------------------------------------------------------
-
-
-def _check(
-    rest: Residual, bench: Bench, chosen: Candidate, made: Plan, now: Current, here: ShiftState
-) -> None:
-    """Audit the plan three times: strictly from begin on, as it is written, and against the journal."""
-    strict = bench.schedules(chosen.timed)[0]
-    blank = Choice("", "", {})
-    violations = audit(rest.solve, stated(Plan(rest.solve, strict, (), blank)))
-    violations += audit(made.shop, stated(made))
-    columns = now.shop.operations
-    wanted: Counter[tuple[str, str]] = Counter()
-    cut = set()
-    for job, machine, splittable in zip(
-        columns.job.tolist(), columns.machine.tolist(), columns.splittable.tolist(), strict=True
-    ):
-        pair = now.shop.orders.ids[job], now.shop.machines[machine].id
-        wanted[pair] += 1
-        if splittable:
-            cut.add(pair)
-    out = {(now.shop.machines[out.machine].id, out.unit): out.until_s for out in rest.look.outs}
-    whole = {pair: need for pair, need in wanted.items() if pair not in cut}
-    violations += audit_frozen(stated(made), here, whole, now.shop.clock, out)
-    if violations:
-        raise AuditError(violations)
 
 
 def _comparison(made: Plan, said: Told, now_s: int) -> Comparison:

@@ -12,6 +12,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterator, Mapping
 
+from shopfloor.openshop.method import Progress
 from shopfloor.replan.movement import Reference
 from shopfloor.rolling.archive import Archive, Candidate, Limits, limits_of
 from shopfloor.rolling.bench import Bench, Timed
@@ -19,7 +20,8 @@ from shopfloor.rolling.repair import Repair
 from shopfloor.rolling.sharpen import sharpened
 
 PLACED = 400_000  # places looked for in all repairs of one search together
-SHAKES = 1_500
+SHAKES = 1_500  # parts drawn at random and put in anew, in the last repair
+TELL_EVERY = 100  # times asked whether time is up
 BLENDS = (0.25, 0.5, 0.75)
 CUTS = 6  # moments at which a candidate changes from one sequence to the other
 
@@ -37,6 +39,8 @@ class Search:
         The old plan, on the bench's clock.
     over
         Asked between timetables; true ends the search with what it has.
+    report
+        Told now and then how things stand, times on the bench's clock; of the time left it knows nothing.
     seed
         Of the parts drawn in repairs.
 
@@ -51,9 +55,16 @@ class Search:
     """
 
     def __init__(
-        self, bench: Bench, reference: Reference, over: Callable[[], bool], *, seed: int = 0
+        self,
+        bench: Bench,
+        reference: Reference,
+        over: Callable[[], bool],
+        report: Callable[[Progress], None] = lambda progress: None,
+        *,
+        seed: int = 0,
     ) -> None:
-        self.bench, self.reference, self._over, self._seed = bench, reference, over, seed
+        self.bench, self.reference, self._seed = bench, reference, seed
+        self._is_over, self._report, self._asked = over, report, 0
         self.archive = Archive()
         self.complete, self.bound_s = True, 0
         self._timed, self._left = False, PLACED
@@ -80,6 +91,12 @@ class Search:
         sequence = sorted(self.bench.movable, key=lambda k: (keys[k], k))
         units = {k: was.unit for k, was in self.bench.was.items()}
         return self.offer(self.bench.time(sequence, units), origin)
+
+    def _over(self) -> bool:
+        self._asked += 1
+        if self._asked % TELL_EVERY == 0 and self.archive.front:
+            self._report(Progress("moves", self.archive.best().timed.makespan_s, self.bound_s, 0.0))
+        return self._is_over()
 
     def _ended(self) -> bool:
         if self.complete and self._over():

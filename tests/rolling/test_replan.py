@@ -7,6 +7,7 @@ been judged; what follows checks what the audits do not.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import replace
 
 import numpy as np
@@ -22,7 +23,7 @@ from shopfloor.model.results import Plan
 from shopfloor.model.shop import Shop
 from shopfloor.openshop.choose import choose
 from shopfloor.openshop.floor.plan import floor_plan
-from shopfloor.openshop.method import Effort
+from shopfloor.openshop.method import Effort, Progress
 from shopfloor.pipeline import Options, plan
 from shopfloor.render.tables import plan_json
 from shopfloor.replan.current import current, failed
@@ -109,6 +110,30 @@ def test_the_old_sequence_is_timed_even_if_there_is_no_time() -> None:
     found = anew(shop, book, 1800, Options(time_limit_s=1e-9))
     assert found.plan.makespan_s <= made.makespan_s
     assert not found.plan.repeatable
+
+
+def test_progress_is_that_of_the_whole_replan_on_the_clock_of_the_shift(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    """A search within tells of its own time and of a clock that starts at begin; the lead sees neither."""
+
+    def fresh(shop: Shop, options: Options, report: Callable[[Progress], None], **more: object) -> Plan:
+        report(Progress("lists", 7200, 3600, options.time_limit_s))
+        return by_steps(shop)
+
+    monkeypatch.setattr("shopfloor.rolling.plan.plan_fresh", fresh)
+    shop, said = hall(5), list[Progress]()
+    made = by_steps(shop)
+    book = opened(made)
+    play(book, made, 0, 1800, 3, wobble=0.2)
+    found = anew(shop, book, 1800, AMPLE, report=said.append)
+    assert found.rest.begin_s == 1800
+    assert (said[0].stage, said[0].best_s, said[0].bound_s) == ("lists", 9000, 5400)
+    left = [progress.left_s for progress in said]
+    assert left == sorted(left, reverse=True)
+    assert AMPLE.time_limit_s / 2 < left[0] <= AMPLE.time_limit_s
+    moves = [progress.best_s for progress in said if progress.stage == "moves"]
+    assert moves[-1] == found.plan.makespan_s
 
 
 @pytest.mark.usefixtures("without_clock")
