@@ -68,7 +68,10 @@ class Writer:
         refusals += self._correction(index, entry, corrected)
         if any(one.final for one in refusals):
             return refusals
-        refusals += self._judge.names(index, entry)
+        names = self._judge.names(index, entry)
+        if refusals and not self._by.accept:
+            return refusals + names  # what contradicts the journal may follow from the wrong time
+        refusals += names
         pieces = self._pieces(index, entry)
         if isinstance(pieces, Refusal):
             return [*refusals, pieces]

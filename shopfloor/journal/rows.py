@@ -37,6 +37,7 @@ WORDS: Mapping[str, Kind] = {
 } | {kind.value: kind for kind in Kind if kind not in (Kind.ISSUED, Kind.WITHDRAWN)}
 
 _COLUMN_OF = {"left_s": "minutes", "operations": "minutes", "release_s": "release", "due_s": "due"}
+_WORD = {kind: word for word, kind in reversed(list(WORDS.items()))}  # as help and messages call it
 _LEFT = (Kind.STARTED, Kind.STOPPED, Kind.RESUMED, Kind.LEFT)
 _ORDERS = (Kind.ADDED, Kind.CHANGED)
 
@@ -94,7 +95,7 @@ class Rows:
                 sheet=self._sheet,
                 row=self.rows[one.index],
                 column="event",
-                value=self.entries[one.index].kind.value,
+                value=_WORD[self.entries[one.index].kind],
                 rule=one.rule,
                 problem=f"cannot be: {one.problem}",
                 advice=one.advice,

@@ -404,7 +404,7 @@ def test_a_table_that_contradicts_the_journal_is_refused_whole(tmp_path: Path) -
     answer = said("import", path)
     assert answer.code == 1
     assert "3 faults; nothing was recorded." in answer.err
-    assert "actuals.csv row 3, column event: 'started' cannot be: there is no order TQ-7" in answer.err
+    assert "actuals.csv row 3, column event: 'start' cannot be: there is no order TQ-7" in answer.err
     assert "row 4" in answer.err
     assert len(events()) == 1
     accepted = said("import", path, "--accept")

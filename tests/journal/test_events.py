@@ -590,6 +590,14 @@ def test_another_plan_is_issued_into_the_same_shift(book: Journal) -> None:
     assert book.state(30 * MIN).pieces[Key("TQ-1", "WASH")].left_s == 10 * MIN
 
 
+def test_a_wrong_time_is_told_alone_but_for_wrong_names(book: Journal) -> None:
+    """What else contradicts the journal then may follow from it."""
+    put(book, work("started", "TQ-1", "WASH", 5))
+    early = work("started", "TQ-1", "CMM", -5)
+    assert refused(book, early) == ["05:55 is before the start of the shift, 06:00; correct the time"]
+    assert len(refused(book, work("started", "TQ-9", "CMM", -5))) == 2
+
+
 def test_a_plan_of_another_shift_is_refused(book: Journal) -> None:
     other = issued(clock=Clock(CLOCK.start.replace(day=3)), sha256="1" * 64)
     with pytest.raises(JournalError) as caught:

@@ -88,7 +88,7 @@ def test_what_the_journal_refuses_is_a_fault_of_its_row() -> None:
         {"event": "start", "at": "06:05", "order": "TQ-1", "machine": "CMM"},
     )
     fault = found.refused([Refusal(0, "unit-busy", "CMM runs TQ-2", "stop it")])[0]
-    assert fault.text() == "actuals.csv row 3, column event: 'started' cannot be: CMM runs TQ-2; stop it"
+    assert fault.text() == "actuals.csv row 3, column event: 'start' cannot be: CMM runs TQ-2; stop it"
     assert fault.rule == "unit-busy"
 
 
