@@ -20,7 +20,7 @@ from shopfloor.rolling.repair import Repair
 from shopfloor.rolling.sharpen import sharpened
 
 PLACED = 400_000  # places looked for in all repairs of one search together
-SHAKES = 1_500  # parts drawn at random and put in anew, in the last repair
+SHAKES, SHAKES_EACH = 1_500, 30  # parts drawn at random in the last repair, at most; for each operation
 TELL_EVERY = 100  # times asked whether time is up
 BLENDS = (0.25, 0.5, 0.75)
 CUTS = 6  # moments at which a candidate changes from one sequence to the other
@@ -166,7 +166,8 @@ class Search:
             self._count(repair)
         for timed in starts:
             self._mend(timed, limits, strict)
-        self._mend(self.archive.chosen(limits).timed, limits, strict, SHAKES)
+        shakes = min(SHAKES, SHAKES_EACH * len(self.bench.movable))
+        self._mend(self.archive.chosen(limits).timed, limits, strict, shakes)
 
     def _mend(self, timed: Timed, limits: Limits, strict: bool, shakes: int = 0) -> None:
         if not self._ended():
