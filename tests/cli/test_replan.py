@@ -440,10 +440,10 @@ def test_the_story_of_the_readme_is_told_as_it_stands_there(
             said = shopfloor(*words, *quick)
             assert said.code in ((0, 1) if quick else (0,)), (line, said.err, said.out)
             printed += said.out
-    shown = next(text for text in re.findall(r"```text\n(.*?)```", STORY, re.S) if "No 64" in text)
+    shown = next(text for text in re.findall(r"```text\n(.*?)```", STORY, re.S) if "At 07:12" in text)
     assert shown in printed
     assert "Recorded 61 of 61 rows." in printed
-    assert "At 07:12: operations 87 waiting, 8 running, 19 blocked, 25 done." in printed
+    assert "CMM since 07:10: probe error; 17 operations wait for it" in printed
 
 
 def test_the_morning_of_the_story_is_installed(tmp_path: Path) -> None:
