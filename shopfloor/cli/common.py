@@ -105,3 +105,11 @@ def refuse(error: InputError, as_json: bool) -> NoReturn:
         print(f"{count}; nothing was planned or written.", file=sys.stderr)
         print("\n".join(fault_lines(error.faults)), file=sys.stderr)
     raise typer.Exit(BAD_INPUT)
+
+
+def see_that_it_can_be_written(out: Path | None) -> None:
+    """Refuse a folder that cannot be written before a search, and not after it."""
+    if out is not None:
+        from shopfloor.render.save import refuse_unwritable
+
+        refuse_unwritable(out)

@@ -57,6 +57,7 @@ def fit(
         from shopfloor.fit.choose import fit as choose_fit
         from shopfloor.pipeline import Options
 
+        common.see_that_it_can_be_written(out)
         report = Reporter(reading.shop.clock, quiet)
         with stopping() as stop:
             found = choose_fit(

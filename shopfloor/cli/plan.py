@@ -70,6 +70,7 @@ def plan(
     from shopfloor import pipeline
     from shopfloor.cli.progress import Reporter, stopping
 
+    common.see_that_it_can_be_written(out)
     common.print_notices(reading.notices, quiet or as_json)
     report = Reporter(reading.shop.clock, quiet)
     began = time.perf_counter()

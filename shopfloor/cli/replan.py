@@ -128,6 +128,7 @@ def replan(
             expected = _back(opened, state(events, now_s), now_s, back or ())
         except InputError as error:
             common.refuse(error, as_json)
+    common.see_that_it_can_be_written(out)
     notices = (*reading.notices, *_strange_crews(reading, state(events, now_s)))
     common.print_notices(notices, quiet or as_json)
     report = Reporter(clock, quiet)

@@ -36,6 +36,8 @@ _REASONS = {
     errno.EIO: "the disk reports a fault; choose another disk",
 }
 
+_EFFECTIVE = os.access in os.supports_effective_ids
+
 
 def save(folder: str | os.PathLike[str], files: Mapping[str, Content]) -> list[Path]:
     """Write all `files` into `folder`, or none of them.
@@ -78,6 +80,28 @@ def save_file(path: str | os.PathLike[str], content: Content) -> Path:
     """Write one file whole or not at all, at the place a person named; raises as :func:`save`."""
     target = Path(path)
     return save(target.parent, {target.name: content})[0]
+
+
+def refuse_unwritable(folder: str | os.PathLike[str]) -> None:
+    """Say before a long search what :func:`save` would say after it, as far as can be told without writing.
+
+    Raises
+    ------
+    SaveError
+        If part of the path is a file, or the folder, or the one it would be made in, may not be written to.
+    """
+    home = Path(folder)
+    with contextlib.suppress(PermissionError, FileNotFoundError):
+        for path in (home, *home.parents):
+            if os.path.lexists(path):
+                number = 0
+                if not path.is_dir():
+                    number = errno.ENOTDIR
+                elif not os.access(path, os.W_OK | os.X_OK, effective_ids=_EFFECTIVE):
+                    number = errno.EACCES
+                if number:
+                    raise SaveError(_sentence(home, OSError(number, os.strerror(number))))
+                return
 
 
 @dataclass

@@ -6,6 +6,7 @@ import csv
 import io
 import json
 from pathlib import Path
+from unittest import mock
 
 import pytest
 
@@ -162,6 +163,8 @@ def test_a_folder_that_cannot_be_written_is_one_line(tmp_path: Path) -> None:
     assert said.code == 2
     assert "Traceback" not in said.err
     assert said.err.startswith("shopfloor: ")
+    with mock.patch("shopfloor.pipeline.plan", side_effect=AssertionError("nothing is searched before")):
+        assert shopfloor("plan", ROUNDS, "--out", blocked / "out") == said
 
 
 @pytest.mark.parametrize("command", ["check", "plan", "audit", "fit", "demo"])

@@ -13,7 +13,7 @@ import pytest
 
 from shopfloor.errors import SaveError
 from shopfloor.render import save as saving
-from shopfloor.render.save import save, save_file
+from shopfloor.render.save import refuse_unwritable, save, save_file
 
 FILES = {"plan.json": '{"schema": 1}\n', "plan.csv": "order\nTQ-1 – å\n", "plan.xlsx": b"\x00\xff"}
 
@@ -194,6 +194,9 @@ def test_read_only_folder(as_nobody):
     )
     with pytest.raises(SaveError, match="you may not write there"):
         save(as_nobody / "new", FILES)
+    for folder in (as_nobody, as_nobody / "new"):
+        with pytest.raises(SaveError, match="you may not write there"):
+            refuse_unwritable(folder)
     assert list(as_nobody.iterdir()) == []
 
 
@@ -222,6 +225,9 @@ def test_refuses_a_file_where_the_folder_should_be(tmp_path):
     for folder in (tmp_path / "out", tmp_path / "out" / "below"):
         with pytest.raises(SaveError) as caught:
             save(folder, FILES)
+        with pytest.raises(SaveError) as before:
+            refuse_unwritable(folder)
+        assert str(before.value) == str(caught.value)
         assert str(caught.value) == (
             f"cannot write {folder}: part of the path is a file, not a folder; choose another folder"
         )
