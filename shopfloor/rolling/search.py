@@ -124,10 +124,11 @@ class Search:
             self._time({k: share * old[k] + (1 - share) * new[k] for k in new}, "repaired")
 
     def sharpen(self, bound_s: int) -> None:
-        """Improve what moves least so far and what is best, unless nothing can be better; O(steps)."""
+        """Improve what moves least so far and what is best, unless nothing can be better."""
         self.bound_s = bound_s
         best = self.archive.best()
-        if best.timed.makespan_s <= bound_s and not best.timed.tardiness:
+        met = best.timed.makespan_s <= bound_s and not best.timed.tardiness
+        if met and "changeovers" not in self.bench.goals:
             return
         for one in dict.fromkeys((self.archive.nearest(), best)):
             if not self._ended():
@@ -141,7 +142,7 @@ class Search:
         """Return the best candidate, and the one that moves least among those near enough to it.
 
         On the way back towards the old plan a better one than the best may turn up; then that one counts.
-        What moves least without any loss is looked for first, so that more stability moves no more.
+        What moves least without any loss is looked for first, so that stability has that to choose from, too.
         """
         goals = self.bench.goals
         for allowed_s in sorted({0, stability_s}):

@@ -21,9 +21,10 @@ from shopfloor.replan.outlook import outlook
 from shopfloor.replan.remaining import remaining
 from shopfloor.replan.residual import residual
 from shopfloor.replan.told import told
-from shopfloor.rolling.archive import within
+from shopfloor.rolling.archive import limits_of, within
 from shopfloor.rolling.bench import Bench, Timed
 from shopfloor.rolling.repair import Repair
+from shopfloor.rolling.search import Search
 from shopfloor.rolling.standing import Part, Standing
 from tests.rolling.shifts import CLOCK, disrupt, hall, listed_plan, opened, play, put
 
@@ -160,3 +161,19 @@ def test_where_nothing_limits_whoever_can_stays_at_home(seed: int) -> None:
     first = next(iter(repair(bench, reference, (FAR * 10**6,) * 3).build()), None)
     assert first is not None
     assert reference.moves(first.places).moved <= max(reference.moves(kept.places).moved, 1)
+
+
+@pytest.mark.parametrize("seed", [1, 4, 8])
+def test_one_search_moves_no_more_the_more_is_allowed_and_keeps_to_it(seed: int) -> None:
+    bench, reference, _ = disturbed(seed)
+    search = Search(bench, reference, lambda: False)
+    search.kept()
+    allowances = (0, 10 * MIN, 60 * MIN)
+    for allowed_s in allowances:
+        best, chosen = search.settled(allowed_s)
+        assert within(chosen.timed, limits_of(best, GOALS, allowed_s))
+        assert best.timed.value <= chosen.timed.value
+    limits = [limits_of(search.archive.best(), GOALS, allowed_s) for allowed_s in allowances]
+    weights = [search.archive.chosen(each).moves.weight for each in limits]
+    assert weights == sorted(weights, reverse=True)
+    assert search.complete
