@@ -119,6 +119,12 @@ class CrewClock:
         self._heads = heads
         self._worked = np.r_[0, np.cumsum(np.diff(self._moments) * heads[:-1])]
 
+    def by(self, moments: Ints) -> Ints:
+        """Return the head-seconds there are before each moment."""
+        place = np.searchsorted(self._moments, moments, side="right") - 1
+        done: Ints = self._worked[place] + (moments - self._moments[place]) * self._heads[place]
+        return done
+
     def finish(self, begin: int, work: Ints) -> Ints:
         """Return when `work` head-seconds, above zero, are done that nobody can begin before `begin`."""
         place = int(np.searchsorted(self._moments, begin, side="right")) - 1
