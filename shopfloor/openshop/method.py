@@ -30,6 +30,9 @@ class Effort:
     ----------
     bound_s
         The best combinatorial lower bound, as a number; a method may stop when it reaches it.
+    least_late
+        A lower bound of the weighted tardiness of every plan of a shop, in seconds × thousandths of
+        priority. It may take a second or two, so it is for asking once a plan is late.
     time_limit_s
         Seconds from `began`.
     workers
@@ -45,6 +48,7 @@ class Effort:
     """
 
     bound_s: int = 0
+    least_late: Callable[[Shop], int] = lambda shop: 0
     time_limit_s: float = 30.0
     workers: int = 0
     seed: int = 0
