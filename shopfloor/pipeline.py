@@ -8,6 +8,7 @@ from dataclasses import asdict, dataclass
 
 from shopfloor.audit.schedule import audit
 from shopfloor.bounds.catalogue import lower_bounds
+from shopfloor.bounds.lateness import least_lateness
 from shopfloor.bounds.levers import Lever, tie_sentence, what_would_help
 from shopfloor.errors import AuditError, NoPlanError
 from shopfloor.model.results import Bound, Choice, Outcome, Plan
@@ -113,6 +114,7 @@ def plan(
     method, choice = choose(shop, options.objective)
     effort = Effort(
         bound_s=bounds[0].value_s if bounds else 0,
+        least_late=lambda asked: least_lateness(asked).value,
         time_limit_s=options.time_limit_s,
         workers=options.workers,
         seed=options.seed,

@@ -90,6 +90,7 @@ class _Search:
         self.bound_s = effort.bound_s
         self.proven_s = 0  # the part of the bound that the solver proved
         self.least = _least_tardiness(shop)
+        self.asked = False  # whether for more than that
         self.proved: set[str] = set()
         self.complete = self.repeatable = True
         self.told = time.monotonic()
@@ -169,6 +170,9 @@ class _Search:
         deadline = self._value(MAKESPAN) if kept else self.effort.bound_s
         self._lists(TARDINESS, deadline)
         self._tell(self._late())
+        if self._value(TARDINESS) > self.least and not self.asked:
+            self.asked = True  # once is enough: it holds for every plan, whatever is kept
+            self.least = max(self.least, self.effort.least_late(self.shop))
         if self._value(TARDINESS) <= self.least:
             self.proved.add(TARDINESS)
             return
