@@ -30,7 +30,7 @@ from shopfloor.bounds.runs import Runs, arcs_of
 from shopfloor.model.shop import NO_DUE, Crew, Floats, Ints, Shop
 
 PRIORITY_UNIT = 1_000  # priorities count in thousandths
-SLOTS = 48  # of equal length, beside the edges of closures
+SLOTS = 32  # of equal length, beside the edges of closures
 EDGES_MOST = 400
 OPERATIONS_MOST = 4_000  # of orders with due times; beyond, each order alone
 BITS = 46  # of the largest sum of lateness: so no sum of sums passes 64
@@ -154,7 +154,7 @@ def _edges(shop: Shop, rows: Ints, earliest: Ints, slots: int) -> Ints:
         energy = int((attended_s(shop, mine) * columns.heads[mine]).sum())
         if energy and (crew.heads or not crew.levels):
             last = max(last, int(CrewClock(shop, crew).finish(0, np.array([energy]))[0]))
-    last += last // 4
+    last += last // 20
     even = np.arange(slots + 1) * last // slots
     used = {shop.machines[machine] for machine in np.unique(columns.machine[rows]).tolist()}
     shut = [*shop.breaks, *(each for machine in used for each in machine.closed)]
