@@ -19,7 +19,7 @@ from shopfloor.openshop.incumbent import GOALS, TARDINESS
 from shopfloor.openshop.method import Effort, Progress
 
 CHANGEOVERS = "changeovers"
-LISTS_SHARE = 0.4  # of the time goes to list schedules and their improvement, the rest to the exact model
+LISTS_SHARE = 0.4  # of the time, at most, goes to list schedules; small floors end their rounds sooner
 
 
 @dataclass(frozen=True, slots=True)
