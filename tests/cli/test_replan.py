@@ -43,7 +43,7 @@ start,06:00,TQ-1,RIG,,
 start,06:00,TQ-2,CMM,,
 down,06:10,,CMM,,probe
 """
-QUICK = ("--time-limit", 4, "--no-xlsx")
+QUICK = ("--time-limit", 60, "--no-xlsx")  # this shift is proved long before
 
 
 @pytest.fixture
@@ -66,7 +66,8 @@ def replan(shift: Path, *more: object) -> Said:
 
 def test_the_rest_is_planned_around_the_outage_and_the_moves_are_told(shift: Path) -> None:
     said = replan(shift, "--back", "CMM=07:00")
-    assert (said.code, said.err) == (0, "")
+    assert said.code == 0
+    assert all(line.endswith(" s left") for line in said.err.splitlines()), "nothing but progress"
     text = " ".join(said.out.split())
     assert "At 06:12: operations done 0, running 2, waiting 4." in text
     assert "Running work is expected to be done: RIG 06:30, CMM 07:30." in text
