@@ -437,7 +437,7 @@ def test_the_story_of_the_readme_is_told_as_it_stands_there(
                 assert words == [f"SHOPFLOOR_JOURNAL={JOURNAL}"]
                 monkeypatch.setenv("SHOPFLOOR_JOURNAL", JOURNAL)
                 continue
-            quick = QUICK if words[0] in ("plan", "replan") else ()
+            quick = ("--time-limit", 4, "--no-xlsx") if words[0] in ("plan", "replan") else ()
             said = shopfloor(*words, *quick)
             assert said.code in ((0, 1) if quick else (0,)), (line, said.err, said.out)
             printed += said.out
