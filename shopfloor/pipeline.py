@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import threading
+import time
 from collections.abc import Callable, Sequence
 from dataclasses import asdict, dataclass
 
@@ -11,12 +12,14 @@ from shopfloor.bounds.catalogue import lower_bounds
 from shopfloor.bounds.lateness import least_lateness
 from shopfloor.bounds.levers import Lever, tie_sentence, what_would_help
 from shopfloor.errors import AuditError, NoPlanError
+from shopfloor.model.feasible import impossible, waits_for_good
 from shopfloor.model.results import Bound, Choice, Outcome, Plan
 from shopfloor.model.shop import Shop
 from shopfloor.model.stated import state
 from shopfloor.openshop.choose import choose
 from shopfloor.openshop.method import Effort, Progress
 
+WHY_S = 10.0  # to name the rules that clash when there is no plan
 HELP_UP_TO = 50_000  # operations; beyond, taking the bounds twenty times more would take seconds
 
 
@@ -124,12 +127,13 @@ def plan(
         stop=stop or threading.Event(),
     )
     outcome = method.solve(shop, effort)
-    if outcome.schedule is None:
-        raise NoPlanError(f"no plan was found in {options.time_limit_s:g} s; allow more with --time-limit")
+    rows = outcome.schedule
+    if rows is None or waits_for_good(shop, rows.operation, rows.end_s):
+        raise NoPlanError(why_none(shop, options.time_limit_s, effort.stop))
     levers, tie = _help(shop, bounds)
     made = Plan(
         shop=shop,
-        schedule=outcome.schedule,
+        schedule=rows,
         bounds=_with_proven(bounds, outcome, shop),
         choice=choice,
         inputs=tuple(inputs),
@@ -143,6 +147,35 @@ def plan(
     if violations:
         raise AuditError(violations)
     return made
+
+
+def why_none(shop: Shop, time_limit_s: float, stop: threading.Event | None = None) -> str:
+    """Return why no plan was found: an operation that no plan can hold, rules that clash, else the time.
+
+    Parameters
+    ----------
+    time_limit_s
+        The time in which none was found; to find out why takes at most ``WHY_S`` more, or little more.
+    stop
+        When set, nothing is proved any more.
+    """
+    for one in impossible(shop):
+        operation = shop.operation(one.operation)
+        return f"no plan can hold {operation.order} on {operation.machine_id}: it {one.problem}; {one.advice}"
+    if stop is not None and stop.is_set():
+        return "no plan was found before the search was stopped"
+    from shopfloor.openshop.cpsat.clash import Clash, judge  # the solver is heavy to import
+
+    until = time.monotonic() + WHY_S
+    found = judge(shop, lambda: time.monotonic() > until or (stop is not None and stop.is_set()))
+    if isinstance(found, Clash):
+        return found.text()
+    if found:
+        return f"no plan was found in {time_limit_s:g} s, though there is one; allow more with --time-limit"
+    return (
+        f"neither a plan nor a proof that there is none was found in {time_limit_s:g} s; allow more with "
+        "--time-limit"
+    )
 
 
 def _with_proven(bounds: tuple[Bound, ...], outcome: Outcome, shop: Shop) -> tuple[Bound, ...]:

@@ -66,6 +66,23 @@ def beyond_shift(shop: Shop) -> Ints:
     return np.flatnonzero(found)
 
 
+def waits_for_good(shop: Shop, operation: Ints, end_s: Ints) -> bool:
+    """Return whether anything ends after its machine is shut for good, or its crew another for good.
+
+    Parameters
+    ----------
+    operation, end_s
+        Rows of a schedule.
+    """
+    last = np.full(len(shop.machines), _NEVER, np.int64)
+    for index, machine in enumerate(shop.machines):
+        ends = [start for start, end in _shut(shop, index) if end >= int(_NEVER)]
+        levels = [crew.levels for crew in shop.crews if crew.id == machine.crew]
+        ends += [end - 1 for each in levels for start, end, _ in each if end - start >= FOR_GOOD_S]
+        last[index] = min([int(_NEVER), *ends])
+    return bool((end_s > last[shop.operations.machine[operation]]).any())
+
+
 def _by_machine(shop: Shop) -> Iterator[tuple[int, Ints]]:
     """Yield each machine that has operations, with them in the order of the file."""
     order = np.argsort(shop.operations.machine, kind="stable")

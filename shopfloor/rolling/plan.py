@@ -10,11 +10,10 @@ from dataclasses import asdict, dataclass, replace
 from shopfloor.errors import NoPlanError
 from shopfloor.journal.state import counting, state
 from shopfloor.model.actuals import Event
-from shopfloor.model.feasible import impossible
 from shopfloor.model.results import Plan
 from shopfloor.model.shop import Shop
 from shopfloor.openshop.method import Progress
-from shopfloor.pipeline import Options
+from shopfloor.pipeline import Options, why_none
 from shopfloor.pipeline import plan as plan_fresh
 from shopfloor.replan.begin import begin
 from shopfloor.replan.compare import Comparison, Row, compare
@@ -144,7 +143,7 @@ def replan(
     fresh = _fresh(rest, replace(options, time_limit_s=options.time_limit_s * SEARCH_SHARE), tell, stop)
     scratch = _offer_fresh(search, bench, fresh, rows)
     if not search.archive.front:
-        raise NoPlanError(_why_none(rest, options))
+        raise NoPlanError(why_none(rest.solve, options.time_limit_s, stop))
     search.sharpen(0 if fresh is None else fresh.lower_bound_s)
     best, chosen = search.settled(stability_s)
     made = written(
@@ -248,14 +247,6 @@ def _offer_fresh(search: Search, bench: Bench, fresh: Plan | None, rows: Mapping
     if timed is not None:
         search.between(timed)
     return None if found is None else found.moves
-
-
-def _why_none(rest: Residual, options: Options) -> str:
-    """Say why no plan was found: what no plan can hold, if there is any, else the time."""
-    for one in impossible(rest.solve):
-        operation = rest.solve.operation(one.operation)
-        return f"no plan can hold {operation.order} on {operation.machine_id}: it {one.problem}; {one.advice}"
-    return f"no plan was found in {options.time_limit_s:g} s; allow more with --time-limit"
 
 
 def _comparison(made: Plan, said: Told, now_s: int) -> Comparison:
