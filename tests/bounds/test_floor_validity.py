@@ -2,7 +2,13 @@
 
 from __future__ import annotations
 
-from hypothesis import given, settings
+from collections import Counter
+from collections.abc import Callable
+from dataclasses import replace
+
+import numpy as np
+from hypothesis import Phase, given, settings
+from hypothesis import strategies as st
 
 from shopfloor.audit.witness import rederive
 from shopfloor.bounds.catalogue import lower_bounds
@@ -49,3 +55,62 @@ def test_a_crew_s_heads_count_while_they_are_there() -> None:
         "The 1 to 2 heads of crew Blue have 4 s of one head's work, so nothing can end before 0:00:04."
     )
     assert least_makespan(shop) == 4
+
+
+KINDS = ("machine", "window", "rounds", "crew", "crew rounds", "order")
+RULES: dict[str, Callable[[Shop], bool]] = {
+    "breaks": lambda shop: bool(shop.breaks),
+    "closures": lambda shop: any(machine.closed for machine in shop.machines),
+    "pauses": lambda shop: any(m.pauses and (m.closed or shop.breaks) for m in shop.machines),
+    "groups": lambda shop: any(machine.count > 1 for machine in shop.machines),
+    "families": lambda shop: any(not each.none for each in shop.changeovers.values()),
+    "transport": lambda shop: not shop.transport.none,
+    "releases": lambda shop: bool(shop.orders.release_s.any()),
+    "steps": lambda shop: shop.has_steps,
+    "crew": lambda shop: bool(shop.crews),
+    "set-ups": lambda shop: any(machine.crew and machine.set_up_only for machine in shop.machines),
+    "levels": lambda shop: any(crew.levels for crew in shop.crews),
+}
+
+
+@st.composite
+def even_crews(draw: st.DrawFn) -> Shop:
+    """Floors on which one crew attends equal operations all the time, so that it works in rounds."""
+    shop = draw(floors(parallel=True, max_operations=4))
+    length, size = draw(st.integers(1, 3)), len(shop)
+    columns = replace(
+        shop.operations, seconds=np.full(size, length), heads=np.ones(size, np.int64), setup_s=np.zeros(size)
+    )
+    machines = tuple(replace(machine, crew="Blue", set_up_only=False) for machine in shop.machines)
+    return replace(
+        shop, operations=columns, machines=machines, crews=(Crew("Blue", draw(st.integers(1, 2))),)
+    )
+
+
+NEVER = {("crew rounds", "set-ups"), ("crew rounds", "levels")}  # there the heads' own time counts instead
+
+
+def test_every_kind_of_bound_is_held_against_every_rule() -> None:
+    """Each kind meets each rule, is the best bound somewhere, and is met by a plan somewhere."""
+    together: Counter[tuple[str, str]] = Counter()
+    best: set[str] = set()
+    met: set[str] = set()
+
+    @given(st.one_of(floors(parallel=True, max_operations=4), even_crews()))
+    @settings(max_examples=1_000, deadline=None, database=None, derandomize=True, phases=[Phase.generate])
+    def meet(shop: Shop) -> None:
+        least = least_makespan(shop)
+        assert least is not None
+        bounds = lower_bounds(shop)
+        for bound in bounds:
+            assert bound.value_s <= least, bound
+            together.update((bound.kind, rule) for rule, has in RULES.items() if has(shop))
+            if bound.value_s == bounds[0].value_s:
+                best.add(bound.kind)
+            if bound.value_s == least:
+                met.add(bound.kind)
+
+    meet()
+    assert best == met == set(KINDS)
+    missing = {(kind, rule) for kind in KINDS for rule in RULES} - set(together) - NEVER
+    assert not missing
