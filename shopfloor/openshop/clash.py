@@ -8,7 +8,7 @@ the lower steps of their orders. To give up a rule never makes a possible shop i
 
 from __future__ import annotations
 
-from collections.abc import Collection, Iterator
+from collections.abc import Collection, Iterator, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -87,6 +87,32 @@ def rules_of(shop: Shop) -> tuple[Rule, ...]:
     ]
     found += [Rule("closed", index, place) for index, place, shut in closed if not _for_good(shut)]
     return (*found, *(Rule("break", place) for place in range(len(shop.breaks))))
+
+
+def circles(shop: Shop, rules: Sequence[Rule]) -> Iterator[list[Rule]]:
+    """Yield for each machine and crew the rules that are about it alone: most clashes lie in one of these."""
+    columns = shop.operations
+    of_machine = {"shut", "closed", "units", "changeovers"}
+    for index in np.unique(columns.machine).tolist():
+        jobs = set(columns.job[columns.machine == index].tolist())
+        yield [
+            rule
+            for rule in rules
+            if (rule.kind in of_machine and rule.of == index)
+            or (rule.kind == "operation" and columns.machine[rule.of] == index)
+            or (rule.kind == "release" and rule.of in jobs)
+            or rule.kind == "break"
+        ]
+    for index, crew in enumerate(shop.crews):
+        theirs = {k for k, machine in enumerate(shop.machines) if machine.crew == crew.id}
+        yield [
+            rule
+            for rule in rules
+            if (rule.kind == "heads" and rule.of == index)
+            or (rule.kind == "operation" and int(columns.machine[rule.of]) in theirs)
+            or (rule.kind in of_machine and rule.of in theirs)
+            or rule.kind in ("release", "break")
+        ]
 
 
 def without(shop: Shop, given_up: Collection[Rule]) -> Shop:

@@ -11,7 +11,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from shopfloor.model.calendar import DAY, HOUR, Clock
-from shopfloor.model.feasible import FOR_GOOD_S, beyond_shift, impossible
+from shopfloor.model.feasible import FOR_GOOD_S, beyond_shift, impossible, waits_for_good
 from shopfloor.model.shop import Closure, Crew, Machine, Operations, Orders, Shop
 
 HORIZON = 60  # beyond it nothing changes any more
@@ -303,3 +303,16 @@ def test_what_outlasts_the_shift_by_itself_is_found(shop: Shop) -> None:
 def test_a_shop_without_operations_holds_nothing_impossible(size: int) -> None:
     empty = hall([]) if size == 0 else hall([60])
     assert (said(empty), beyond_shift(empty).tolist()) == ([], [])
+
+
+def test_a_plan_that_waits_for_what_is_shut_for_good_is_known() -> None:
+    """On a machine anything after it is shut; with a crew anything after a year of other heads."""
+    shop = hall([5, 4], machine=Machine("M", closed=(Closure(10, 10 + FOR_GOOD_S),)))
+    rows = np.arange(2)
+    assert not waits_for_good(shop, rows, np.array([5, 10]))
+    assert waits_for_good(shop, rows, np.array([5, 11]))
+    crew = (Crew("Blue", 2, ((10, 10 + FOR_GOOD_S, 0),)),)
+    attended = hall([5, 4], machine=Machine("M", crew="Blue"), crews=crew)
+    assert not waits_for_good(attended, rows, np.array([5, 10]))
+    assert waits_for_good(attended, rows, np.array([5, 10 + FOR_GOOD_S]))
+    assert not waits_for_good(hall([5, 4]), rows, np.array([5, 10 + FOR_GOOD_S]))

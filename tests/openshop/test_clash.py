@@ -28,6 +28,7 @@ from shopfloor.model.shop import (
 )
 from shopfloor.openshop import clash
 from shopfloor.openshop.clash import Rule, limited, rules_of, without
+from shopfloor.openshop.cpsat import clash as cpsat_clash
 from shopfloor.openshop.cpsat.clash import Clash, judge
 from shopfloor.openshop.cpsat.floor import solve
 from shopfloor.pipeline import Options, plan, why_none
@@ -272,6 +273,33 @@ def test_some_of_the_rules_may_be_enough() -> None:
     assert found.text().endswith(
         "With one marked * eased far enough there is a plan; behind the others more clashes."
     )
+
+
+def test_of_many_operations_the_longest_are_named() -> None:
+    shop = hall([SAW, Machine("CMM")], [*((k, 0, 1) for k in range(12)), (0, 1, 1)])
+    found = judge(shop)
+    assert isinstance(found, Clash)
+    lines = found.text().splitlines()
+    assert lines[2] == "  - TQ-1 takes 1 s on SAW (row 2)"
+    assert sum("takes 1 s on SAW" in line for line in lines) == 10
+    assert "  - 1 more operation on SAW, 1 s in all" in lines
+
+
+def test_a_clash_of_one_machine_is_found_where_the_whole_is_too_much(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    """What is not known of all operations may be known of those of one machine."""
+    shop, wanted = CASES["units of a group"]
+    known = cpsat_clash.has_plan
+    monkeypatch.setattr(cpsat_clash, "has_plan", lambda part: None if len(part) > 3 else known(part))
+    more = replace(
+        shop,
+        machines=(*shop.machines, replace(SAW, id="CMM")),
+        operations=Operations([0, 1, 2, 0], [0, 0, 0, 1], [6, 5, 7, 1], row=[2, 3, 4, 5]),
+    )
+    found = judge(more)
+    assert isinstance(found, Clash)
+    assert [clash.say(found.shop, rule) for rule in found.rules] == wanted
 
 
 def test_a_single_operation_that_does_not_fit_is_named_first() -> None:
