@@ -13,7 +13,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from shopfloor.model.calendar import duration
+from shopfloor.model.calendar import duration, united
 from shopfloor.model.feasible import FOR_GOOD_S
 from shopfloor.model.shop import NO_STEP, Bools, Closure, Crew, Shop, Transport
 
@@ -51,7 +51,7 @@ def limited(shop: Shop) -> Bools:
     last = {crew.id: _stretches(crew)[-1][2] for crew in shop.crews}
     for index, machine in enumerate(shop.machines):
         mine = columns.machine == index
-        if any(_for_good(shut) for shut in (*shop.breaks, *machine.closed)):
+        if _end(shop, index) is not None:
             found |= mine
         elif machine.crew is not None:
             attended = columns.setup_s > 0 if machine.set_up_only else mine
@@ -67,8 +67,7 @@ def rules_of(shop: Shop) -> tuple[Rule, ...]:
     """Return every rule of a shop of limited operations; those come first that a lead can change least."""
     columns, machines = shop.operations, shop.machines
     used = np.unique(columns.machine).tolist()
-    closed = [(index, place, shut) for index in used for place, shut in enumerate(machines[index].closed)]
-    found = [Rule("shut", index, place) for index, place, shut in closed if _for_good(shut)]
+    found = [Rule("shut", index) for index in used if any(_last(shop, index))]
     found += [Rule("operation", row) for row in range(len(shop))]
     found += [Rule("units", index) for index in used]
     crews = {machines[index].crew for index in used}
@@ -85,7 +84,12 @@ def rules_of(shop: Shop) -> tuple[Rule, ...]:
     found += [
         Rule("changeovers", index) for index in changing if not shop.changeovers[machines[index].id].none
     ]
-    found += [Rule("closed", index, place) for index, place, shut in closed if not _for_good(shut)]
+    found += [
+        Rule("closed", index, place)
+        for index in used
+        for place, last in enumerate(_last(shop, index))
+        if not last
+    ]
     return (*found, *(Rule("break", place) for place in range(len(shop.breaks))))
 
 
@@ -129,8 +133,8 @@ def without(shop: Shop, given_up: Collection[Rule]) -> Shop:
             count=max(machine.count, len(shop)) if Rule("units", index) in gone else machine.count,
             closed=tuple(
                 shut
-                for place, shut in enumerate(machine.closed)
-                if not gone & {Rule("shut", index, place), Rule("closed", index, place)}
+                for place, (shut, last) in enumerate(zip(machine.closed, _last(shop, index), strict=True))
+                if (Rule("shut", index) if last else Rule("closed", index, place)) not in gone
             ),
         )
         for index, machine in enumerate(shop.machines)
@@ -155,7 +159,11 @@ def say(shop: Shop, rule: Rule) -> str:
     match rule.kind:
         case "operation":
             return _operation(shop, rule.of)
-        case "shut" | "closed":
+        case "shut":
+            last = zip(machines[rule.of].closed, _last(shop, rule.of), strict=True)
+            first, *_ = (shut for shut, for_good in last if for_good)
+            return f"{machines[rule.of].id} is {_shut(shop, first, for_good=True)}"
+        case "closed":
             return f"{machines[rule.of].id} is {_shut(shop, machines[rule.of].closed[rule.place])}"
         case "break":
             return f"the hall is {_shut(shop, shop.breaks[rule.of])}"
@@ -178,8 +186,16 @@ def say(shop: Shop, rule: Rule) -> str:
 # ---- parts of a shop -------------------------------------------------------------------------------
 
 
-def _for_good(shut: Closure) -> bool:
-    return shut.end_s - shut.start_s >= FOR_GOOD_S
+def _end(shop: Shop, machine: int) -> int | None:
+    """Return from when on a machine, by closures and breaks that touch, is shut for good; None if never."""
+    spans = united((shut.start_s, shut.end_s) for shut in (*shop.breaks, *shop.machines[machine].closed))
+    return next((start for start, end in spans if end - start >= FOR_GOOD_S), None)
+
+
+def _last(shop: Shop, machine: int) -> list[bool]:
+    """Return for each closure of a machine whether it belongs to its being shut for good."""
+    end = _end(shop, machine)
+    return [end is not None and shut.start_s >= end for shut in shop.machines[machine].closed]
 
 
 def _stretches(crew: Crew) -> list[tuple[int, int | None, int]]:
@@ -255,11 +271,12 @@ def _operation(shop: Shop, row: int) -> str:
     return f"{operation.order} takes {duration(operation.seconds)} on {machine.id}{with_heads}{where}"
 
 
-def _shut(shop: Shop, shut: Closure) -> str:
+def _shut(shop: Shop, shut: Closure, *, for_good: bool = False) -> str:
     reason = f" ({shut.reason})" if shut.reason else ""
-    if _for_good(shut):
-        return f"shut for good from {shop.clock.say(max(0, shut.start_s))}{reason}"
-    return f"shut from {shop.clock.say(max(0, shut.start_s))} to {shop.clock.say(shut.end_s)}{reason}"
+    since = shop.clock.say(max(0, shut.start_s))
+    if for_good or shut.end_s - shut.start_s >= FOR_GOOD_S:
+        return f"shut for good from {since}{reason}"
+    return f"shut from {since} to {shop.clock.say(shut.end_s)}{reason}"
 
 
 def _heads(shop: Shop, crew: Crew, place: int) -> str:

@@ -206,7 +206,7 @@ def test_each_rule_is_given_up_alone() -> None:
         changeovers={"SAW": Changeovers(2)}, crews=(Crew("fitters", 1, ((4, 6, 0),)),),
         breaks=(Closure(8, 9),), transport=Transport(5),
     )  # fmt: skip
-    assert [c.start_s for c in without(shop, [Rule("shut", 0, 1)]).machines[0].closed] == [1]
+    assert [c.start_s for c in without(shop, [Rule("shut", 0)]).machines[0].closed] == [1]
     assert [c.start_s for c in without(shop, [Rule("closed", 0, 0)]).machines[0].closed] == [10]
     assert without(shop, [Rule("break", 0)]).breaks == ()
     assert without(shop, [Rule("units", 0)]).machines[0].count == 2
@@ -217,6 +217,16 @@ def test_each_rule_is_given_up_alone() -> None:
     assert without(shop, [Rule("heads", 0, 1)]).crews[0].levels == ((0, 4, 1), (4, 6, clash.UNLIMITED))
     assert without(shop, [Rule("heads", 0, 2)]).crews[0].heads == clash.UNLIMITED
     assert without(shop, [Rule("operation", 0)]).operations.machine.tolist() == [1]
+
+
+def test_closures_that_touch_may_be_for_good_together() -> None:
+    """As a machine has it that is not open, with a closure of its own in that time."""
+    closed = (Closure(10, 12, "not open"), Closure(12, 15, "move"), Closure(15, 10 + GOOD, "not open"))
+    shop = hall([Machine("SAW", closed=closed)], [(0, 0, 6), (1, 0, 5)])
+    found = judge(shop)
+    assert isinstance(found, Clash)
+    assert clash.say(shop, found.rules[0]) == "SAW is shut for good from 0:00:10 (not open)"
+    assert without(shop, [Rule("shut", 0)]).machines[0].closed == ()
 
 
 def test_a_way_given_up_shortens_what_is_then_shorter_by_it() -> None:
