@@ -103,6 +103,19 @@ class Figures:
         whole = begin == 0 and len(operations) == len(self.on_machine(machine))
         return forced_changeover(rule, families, hall.count, hall.family if whole else None)
 
+    def arrivals(self, machine: int, grid_s: int) -> dict[str, list[tuple[int, int]]]:
+        """By family, when work of a machine can start in its open time, put back to a grid, and how much."""
+        operations = self.on_machine(machine)
+        head = self.heads_and_tails[0][operations]
+        hours = Shut((*self.shop.breaks, *self.shop.machines[machine].closed))
+        opened = head - hours.within(np.zeros(len(head), np.int64), head)
+        found: dict[str, dict[int, int]] = {}
+        for when, operation in zip((opened // grid_s * grid_s).tolist(), operations.tolist(), strict=True):
+            code = int(self.shop.operations.family[operation])
+            work = found.setdefault("" if code == NO_FAMILY else self.shop.families[code], {})
+            work[when] = work.get(when, 0) + int(self.seconds[operation])
+        return {family: sorted(work.items()) for family, work in found.items()}
+
     def demand_rounds(self, operations: Ints, length: int, name: str) -> None:
         """Refuse operations that are not all of one length and whole, or none at all."""
         if not len(operations):

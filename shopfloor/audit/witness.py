@@ -12,6 +12,7 @@ from typing import Any
 
 import numpy as np
 
+from shopfloor.audit.arrivals import earliest_done
 from shopfloor.audit.figures import Figures, NoProofError, per_unit
 from shopfloor.audit.words import moment
 from shopfloor.model.results import Bound, Violation
@@ -83,6 +84,23 @@ def _window(figures: Figures, witness: Mapping[str, Any]) -> int:
     load = int(figures.seconds[operations].sum())
     _agree(witness, "load_s", load, "the load is")
     return figures.after(machine, begin, load, tail)
+
+
+def _runs(figures: Figures, witness: Mapping[str, Any]) -> int:
+    """One unit does all of its work as it arrives, and changes over between families as it must.
+
+    Work counts as there from the last multiple of `grid_s` on, in the machine's open time.
+    """
+    machine, grid_s = figures.machine_of(_name(witness, "machine")), _whole(witness, "grid_s")
+    hall, operations = figures.shop.machines[machine], figures.on_machine(machine)
+    rule = figures.shop.changeovers.get(hall.id)
+    if rule is None or hall.count > 1 or not grid_s:
+        raise NoProofError(f"counts on {hall.id} changing over as one unit, on a grid of a second or more")
+    _agree(witness, "load_s", int(figures.seconds[operations].sum()), "the load is")
+    done = earliest_done(figures.arrivals(machine, grid_s), rule, hall.family)
+    if done is None:
+        raise NoProofError("needs more steps than are taken")
+    return figures.after(machine, 0, done, 0)
 
 
 def _rounds(figures: Figures, witness: Mapping[str, Any]) -> int:
@@ -160,6 +178,7 @@ KINDS: dict[str, Callable[[Figures, Mapping[str, Any]], int]] = {
     "order": _order,
     "machine": _machine,
     "window": _window,
+    "runs": _runs,
     "rounds": _rounds,
     "longest": _longest,
     "crew": _crew,

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
+from shopfloor.bounds.arrivals import run_bounds
 from shopfloor.bounds.crew import crew_bounds
 from shopfloor.bounds.load import machine_bounds, order_bounds, round_bounds
 from shopfloor.bounds.window import window_bounds
@@ -13,6 +14,7 @@ from shopfloor.model.shop import Shop
 # Ties are shown in this order: a lead can do more about a machine than about an order.
 FAMILIES: tuple[Callable[[Shop], list[Bound]], ...] = (
     machine_bounds,
+    run_bounds,
     window_bounds,
     round_bounds,
     crew_bounds,

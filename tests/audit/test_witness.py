@@ -52,6 +52,8 @@ SET_UP_CREW = replace(
 )
 RED = replace(PAINT, machines=(replace(PAINT.machines[0], family="red"),))
 BOOTH = {"machine": "Booth", "from_s": 0, "load_s": 5400, "tail_s": 0}
+RUNS = {"machine": "Booth", "load_s": 5400}
+LATE = replace(PAINT, orders=replace(PAINT.orders, release_s=[0, 0, 7200]))
 BREAK = (Closure(45 * MINUTE, 60 * MINUTE, "tea"),)
 
 
@@ -96,6 +98,12 @@ BY_HAND: list[tuple[str, Shop, dict[str, Any], int]] = [
     ),
     # less than is forced is true as well
     ("machine", RED, {**BOOTH, "changeover_s": 60}, 101),
+    # from red to grey or white, one change between them, and ten minutes of closure
+    ("runs", RED, {**RUNS, "grid_s": 1}, 140),
+    # white, grey, then the last grey when it is there at 08:00
+    ("runs", LATE, {**RUNS, "grid_s": 1}, 120 + 30),
+    # on a grid of an hour it counts as there after one open hour, not after 110 min
+    ("runs", LATE, {**RUNS, "grid_s": 3600}, 120),
     # TQ-101 alone leaves 55 min after the wash
     ("window", HALL, {"machine": "Wash", "from_s": 0, "load_s": 1800, "tail_s": 3300}, 30 + 55),
     # the tea falls into what follows the wash
@@ -218,6 +226,19 @@ TAMPERED: list[tuple[str, Shop, dict[str, Any], str]] = [
         {**BOOTH, "from_s": 1200, "changeover_s": 2400},
         "states changeover_s 2400, but the families force 1200",
     ),
+    (
+        "runs",
+        PAINT,
+        {**RUNS, "grid_s": 0},
+        "counts on Booth changing over as one unit, on a grid of a second or more",
+    ),
+    (
+        "runs",
+        HALL,
+        {"machine": "Wash", "load_s": 3000, "grid_s": 1},
+        "counts on Wash changing over as one unit, on a grid of a second or more",
+    ),
+    ("runs", PAINT, {**RUNS, "grid_s": 1, "load_s": 1}, "states load_s 1, but the load is 5400"),
     (
         "window",
         HALL,
@@ -356,6 +377,7 @@ def test_no_bound_that_a_witness_proves_lies_above_a_legal_plan(
             "window",
             {"machine": machine.id, "from_s": begin, "load_s": 0, "tail_s": tail},
         ),
+        ("runs", {"machine": machine.id, "load_s": 0, "grid_s": begin + 1}),
         ("rounds", {"node": "machine", "id": machine.id, "operations": 0, "round_s": operation.seconds}),
         ("rounds", {"node": "order", "id": operation.order, "operations": 0, "round_s": operation.seconds}),
         ("crew", {"crew": "Blue", "from_s": begin, "head_seconds": 0}),
