@@ -12,9 +12,18 @@ from hypothesis import strategies as st
 
 from shopfloor.audit.witness import rederive
 from shopfloor.bounds.catalogue import lower_bounds
-from shopfloor.model.shop import Closure, Crew, Machine, Operations, Orders, Shop
+from shopfloor.model.shop import (
+    NO_STEP,
+    Changeovers,
+    Closure,
+    Crew,
+    Machine,
+    Operations,
+    Orders,
+    Shop,
+)
 from tests.floor_oracle import least_makespan
-from tests.floor_shops import floors
+from tests.floor_shops import FAMILIES, floors
 
 
 @given(floors(parallel=True))
@@ -57,7 +66,7 @@ def test_a_crew_s_heads_count_while_they_are_there() -> None:
     assert least_makespan(shop) == 4
 
 
-KINDS = ("machine", "window", "rounds", "crew", "crew rounds", "order")
+KINDS = ("machine", "runs", "window", "rounds", "crew", "crew rounds", "order")
 RULES: dict[str, Callable[[Shop], bool]] = {
     "breaks": lambda shop: bool(shop.breaks),
     "closures": lambda shop: any(machine.closed for machine in shop.machines),
@@ -87,6 +96,31 @@ def even_crews(draw: st.DrawFn) -> Shop:
     )
 
 
+@st.composite
+def late_families(draw: st.DrawFn) -> Shop:
+    """Floors whose first machine gets red and black work early and red again later, and changes over."""
+    hall = draw(floors(parallel=True, max_operations=1))
+    release = [draw(st.integers(0, 1)), draw(st.integers(0, 1)), draw(st.integers(3, 6))]
+    last = len(hall.machines) - 1
+    step = [1, 2] if draw(st.booleans()) else [NO_STEP, NO_STEP]
+    return replace(
+        hall,
+        machines=(replace(hall.machines[0], count=1), *hall.machines[1:]),
+        orders=Orders(("J", "K", "L"), release_s=release),
+        operations=Operations(
+            [0, 1, 2, 2],
+            [0, 0, 0, last],
+            draw(st.lists(st.integers(1, 3), min_size=4, max_size=4)),
+            step=[NO_STEP, NO_STEP, *step],
+            heads=draw(st.lists(st.integers(0, 1), min_size=4, max_size=4)),
+            setup_s=draw(st.lists(st.integers(0, 1), min_size=4, max_size=4)),
+            family=[0, 1, 0, 1],
+        ),
+        families=FAMILIES,
+        changeovers={hall.machines[0].id: Changeovers(draw(st.integers(1, 3)))},
+    )
+
+
 NEVER = {("crew rounds", "set-ups"), ("crew rounds", "levels")}  # there the heads' own time counts instead
 
 
@@ -96,8 +130,8 @@ def test_every_kind_of_bound_is_held_against_every_rule() -> None:
     best: set[str] = set()
     met: set[str] = set()
 
-    @given(st.one_of(floors(parallel=True, max_operations=4), even_crews()))
-    @settings(max_examples=1_000, deadline=None, database=None, derandomize=True, phases=[Phase.generate])
+    @given(st.one_of(floors(parallel=True, max_operations=4), even_crews(), late_families()))
+    @settings(max_examples=2_000, deadline=None, database=None, derandomize=True, phases=[Phase.generate])
     def meet(shop: Shop) -> None:
         least = least_makespan(shop)
         assert least is not None
