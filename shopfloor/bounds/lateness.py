@@ -18,6 +18,7 @@ numbers, so that the same shop gives the same bound everywhere.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from math import gcd
 
 import numpy as np
 
@@ -27,7 +28,7 @@ from shopfloor.bounds.crew import CrewClock
 from shopfloor.bounds.places import Places, attended_s, places
 from shopfloor.bounds.prices import Prices
 from shopfloor.bounds.runs import Runs, arcs_of
-from shopfloor.model.shop import NO_DUE, Crew, Floats, Ints, Shop
+from shopfloor.model.shop import NO_DUE, Bools, Crew, Floats, Ints, Shop
 
 PRIORITY_UNIT = 1_000  # priorities count in thousandths
 SLOTS = 32  # of equal length, beside the edges of closures
@@ -116,7 +117,31 @@ def least_lateness(shop: Shop, parts: Parts = EVERYTHING) -> LeastLateness:
     found = [_Together(shop, each, whole, parts).run() for each in climbs]
     best = max(range(len(found)), key=lambda k: found[k])
     names = tuple(one.name for one in climbs[best]) if found[best] else ()
-    return LeastLateness(own, int(found[best] // scale), names)
+    least = int(found[best] // scale)
+    unit = _unit(shop, dated)
+    return LeastLateness(own, -(-(own + least) // unit) * unit - own if least else 0, names)
+
+
+def _unit(shop: Shop, dated: Bools) -> int:
+    """Return what the lateness of some best plan is a multiple of, and so the least lateness too.
+
+    Pushed to the left, a plan starts its operations at multiples of the greatest common divisor of all times;
+    not so where operations are cut.
+    """
+    orders, columns = shop.orders, shop.operations
+    weights = np.rint(orders.priority[dated] * PRIORITY_UNIT).astype(np.int64).tolist()
+    if shop.has_splits:
+        return gcd(*weights)
+    shut = [*shop.breaks, *(each for machine in shop.machines for each in machine.closed)]
+    between = [shop.transport, *shop.changeovers.values()]
+    times = [
+        *columns.seconds.tolist(), *columns.setup_s.tolist(),
+        *orders.release_s.tolist(), *orders.due_s[dated].tolist(),
+        *(moment for each in shut for moment in (each.start_s, each.end_s)),
+        *(moment for crew in shop.crews for level in crew.levels for moment in level[:2]),
+        *(seconds for each in between for seconds in (each.between, *each.pairs.values())),
+    ]  # fmt: skip
+    return gcd(*weights) * gcd(*times)
 
 
 def earliest_ends(shop: Shop) -> Ints:
@@ -152,7 +177,7 @@ def _edges(shop: Shop, rows: Ints, earliest: Ints, slots: int) -> Ints:
         last = max(last, int(clock.end(clock.worked(int(shop.head_s[mine].min())) + load)))
     for crew, mine in _attended(shop, rows):
         energy = int((attended_s(shop, mine) * columns.heads[mine]).sum())
-        if energy and (crew.heads or not crew.levels):
+        if energy and crew.heads:
             last = max(last, int(CrewClock(shop, crew).finish(0, np.array([energy]))[0]))
     last += last // 20
     even = np.arange(slots + 1) * last // slots
