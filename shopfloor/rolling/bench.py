@@ -130,10 +130,7 @@ class Bench:
         """Return a timetable in which only what runs stands, and what keeps units of groups."""
         table = Timetable(self.rules)
         for k, block in enumerate(self._blocks, self._count):
-            if self.alike(block.machine):
-                table.place(k, Spot(0, block.until_s, NONE))
-            else:  # what only tells the family lies before the clock starts, so that nothing shares its start
-                table.place(k, Spot(0 if block.until_s else -1, block.until_s, block.unit - 1))
+            table.place(k, Spot(0, block.until_s, NONE if self.alike(block.machine) else block.unit - 1))
         for k, spot in self._pins.items():
             table.place(k, spot)
         return table

@@ -11,7 +11,7 @@ from hypothesis import strategies as st
 from shopfloor.model.shop import NO_STEP, Closure, Shop
 from shopfloor.openshop.floor.openings import Openings
 from shopfloor.openshop.floor.rules import NONE, Rules
-from shopfloor.openshop.floor.timeline import Level
+from shopfloor.openshop.floor.timeline import Level, Line
 from shopfloor.openshop.floor.timetable import Timetable, serial
 from shopfloor.openshop.units import assign_units
 from tests.floor_oracle import least_makespan, least_tardiness, plays
@@ -78,6 +78,14 @@ def test_a_level_says_when_too_little_is_free(
     for begin, lasts, amount in taken:
         level.take(begin, begin + lasts, -amount)
     assert set(level.free) == {3}
+
+
+def test_a_visit_that_takes_no_time_is_told_from_one_that_starts_with_it() -> None:
+    line = Line(None)
+    line.take(3, 3, NONE, 0)
+    line.take(3, 5, NONE, 1)
+    line.give_back(3, 1)
+    assert (line.start, line.end, line.operation) == ([3], [3], [0])
 
 
 @given(st.data())

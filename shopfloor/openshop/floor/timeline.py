@@ -76,9 +76,11 @@ class Line:
         self.label.insert(place, label)
         self.operation.insert(place, operation)
 
-    def give_back(self, start: int) -> None:
-        """Remove the visit that starts at `start`."""
+    def give_back(self, start: int, operation: int) -> None:
+        """Remove the visit of an operation that starts at `start`; one of no length may start there too."""
         place = bisect_left(self.start, start)
+        while self.operation[place] != operation:
+            place += 1
         for column in (self.start, self.end, self.label, self.operation):
             del column[place]
 

@@ -103,12 +103,12 @@ class Timetable:
         if spot is None:
             raise ValueError(f"operation {operation} stands nowhere")
         machine = rules.machine[operation]
-        self._orders[rules.job[operation]].give_back(spot.start)
+        self._orders[rules.job[operation]].give_back(spot.start, operation)
         group = self._groups[machine]
         if group is not None:
             group.take(spot.start, spot.end, -1)
         else:
-            self._units[machine][spot.unit].give_back(spot.start)
+            self._units[machine][spot.unit].give_back(spot.start, operation)
         self._attend(operation, spot.start, -rules.heads[operation])
         self.spots[operation] = None
 
