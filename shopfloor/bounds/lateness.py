@@ -113,7 +113,10 @@ def least_lateness(shop: Shop, parts: Parts = EVERYTHING) -> LeastLateness:
     crowded = _crowded(shop, rows, late_from, edges, whole, parts)
     if not crowded or not all(one.places.spots.legal.any(axis=1).all() for one in crowded):
         return LeastLateness(own, 0)
-    climbs = [crowded] if parts.shared else [[one] for one in crowded]
+    climbs = [[one] for one in crowded]
+    if parts.shared and len(crowded) > 1:  # one that stands out gets further where it shares with none
+        cost = [int((one.late * whole[shop.operations.job[one.places.rows]]).sum()) for one in crowded]
+        climbs = [crowded, climbs[cost.index(max(cost))]]
     found = [_Together(shop, each, whole, parts).run() for each in climbs]
     best = max(range(len(found)), key=lambda k: found[k])
     names = tuple(one.name for one in climbs[best]) if found[best] else ()
