@@ -187,6 +187,8 @@ class _Search:
         kind = "plan as good in what comes first" if number else "plan"
         if self.proved(goal):
             return f"{said}; no {kind} has less."
+        if not self.least[goal]:
+            return f"{said}; whether a {kind} could have less is not known."
         least = duration(self.least[goal] // unit)
         return f"{said}; all that is proved is that every {kind} has {least} or more."
 
