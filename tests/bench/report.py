@@ -29,6 +29,8 @@ SECTIONS: dict[str, tuple[str, str]] = {
     "published": ("Published open shops against a plain CP-SAT model", "tests.bench.published"),
     "large": ("Large open shops", "tests.bench.large"),
     "shifts": ("Shifts as they are", "tests.bench.shifts"),
+    "lateness": ("How late a shift must be", "tests.bench.lateness"),
+    "scale": ("As shops grow", "tests.bench.scale"),
     "replan": ("Replanning after disruptions", "tests.bench.replan"),
 }
 

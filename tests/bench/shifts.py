@@ -70,11 +70,12 @@ class Size:
 
 
 SIZES = {"S": Size(40, 12, 6.25, 6), "M": Size(120, 15, 5.85, 7), "L": Size(300, 20, 6.65, 9)}
+AND_LARGER = SIZES | {"X": Size(1_500, 60, 6.65, 27)}  # some 10,000 operations, for tests.bench.scale
 
 
 def shift(size: str, seed: int) -> Shop:
     """One made-up shift: every random choice comes from `size` and `seed`."""
-    what = SIZES[size]
+    what = AND_LARGER[size]
     rng = np.random.default_rng([ord(size), seed])
     machines, rules = _machines(what, rng)
     units = np.array([machine.count for machine in machines])
