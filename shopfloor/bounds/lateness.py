@@ -272,7 +272,7 @@ class _Together:
         priced = int(PRICED_SHARE * self.steps)
         best = 0
         length = FIRST_LENGTH * float(self.weight.mean())
-        shorter = (LAST_LENGTH / FIRST_LENGTH) ** (1 / self.steps)
+        shorter = round((LAST_LENGTH / FIRST_LENGTH) ** (1 / self.steps), 6)  # alike on every machine
         for step in range(self.steps):
             if step == priced and self.parts.changeovers:
                 ways = [self._with_changeovers(k, way) for k, way in enumerate(ways)]

@@ -64,10 +64,6 @@ class Prices:
         self.climb.step((taken - self.places.room).astype(np.float64), length)
         return value, late
 
-    def scale(self, factor: float) -> None:
-        """Multiply every price."""
-        self.climb.values *= factor
-
     def _cheapest(self, shares: Ints) -> tuple[int, Ints, Ints]:
         places, spots = self.places, self.places.spots
         prices = np.append(np.floor(self.climb.values).astype(np.int64), 0)

@@ -7,8 +7,8 @@ Networks 11 (1981) 145-164). So that the families are not all served at once, ea
 operations wait for their family to be entered: a toll for each operation and stretch of time charges what
 is done and rewards the entry. Any rewards and tolls give a lower bound.
 
-Time is in steps; what does not fit them is rounded down, which makes no path dearer. Running time of a
-pass: linear in steps times operations.
+Time is in steps of equal length; what does not fit them is rounded down, which makes no path dearer.
+Running time of a pass: linear in steps times operations.
 """
 
 from __future__ import annotations
@@ -83,7 +83,7 @@ def arcs_of(shop: Shop, places: Places) -> tuple[Arcs, int] | None:
 
 
 class Runs:
-    """One machine with changeovers under rewards and tolls; asked like :class:`Prices`.
+    """One machine with changeovers under rewards and tolls; asked like :class:`~.prices.Prices`.
 
     Parameters
     ----------
@@ -116,13 +116,17 @@ class Runs:
         self.rewards = Climb(np.maximum(rewards, 0) / places.taken)
         self.tolls = Climb(np.zeros((len(places.rows), TOLLS)))
 
-    def value(self, shares: Ints) -> tuple[int, Ints]:
-        """Return a lower bound of the lateness, and the seconds of it in each slot, a line an operation."""
-        value, _, _, late = self._path(shares)
-        return value, late
-
     def step(self, shares: Ints, length: float) -> tuple[int, Ints]:
-        """Return the same, and move rewards and tolls."""
+        """Return a lower bound of the lateness, and the seconds of it in each slot, a line an operation; move
+        rewards and tolls.
+
+        Parameters
+        ----------
+        shares
+            What a second of lateness costs: a line an operation, a column a slot.
+        length
+            Of the step.
+        """
         value, visits, entries, late = self._path(shares)
         missing = 1 - visits.sum(axis=1)
         self.rewards.step((missing * self.places.taken).astype(np.float64), length)
