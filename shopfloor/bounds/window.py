@@ -29,7 +29,7 @@ def window_bounds(shop: Shop) -> list[Bound]:
         operations = np.flatnonzero(shop.operations.machine == machine)
         if len(operations) and shop.tail_s[operations].any():
             bounds.append(_window(shop, machine, operations))
-    return bounds
+    return [bound for bound in bounds if bound.witness["tail_s"]]  # without a tail it is the load bound
 
 
 def _window(shop: Shop, machine: int, operations: Ints) -> Bound:

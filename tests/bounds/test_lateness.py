@@ -9,7 +9,7 @@ import pytest
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
-from shopfloor.bounds import runs
+from shopfloor.bounds import family_path
 from shopfloor.bounds.lateness import Parts, earliest_ends, least_lateness
 from shopfloor.model.shop import (
     NO_DUE,
@@ -81,7 +81,7 @@ def test_steps_that_do_not_divide_the_work_are_rounded_down(shop: Shop, times: i
     assume(longer.changeovers and int(seconds.sum()) <= 24)
     least = least_tardiness(longer)
     with pytest.MonkeyPatch.context() as patch:
-        patch.setattr(runs, "STEPS_MOST", 8)
+        patch.setattr(family_path, "STEPS_MOST", 8)
         assert least is None or least_lateness(longer).value <= least
 
 

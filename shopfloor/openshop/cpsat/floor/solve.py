@@ -115,6 +115,8 @@ class _Search:
 
     def _serve(self, goal: str, kept: tuple[str, ...], until: float | None) -> None:
         self._tell(goal)
+        if goal == TARDINESS and not self.proved(goal):
+            self.least[goal] = max(self.least[goal], self.effort.least_late(self.shop))
         size = len(self.shop)
         ways: list[Callable[[], None]] = []
         if size <= BRIEF_MOST:
