@@ -25,9 +25,9 @@ import numpy as np
 from shopfloor.bounds.alone import alone
 from shopfloor.bounds.ascent import Climb
 from shopfloor.bounds.crew import CrewClock
+from shopfloor.bounds.family_path import Runs, arcs_of
 from shopfloor.bounds.places import Places, attended_s, places
 from shopfloor.bounds.prices import Prices
-from shopfloor.bounds.family_path import Runs, arcs_of
 from shopfloor.model.shop import NO_DUE, Bools, Crew, Floats, Ints, Shop
 
 PRIORITY_UNIT = 1_000  # priorities count in thousandths
