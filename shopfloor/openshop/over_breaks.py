@@ -17,6 +17,10 @@ from shopfloor.model.schedule import Schedule
 from shopfloor.model.shop import NO_DUE, Orders, Shop
 from shopfloor.openshop.method import Effort, Method, Progress
 
+IN_WORKING_TIME = "Lateness is weighed in working time here: breaks that an order waits over do not count."
+    "What was weighed of lateness is working time: breaks that an order waits over do not count."
+)
+
 
 def all_pause(shop: Shop) -> bool:
     """Whether nothing happens in the hall's breaks: every machine pauses, and no other clock runs on."""
@@ -72,7 +76,10 @@ class OverBreaks:
             rows.operation, clock.start(rows.start_s), clock.end(rows.end_s), unit=rows.unit, round=rows.round
         )
         proven = int(clock.end(outcome.proven_s)) if outcome.proven_s else 0
-        return replace(outcome, schedule=schedule, proven_s=proven)
+        finish = schedule.completion_s(shop.operations.job, len(shop.orders))
+        late = bool((finish > shop.orders.due_s).any())
+        remarks = (*outcome.remarks, *([IN_WORKING_TIME] if late else []))
+        return replace(outcome, schedule=schedule, proven_s=proven, remarks=remarks)
 
 
 def squeeze(shop: Shop) -> Shop:
