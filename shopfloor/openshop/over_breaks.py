@@ -18,8 +18,6 @@ from shopfloor.model.shop import NO_DUE, Orders, Shop
 from shopfloor.openshop.method import Effort, Method, Progress
 
 IN_WORKING_TIME = "Lateness is weighed in working time here: breaks that an order waits over do not count."
-    "What was weighed of lateness is working time: breaks that an order waits over do not count."
-)
 
 
 def all_pause(shop: Shop) -> bool:
