@@ -41,7 +41,12 @@ SETTINGS: dict[str, Setting] = {
         ),
         Setting("shortest-piece", 0, "minutes", "No operation is cut into pieces shorter than this."),
         Setting("time-limit", 30.0, "seconds", "Longest search for a better plan."),
-        Setting("workers", 0, "threads", "Solver threads; 0 takes one for each core."),
+        Setting(
+            "workers",
+            0,
+            "threads",
+            "Solver threads; 0 takes one a core, and more where that helps.",
+        ),
         Setting("seed", 0, "", "Seed of every random choice."),
         Setting("stamp", None, "text", "Printed on sheets and pages as the time of printing."),
     )

@@ -29,7 +29,7 @@ from shopfloor.model.shop import Machine, Operations, Orders, Shop
 from shopfloor.openshop.incumbent import MAKESPAN
 from shopfloor.openshop.method import Effort, Progress
 from shopfloor.pipeline import Options, plan
-from tests.bench.shifts import AND_LARGER, clean, first_plan, lateness, shift
+from tests.bench.shifts import AND_LARGER, WORKERS, clean, first_plan, lateness, shift
 
 Result = TypeVar("Result")
 SEED = 1
@@ -107,7 +107,7 @@ def peer(kind: str, size: str, seconds: float) -> Peer:
     began = time.perf_counter()
     improve(
         shop, best, MAKESPAN, (), bounds[0].value_s, Effort(time_limit_s=seconds),
-        lambda stage: Progress(stage, None, 0, 0.0), until=None, brief=False,
+        lambda stage: Progress(stage, None, 0, 0.0), workers=WORKERS,
     )  # fmt: skip
     took = time.perf_counter() - began
     clean(shop, best.places.schedule(), bounds)

@@ -35,6 +35,8 @@ from shopfloor.openshop.round_order import PRIORITY_UNIT
 MODEL_MOST = 1_000  # operations up to which the whole shop is put into one model
 BRIEF_MOST = 300  # operations up to which one thread may settle a goal in a moment, and repeatably
 BRIEF_WORK = 0.5  # the solver's own units, about two seconds each
+FULL = 8  # threads with which CP-SAT runs all of its strategies; on fewer cores they take turns
+FEW_SHARE = 0.4  # of the time, on small floors, to a thread a core, which is quicker at first
 LEAN_FROM = 400  # operations from which presolve is kept short: the first solution comes first
 # For each goal: operations from which windows come before the whole model, and for what share of its time.
 # For late orders the whole model finds more in the same time, up to some 400 operations.
@@ -118,14 +120,17 @@ class _Search:
         if goal == TARDINESS and not self.proved(goal):
             self.least[goal] = max(self.least[goal], self.effort.least_late(self.shop))
         size = len(self.shop)
+        model, few = partial(self._model, goal, kept, until), threads(self.effort.workers)
         ways: list[Callable[[], None]] = []
         if size <= BRIEF_MOST:
-            ways.append(lambda: self._model(goal, kept, until, brief=True))
+            ways.append(partial(model, workers=1, work=BRIEF_WORK))
         if size > min(WINDOWS_FROM.get(goal, MODEL_MOST), MODEL_MOST):
             share = 1.0 if size > MODEL_MOST else WINDOWS_SHARE[goal]
-            ways.append(lambda: self._parts(goal, kept, until, share))
-        if size <= MODEL_MOST:
-            ways.append(lambda: self._model(goal, kept, until, brief=False))
+            ways.append(partial(self._parts, goal, kept, until, share))
+        if size < LEAN_FROM and not self.effort.workers and few < FULL:
+            ways += [partial(model, workers=few, share=FEW_SHARE), partial(model, workers=FULL)]
+        elif size <= MODEL_MOST:
+            ways.append(partial(model, workers=few))
         for way in ways:
             if self.proved(goal):
                 return
@@ -151,13 +156,34 @@ class _Search:
         self.repeatable &= repeats
         self.complete &= share < 1 or self.proved(goal)
 
-    def _model(self, goal: str, kept: tuple[str, ...], until: float | None, *, brief: bool) -> None:
+    def _model(
+        self,
+        goal: str,
+        kept: tuple[str, ...],
+        until: float | None,
+        *,
+        workers: int,
+        work: float | None = None,
+        share: float = 1.0,
+    ) -> None:
+        """Give the whole model some share of the time left."""
+        now = time.monotonic()
+        end = now + self.effort.left_s if until is None else until
         result = improve(
-            self.shop, self.best, goal, kept, self.least[goal], self.effort, self.progress, until, brief
+            self.shop,
+            self.best,
+            goal,
+            kept,
+            self.least[goal],
+            self.effort,
+            self.progress,
+            until=now + share * (end - now) if share < 1 else until,
+            workers=workers,
+            work=work,
         )
         self.repeatable &= result.repeatable
         self.least[goal] = max(self.least[goal], result.bound)
-        self.complete &= self.proved(goal) or (result.ended and not self.effort.over)
+        self.complete &= share < 1 or self.proved(goal) or (result.ended and not self.effort.over)
         if goal == MAKESPAN and not kept and result.bound > self.bound_s:
             self.bound_s = self.proven_s = result.bound
 
@@ -203,8 +229,10 @@ def improve(
     least: int,
     effort: Effort,
     progress: Callable[[str], Progress],
-    until: float | None,
-    brief: bool,
+    *,
+    until: float | None = None,
+    workers: int,
+    work: float | None = None,
 ) -> StageResult:
     """Lower `goal` with the whole model, without giving up anything of the goals in `kept`.
 
@@ -216,12 +244,13 @@ def improve(
         A lower bound of the goal, put into the model: the solver's own is often weaker.
     until
         A moment of ``time.monotonic()`` at which to stop.
-    brief
-        Search a short while in one thread, which repeats; else to the end in all of them.
+    workers
+        Solver threads; the search of one repeats if it ends by itself.
+    work
+        How much to do at most, in the solver's own units, which do not depend on the machine.
     """
-    workers = 1 if brief else threads(effort.workers)
     board, solver = Switchboard(), cp_model.CpSolver()
-    set_parameters(solver, effort, workers, BRIEF_WORK if brief else None, lean=len(shop) >= LEAN_FROM)
+    set_parameters(solver, effort, workers, work, lean=len(shop) >= LEAN_FROM)
     found: list[tuple[Goal, Found]] = []
 
     def search() -> None:
