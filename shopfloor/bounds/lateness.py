@@ -6,9 +6,9 @@ Two parts that add up:
   its machines and its ways between them.
 - *Together*: what the orders are late by beyond that because a machine or crew cannot serve all of them
   in time. Each machine and crew is looked at by itself, under prices on its time (:mod:`.prices`) or, where
-  it changes over, under rewards (:mod:`.family_path`). An order's lateness may be counted only once: in every slot
-  of time the priority of an order is shared out among the machines that it visits (Lagrangian decomposition:
-  M. Guignard, S. Kim, Mathematical Programming 39 (1987) 215-228, here slot by slot).
+  it changes over, under rewards (:mod:`.family_path`). An order's lateness may be counted only once: in
+  every slot of time the priority of an order is shared out among the machines that it visits (Lagrangian
+  decomposition: M. Guignard, S. Kim, Mathematical Programming 39 (1987) 215-228, here slot by slot).
 
 Any shares, prices, rewards and tolls give a valid bound; they are improved for a number of steps that the
 size of the shop fixes. It holds for every plan, whatever its makespan. All that is summed is whole
