@@ -22,8 +22,8 @@ import numpy as np
 from shopfloor.model.calendar import duration
 from shopfloor.model.results import Outcome
 from shopfloor.model.schedule import Schedule
-from shopfloor.model.shop import NO_DUE, Shop
-from shopfloor.openshop.incumbent import GOALS, MAKESPAN, TARDINESS, Incumbent, weights
+from shopfloor.model.shop import Shop
+from shopfloor.openshop.incumbent import GOALS, MAKESPAN, TARDINESS, Incumbent, least_tardiness
 from shopfloor.openshop.list_rule import list_schedules
 from shopfloor.openshop.method import Effort, Progress
 from shopfloor.openshop.round_order import PRIORITY_UNIT
@@ -89,7 +89,7 @@ class _Search:
         self.incumbent = Incumbent(shop, self.goals)
         self.bound_s = effort.bound_s
         self.proven_s = 0  # the part of the bound that the solver proved
-        self.least = _least_tardiness(shop)
+        self.least = least_tardiness(shop)
         self.asked = False  # whether for more than that
         self.proved: set[str] = set()
         self.complete = self.repeatable = True
@@ -309,12 +309,3 @@ class _Search:
             return f"{said}; whether a {kind} could have less is not known."
         least = duration(self.least // PRIORITY_UNIT)
         return f"{said}; all that is proved is that every {kind} has {least} or more."
-
-
-def _least_tardiness(shop: Shop) -> int:
-    """Return the weighted tardiness that orders have even when they never wait."""
-    orders = shop.orders
-    soonest = orders.release_s + shop.job_load_s
-    late = np.flatnonzero((orders.due_s != NO_DUE) & (soonest > orders.due_s) & (shop.job_load_s > 0))
-    weight = weights(shop)
-    return sum(weight[job] * int(soonest[job] - orders.due_s[job]) for job in late.tolist())

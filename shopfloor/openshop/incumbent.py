@@ -37,6 +37,15 @@ def tardiness_of(shop: Shop, start: Ints) -> int:
     return sum(weight[job] * int(done[job] - shop.orders.due_s[job]) for job in late.tolist())
 
 
+def least_tardiness(shop: Shop) -> int:
+    """Return the weighted tardiness that orders have even when they never wait."""
+    orders = shop.orders
+    soonest = orders.release_s + shop.job_load_s
+    late = np.flatnonzero((orders.due_s != NO_DUE) & (soonest > orders.due_s) & (shop.job_load_s > 0))
+    weight = weights(shop) if len(late) else []
+    return sum(weight[job] * int(soonest[job] - orders.due_s[job]) for job in late.tolist())
+
+
 MEASURES: dict[str, Callable[[Shop, Ints], int]] = {MAKESPAN: makespan_of, TARDINESS: tardiness_of}
 
 

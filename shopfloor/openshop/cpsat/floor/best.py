@@ -13,6 +13,7 @@ from shopfloor.model.shop import NO_DUE, NO_FAMILY, Bools, Ints, Shop
 from shopfloor.openshop.floor.rules import Rules
 from shopfloor.openshop.floor.timetable import Timetable, serial
 from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS, weights
+from shopfloor.openshop.incumbent import least_tardiness as least_tardiness
 from shopfloor.openshop.units import assign_units
 
 CHANGEOVERS = "changeovers"
@@ -57,15 +58,6 @@ def tardiness_of(shop: Shop, places: Places, chosen: Bools | None = None) -> int
     late = np.flatnonzero((due != NO_DUE) & (done > due))
     weight = weights(shop) if len(late) else []
     return sum(weight[job] * int(done[job] - due[job]) for job in late.tolist())
-
-
-def least_tardiness(shop: Shop) -> int:
-    """Return the weighted tardiness that orders have even when they never wait."""
-    orders = shop.orders
-    soonest = orders.release_s + shop.job_load_s
-    late = np.flatnonzero((orders.due_s != NO_DUE) & (soonest > orders.due_s) & (shop.job_load_s > 0))
-    weight = weights(shop) if len(late) else []
-    return sum(weight[job] * int(soonest[job] - orders.due_s[job]) for job in late.tolist())
 
 
 def changes(shop: Shop, places: Places) -> Iterator[tuple[int, int]]:

@@ -19,7 +19,7 @@ from shopfloor.model.feasible import FOR_GOOD_S
 from shopfloor.model.results import Outcome
 from shopfloor.model.schedule import Schedule
 from shopfloor.model.shop import Shop
-from shopfloor.openshop.cpsat.floor.best import CHANGEOVERS, Best, Places, least_tardiness
+from shopfloor.openshop.cpsat.floor.best import CHANGEOVERS, Best, Places
 from shopfloor.openshop.cpsat.floor.extract import keep
 from shopfloor.openshop.cpsat.floor.objective import GOAL_BUILDERS
 from shopfloor.openshop.cpsat.floor.rules import add_rules
@@ -28,7 +28,7 @@ from shopfloor.openshop.cpsat.floor.variables import Model
 from shopfloor.openshop.cpsat.floor.windows import improve_in_parts
 from shopfloor.openshop.cpsat.objective import Goal
 from shopfloor.openshop.cpsat.solve import Answer, Found, Switchboard, threads, watch
-from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS
+from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS, least_tardiness
 from shopfloor.openshop.method import Effort, Progress
 from shopfloor.openshop.round_order import PRIORITY_UNIT
 
