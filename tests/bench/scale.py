@@ -1,6 +1,6 @@
 """What happens as shops grow: 250, 700, 2,000 and 10,000 operations, time and memory. Prints markdown.
 
-    python -m tests.bench.scale                      some seven minutes
+    python -m tests.bench.scale                      some three minutes
     python -m tests.bench.scale --seconds 5 --sizes S M
 
 Two kinds of shop at each size. *Plain*: releases and weighted due times, any order of visits, nothing else.
@@ -144,7 +144,7 @@ def row(kind: str, size: str, seconds: float) -> str:
 def main() -> None:
     """Print one row a shop."""
     parser = argparse.ArgumentParser(description=__doc__, formatter_class=argparse.RawTextHelpFormatter)
-    parser.add_argument("--seconds", type=float, default=20.0, help="time for each run")
+    parser.add_argument("--seconds", type=float, default=10.0, help="time for each run")
     parser.add_argument("--sizes", nargs="*", default=list(AND_LARGER), choices=list(AND_LARGER))
     arguments = parser.parse_args()
     print(

@@ -45,7 +45,7 @@ from shopfloor.model.shop import (
 )
 from shopfloor.model.stated import state
 from shopfloor.openshop.floor.plan import first_schedule
-from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS
+from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS, least_tardiness
 from shopfloor.openshop.method import Effort, Progress
 from shopfloor.pipeline import Options, plan
 
@@ -251,7 +251,7 @@ def first_plan(shop: Shop, bounds: tuple[Bound, ...]) -> tuple[Schedule, float]:
 
 def by_model_alone(shop: Shop, schedule: Schedule, seconds: float) -> Schedule:
     """The peer: the exact model of the whole floor, hinted, and nothing else."""
-    from shopfloor.openshop.cpsat.floor.best import Best, Places, least_tardiness
+    from shopfloor.openshop.cpsat.floor.best import Best, Places
     from shopfloor.openshop.cpsat.floor.solve import improve
 
     best = Best(shop, Places.of(schedule), (TARDINESS,))

@@ -13,7 +13,6 @@ from shopfloor.model.shop import NO_DUE, NO_FAMILY, Bools, Ints, Shop
 from shopfloor.openshop.floor.rules import Rules
 from shopfloor.openshop.floor.timetable import Timetable, serial
 from shopfloor.openshop.incumbent import MAKESPAN, TARDINESS, weights
-from shopfloor.openshop.incumbent import least_tardiness as least_tardiness
 from shopfloor.openshop.units import assign_units
 
 CHANGEOVERS = "changeovers"
