@@ -102,8 +102,8 @@ def _due_times_first(shop: Shop, schedule: Schedule | None, effort: Effort) -> t
     if less > FAR_LESS * late or later <= 0:
         return ()
     before, after = (duration(value // PRIORITY_UNIT) for value in (late, less))
-    leave = f"{after} or less of weighted lateness instead of {before}" if less else "nothing late"
+    leaves = f"{after} of weighted lateness instead of {before}" if less else "nothing late"
     return (
-        f"Due times first (--objective tardiness,makespan) would leave {leave}, and end at most "
-        f"{duration(later)} later.",
+        f"With due times first (--objective tardiness,makespan) a plan was found that leaves {leaves} and "
+        f"ends {duration(later)} later.",
     )

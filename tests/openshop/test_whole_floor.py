@@ -46,8 +46,8 @@ def test_a_lead_is_told_when_due_times_first_would_leave_far_less_late() -> None
     assert outcome.remarks == (
         "Weighted lateness is 10 min (priority × time late, summed); no plan as good in what comes first has "
         "less.",
-        "Due times first (--objective tardiness,makespan) would leave nothing late, and end at most 1 h "
-        "later.",
+        "With due times first (--objective tardiness,makespan) a plan was found that leaves nothing late and "
+        "ends 1 h later.",
     )
     due_first = WholeFloor(("tardiness", "makespan")).solve(shop, Effort(bound_s=90 * MINUTE))
     assert due_first.remarks == ("Nothing is late.",)
