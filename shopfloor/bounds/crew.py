@@ -12,6 +12,7 @@ from typing import Any
 
 import numpy as np
 
+from shopfloor.bounds.window import spread
 from shopfloor.model.calendar import duration
 from shopfloor.model.results import Bound
 from shopfloor.model.shop import Crew, Ints, Shop
@@ -33,7 +34,7 @@ def crew_bounds(shop: Shop) -> list[Bound]:
         attended = np.flatnonzero(theirs[shop.operations.machine])
         if len(attended) and crew.heads:
             bounds.append(_crew_bound(shop, crew, attended))
-    return bounds
+    return [bound for bound in bounds if bound.witness.get("head_seconds") != 0]  # nobody is needed there
 
 
 def _crew_bound(shop: Shop, crew: Crew, attended: Ints) -> Bound:
@@ -69,12 +70,9 @@ def _energy_bound(shop: Shop, crew: Crew, head: Ints, energy: Ints, tail: Ints) 
     clock = CrewClock(shop, crew)
     longest_first = np.argsort(-tail, kind="stable")
     head, energy, tail = head[longest_first], energy[longest_first], tail[longest_first]
-    thresholds = np.unique(head)
-    if len(thresholds) > HEADS_TRIED:
-        thresholds = thresholds[np.linspace(0, len(thresholds) - 1, HEADS_TRIED).astype(np.int64)]
     best = -1
     witness: dict[str, Any] = {}
-    for begin in thresholds.tolist():
+    for begin in spread(head, HEADS_TRIED).tolist():
         inside = head >= begin
         left, work = tail[inside], np.cumsum(energy[inside])
         done = np.where(work > 0, clock.finish(begin, work), begin)

@@ -32,15 +32,21 @@ def window_bounds(shop: Shop) -> list[Bound]:
     return [bound for bound in bounds if bound.witness["tail_s"]]  # without a tail it is the load bound
 
 
+def spread(values: Ints, most: int) -> Ints:
+    """Return the distinct values, rising, or `most` of them evenly spread where there are more."""
+    found: Ints = np.unique(values)
+    if len(found) > most:
+        found = found[np.linspace(0, len(found) - 1, most).astype(np.int64)]
+    return found
+
+
 def _window(shop: Shop, machine: int, operations: Ints) -> Bound:
     hall, clock = shop.machines[machine], shop.machine_clocks[machine]
     heads, tails = shop.head_s[operations], shop.tail_s[operations]
     latest_first = np.argsort(-heads, kind="stable")
     heads, tails = heads[latest_first], tails[latest_first]
     seconds = shop.operations.seconds[operations][latest_first]
-    thresholds = np.unique(tails)
-    if len(thresholds) > TAILS_TRIED:
-        thresholds = thresholds[np.linspace(0, len(thresholds) - 1, TAILS_TRIED).astype(np.int64)]
+    thresholds = spread(tails, TAILS_TRIED)
     best = -1
     witness: dict[str, Any] = {}
     for tail in thresholds.tolist():

@@ -82,6 +82,13 @@ RULES: dict[str, Callable[[Shop], bool]] = {
 }
 
 
+def test_a_crew_that_nobody_needs_has_no_bound() -> None:
+    """It attends set-ups only, and there are none."""
+    machines = (Machine("A", crew="Blue", set_up_only=True),)
+    shop = Shop(machines, Orders(("J",)), Operations([0], [0], [5]), crews=(Crew("Blue", 2),))
+    assert {bound.kind for bound in lower_bounds(shop)} == {"machine", "order"}
+
+
 @st.composite
 def even_crews(draw: st.DrawFn) -> Shop:
     """Floors on which one crew attends equal operations all the time, so that it works in rounds."""
