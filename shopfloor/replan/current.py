@@ -81,7 +81,7 @@ def current(shop: Shop, state: ShiftState, told: Told) -> Current:
     added = [[piece] for piece in fresh]
     for piece in (piece for pair in sorted(repeats) for piece in pairs[pair]):
         alike = [mine for mine in added if mine[0].key[:2] == piece.key[:2]]
-        next((mine for mine in alike if failed(mine[-1])), alike[0]).append(piece)
+        next((mine for mine in alike if mine[-1].failed), alike[0]).append(piece)
     return Current(_amended(grown, state.orders), (*dealt, *map(tuple, added)))
 
 
@@ -107,11 +107,6 @@ def _refuse_strangers(pairs: Iterable[Pair]) -> None:
 
 
 # ---- which piece is which operation -----------------------------------------------------------------
-
-
-def failed(piece: PieceState) -> bool:
-    """Whether a piece was finished and nothing good came out: it has to be run again."""
-    return piece.end_s is not None and bool(piece.scrap) and not piece.good
 
 
 def planned_s(shop: Shop, machine: int, piece: PieceState, told: Told) -> int | None:
@@ -150,7 +145,7 @@ def _deal(
         open_ = [index for index in ranked if room[index] > 0] or ranked
         index = min(open_, key=lambda index: abs(room[index] - length))  # of equals the first
         found[index].append(piece)
-        if not failed(piece):
+        if not piece.failed:
             room[index] -= length
     return found
 

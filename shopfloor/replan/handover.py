@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from shopfloor.model.actuals import Event, Piece, PieceState, ShiftState, Status
 from shopfloor.model.shop import NO_DUE
 from shopfloor.replan.compare import longest_in_order
-from shopfloor.replan.current import Current, failed, worked_s
+from shopfloor.replan.current import Current, worked_s
 from shopfloor.replan.figures import Elements
 from shopfloor.replan.reasons import Reason, outage_reasons, reasons
 from shopfloor.replan.remaining import MINIMUM_LEFT_S, Left, remaining, run_s
@@ -218,7 +218,7 @@ def _machine(
         setup_s=setup,
         planned_s=sum(worked_s(shop, place, row.start_s or 0, min(row.end_s or 0, until)) for row in wanted),
         planned=sum((row.end_s or 0) <= until for row in wanted),
-        done=sum(piece.status is Status.DONE and not failed(piece) for piece in pieces),
+        done=sum(piece.status is Status.DONE and not piece.failed for piece in pieces),
         outages=outage_reasons(known.outages if known is not None else (), until),
         stops=outage_reasons([pause for piece in pieces for pause in piece.pauses], until),
         started=started,
@@ -259,7 +259,7 @@ def _orders(
         pieces = [piece for _, piece in by_order.get(job, ())]
         said = state.orders.get(name)
         cancelled = said is not None and said.cancelled_s is not None
-        ends = [piece.end_s for piece in pieces if piece.end_s is not None and not failed(piece)]
+        ends = [piece.end_s for piece in pieces if piece.end_s is not None and not piece.failed]
         done = max(ends, default=None) if not open_[job] and not cancelled else None
         due = int(shop.orders.due_s[job])
         known = None if due == NO_DUE else due
@@ -270,7 +270,7 @@ def _orders(
         yield OrderReport(
             order=name,
             promised_s=promised,
-            planned_s=_latest(told.planned(piece.key) for piece in pieces if not failed(piece)),
+            planned_s=_latest(told.planned(piece.key) for piece in pieces if not piece.failed),
             actual_s=done,
             due_s=known,
             late_s=late,

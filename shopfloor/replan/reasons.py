@@ -10,7 +10,7 @@ from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
 
 from shopfloor.model.actuals import PieceState, ShiftState, Status, Stretch
-from shopfloor.replan.current import Current, failed, planned_s
+from shopfloor.replan.current import Current, planned_s
 from shopfloor.replan.remaining import is_running, run_s
 from shopfloor.replan.told import Told
 
@@ -74,7 +74,7 @@ def _causes(now: Current, index: int, piece: PieceState, state: ShiftState, told
         if length >= SLIGHT_S:
             yield Reason("down", machine, length, outage.reason)
     place = int(now.shop.operations.machine[index])
-    if failed(piece):
+    if piece.failed:
         yield Reason("scrapped", machine, run_s(now, place, piece, state), f"{piece.scrap} lost")
     elif piece.runs:
         longer = run_s(now, place, piece, state) - (planned_s(now.shop, place, piece, told) or 0)

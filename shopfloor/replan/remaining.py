@@ -14,7 +14,7 @@ from dataclasses import dataclass
 from itertools import count
 
 from shopfloor.model.actuals import Key, PieceState, ShiftState, Status, Stretch
-from shopfloor.replan.current import Current, failed, planned_s, worked_s
+from shopfloor.replan.current import Current, planned_s, worked_s
 from shopfloor.replan.told import Told
 
 MINIMUM_LEFT_S = 60  # as the journal's own estimate
@@ -84,7 +84,7 @@ def _of(
     columns = now.shop.operations
     total, setup = int(columns.seconds[index]), int(columns.setup_s[index])
     machine = int(columns.machine[index])
-    sound = [piece for piece in pieces if not failed(piece)]
+    sound = [piece for piece in pieces if not piece.failed]
     good = [piece for piece in sound if piece.status is Status.DONE]
     whole = not columns.splittable[index] or all(p.planned is None or p.planned.parts == 1 for p in pieces)
     if whole and good:
@@ -121,7 +121,7 @@ def _of(
         rest += sum(left(piece) - share(piece) for piece in stopped)
     if rest <= 0:
         return
-    scrapped = [piece for piece in pieces if failed(piece)]
+    scrapped = [piece for piece in pieces if piece.failed]
     waiting = [piece for piece in sound if not piece.touched]
     names = now.shop.orders.ids[int(columns.job[index])], now.shop.machines[machine].id
     first = [*stopped[-1:], *waiting]

@@ -26,7 +26,7 @@ from shopfloor.openshop.floor.plan import floor_plan
 from shopfloor.openshop.method import Effort, Progress
 from shopfloor.pipeline import Options, plan
 from shopfloor.render.tables import plan_json
-from shopfloor.replan.current import current, failed
+from shopfloor.replan.current import current
 from shopfloor.replan.remaining import remaining
 from shopfloor.replan.told import told
 from shopfloor.rolling.plan import Replan, replan
@@ -82,7 +82,7 @@ def accounted_for(shop: Shop, book: Journal, now_s: int) -> bool:
     lost = {name for name, order in here.orders.items() if order.cancelled_s is not None}
     return all(
         index in left
-        or any(piece.status is Status.DONE and not failed(piece) for piece in pieces)
+        or any(piece.status is Status.DONE and not piece.failed for piece in pieces)
         or now.shop.orders.ids[int(now.shop.operations.job[index])] in lost
         for index, pieces in enumerate(now.pieces)
     )
